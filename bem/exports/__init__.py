@@ -1,0 +1,1 @@
+"""Text tables, JSON, CSV and HTML of a result."""

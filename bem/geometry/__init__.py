@@ -1,0 +1,1 @@
+"""Files in, surfaces, shapes with a true surface, checks of one body."""

@@ -1,0 +1,1 @@
+"""Compiled integrals over panels, exact and tiered."""

@@ -1,0 +1,1 @@
+"""Operators that map panel charges to panel potentials, behind one interface."""

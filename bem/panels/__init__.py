@@ -1,0 +1,1 @@
+"""Panel sets: starting meshes, splitting, refinement geometry."""

@@ -1,0 +1,1 @@
+"""The capacitance matrix with its error bars, and what is saved of a run."""

@@ -1,0 +1,80 @@
+"""The result of an extraction: the Maxwell matrix, its error bars, and how it was reached."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Any
+
+import numpy as np
+
+
+@dataclass(frozen=True)
+class Round:
+    """Record of one refinement round.
+
+    Args:
+        panels: number of panels.
+        capacitance: (n, n) F, the value reported if this were the last round.
+        error: (n, n) F, its bars.
+        worst: largest bar divided by what the tolerance allows for it (1 or less: done).
+        seconds: since the start of the extraction.
+    """
+
+    panels: int
+    capacitance: np.ndarray
+    error: np.ndarray
+    worst: float
+    seconds: float
+
+
+@dataclass(frozen=True)
+class CapacitanceResult:
+    """Maxwell capacitance matrix with error bars.
+
+    Args:
+        conductors: names, in the order of rows and columns.
+        capacitance: (n, n) F, Maxwell signs: Q = C V.
+        error: (n, n) F, bar of each entry: meant to hold in at least 95 % of entries.
+        row_sum: (n,) F, capacitance to the surroundings.
+        row_sum_error: (n,) F, its own bar (correlated with those of the row).
+        tolerance: what was asked: every bar at most this times sqrt(C_ii C_jj).
+        pairs: {(name, name): relative accuracy asked for that coupling}.
+        converged: whether all that was asked was reached.
+        stopped_by: "tolerance", "max-panels", "memory", "rounds" or "interrupt".
+        rounds: one record per round.
+        budget: parts of the largest bars, {part name: (n, n) F}.
+        audit: findings of the audit, {check name: {"value": float, "limit": float, "ok": bool}}.
+        warnings: lines for the user.
+        inputs: one dict per conductor: name, file, sha256, unit, part, changes.
+        settings: all that determines the run.
+        seconds: {phase: seconds}.
+        panel_corners: (p, 4, 3) m, the last mesh; a triangle repeats its last corner.
+        panel_conductor: (p,) index of the conductor that owns each panel.
+        density: (p, n) C/m^2 per volt: column j for 1 V on conductor j, 0 V on the others.
+    """
+
+    conductors: tuple[str, ...]
+    capacitance: np.ndarray
+    error: np.ndarray
+    row_sum: np.ndarray
+    row_sum_error: np.ndarray
+    tolerance: float
+    converged: bool
+    stopped_by: str
+    rounds: tuple[Round, ...]
+    pairs: dict[tuple[str, str], float] = field(default_factory=dict)
+    budget: dict[str, np.ndarray] = field(default_factory=dict)
+    audit: dict[str, dict[str, Any]] = field(default_factory=dict)
+    warnings: tuple[str, ...] = ()
+    inputs: tuple[dict[str, Any], ...] = ()
+    settings: dict[str, Any] = field(default_factory=dict)
+    seconds: dict[str, float] = field(default_factory=dict)
+    version: str = ""
+    panel_corners: np.ndarray | None = None
+    panel_conductor: np.ndarray | None = None
+    density: np.ndarray | None = None
+
+    @property
+    def panels(self) -> int:
+        """Number of panels of the last round."""
+        return self.rounds[-1].panels

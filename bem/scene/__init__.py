@@ -1,0 +1,1 @@
+"""What the user describes: conductors, their places, the surroundings; checks between bodies."""

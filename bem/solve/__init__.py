@@ -1,0 +1,1 @@
+"""Densities from potentials: the linear solve for all right-hand sides together."""
