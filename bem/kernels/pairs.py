@@ -1,0 +1,251 @@
+"""Integrals over pairs of panels, each by the cheapest rule that is accurate enough.
+
+    A_ij   = integral over i and j of 1/|x - y|
+    T_k,ij = integral over i of test k, and over j, of 1/|x - y|
+
+far     (distance beyond ``far`` times both radii): one expansion about the centroids, up to
+        the second moments of both panels.
+middle  A and T from the 16 samples of panel i, the potential of j exact.
+near    (distance below ``near`` times both radii): A exact where a closed form or an
+        almost closed one exists (parallel-sided rectangles, panels in parallel planes),
+        otherwise by samples of the smaller panel clustered at its rim; T as above, so that
+        all near panels are seen from the same samples and the residual is sampled
+        consistently.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numba import njit, prange
+
+from bem.kernels.arrays import PanelArrays
+from bem.kernels.polygons import coplanar_pair
+from bem.kernels.potential import potential
+from bem.kernels.rectangles import parallel_pair, perpendicular_pair
+from bem.kernels.targets import Targets
+
+ALIGNED = 1e-7
+"""Directions closer than this (sine or cosine) count as parallel or perpendicular."""
+CLOSED_LOSS = 1e8
+"""Closed forms lose about extent^4/(area * area) in relative accuracy; beyond this they are not used."""
+SIDES_LOSS = 1e4
+"""The same for the side-pair integrals, which lose extent^2 * length * length/(area * area)."""
+
+
+def _clustered(n: int, wide: bool) -> tuple[np.ndarray, np.ndarray]:
+    x, w = np.polynomial.legendre.leggauss(n)
+    x, w = 0.5 * (x + 1.0), 0.5 * w
+    if wide:
+        return 2.0 * x**3 * (10.0 - 15.0 * x + 6.0 * x**2) - 1.0, 60.0 * w * (x * (1.0 - x)) ** 2
+    return 2.0 * x**2 * (3.0 - 2.0 * x) - 1.0, 12.0 * w * x * (1.0 - x)
+
+
+_SHORT, _SHORT_W = _clustered(6, False)
+_LONG, _LONG_W = _clustered(10, True)
+
+
+@njit(inline="always")
+def _dot(a, b):
+    return a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
+
+
+@njit(cache=True, error_model="numpy")
+def _far_pair(i, j, panels, targets, out):
+    """Expansion about both centroids; out[0] is A_ij, out[1:] the tests on i."""
+    c, m, axes = panels.center, panels.moment, panels.axes
+    x, y, z = c[i, 0] - c[j, 0], c[i, 1] - c[j, 1], c[i, 2] - c[j, 2]
+    r2 = x * x + y * y + z * z
+    v1 = 1.0 / math.sqrt(r2)
+    v3 = v1 / r2
+    v5 = v3 / r2
+    xx, yy, zz = m[i, 0] + m[j, 0], m[i, 1] + m[j, 1], m[i, 2] + m[j, 2]
+    xy, xz, yz = m[i, 3] + m[j, 3], m[i, 4] + m[j, 4], m[i, 5] + m[j, 5]
+    mx, my, mz = xx * x + xy * y + xz * z, xy * x + yy * y + yz * z, xz * x + yz * y + zz * z
+    trace = xx + yy + zz
+    full = x * mx + y * my + z * mz
+    area = panels.area[j]
+    out[0] = panels.area[i] * area * (v1 + 0.5 * (3.0 * full * v5 - trace * v3))
+    radial = -v3 + 0.5 * (3.0 * trace * v5 - 15.0 * full * v5 / r2)
+    gx, gy, gz = radial * x + 3.0 * v5 * mx, radial * y + 3.0 * v5 * my, radial * z + 3.0 * v5 * mz
+    a, b = axes[i, 0], axes[i, 1]
+    g1, g2 = gx * a[0] + gy * a[1] + gz * a[2], gx * b[0] + gy * b[1] + gz * b[2]
+    x1, x2 = x * a[0] + y * a[1] + z * a[2], x * b[0] + y * b[1] + z * b[2]
+    h11, h22, h12 = 3.0 * x1 * x1 * v5 - v3, 3.0 * x2 * x2 * v5 - v3, 3.0 * x1 * x2 * v5
+    first, second = targets.first, targets.second
+    for k in range(4):
+        slope = first[i, k, 0] * g1 + first[i, k, 1] * g2
+        bend = second[i, k, 0] * h11 + second[i, k, 1] * h22 + 2.0 * second[i, k, 2] * h12
+        out[k + 1] = area * (slope + 0.5 * bend)
+
+
+@njit(cache=True, error_model="numpy", fastmath={"contract", "reassoc", "nsz"})
+def _sampled_pair(i, j, panels, targets, scratch, out):
+    """Samples of i against the exact potential of j; out as in ``_far_pair``."""
+    potential(j, panels, targets.points[i], scratch[0], scratch[1])
+    for k in range(5):
+        out[k] = 0.0
+    for q in range(targets.weights.shape[1]):
+        u = scratch[1, 0, q]
+        out[0] += targets.weights[i, q] * u
+        for k in range(4):
+            out[k + 1] += targets.tests[i, k, q] * u
+
+
+@njit(cache=True, error_model="numpy")
+def _clustered_points(i, panels, nodes_u, nodes_v):
+    """Points (3, k) of panel i at the product of two sets of (node, weight); and weights (k,)."""
+    corners, axes, center = panels.corners[i], panels.axes[i], panels.center[i]
+    n = nodes_u[0].size * nodes_v[0].size
+    points, weights = np.empty((3, n)), np.empty(n)
+    k = 0
+    for p in range(nodes_u[0].size):
+        s = nodes_u[0][p]
+        for q in range(nodes_v[0].size):
+            t = nodes_v[0][q]
+            f0, f1 = 0.25 * (1 - s) * (1 - t), 0.25 * (1 + s) * (1 - t)
+            f2, f3 = 0.25 * (1 + s) * (1 + t), 0.25 * (1 - s) * (1 + t)
+            u = f0 * corners[0] + f1 * corners[1] + f2 * corners[2] + f3 * corners[3]
+            du = (1 - t) * (corners[1] - corners[0]) + (1 + t) * (corners[2] - corners[3])
+            dv = (1 - s) * (corners[3] - corners[0]) + (1 + s) * (corners[2] - corners[1])
+            for c in range(3):
+                points[c, k] = center[c] + u[0] * axes[0, c] + u[1] * axes[1, c]
+            weights[k] = nodes_u[1][p] * nodes_v[1][q] * (du[0] * dv[1] - du[1] * dv[0]) / 16.0
+            k += 1
+    return points, weights
+
+
+@njit(cache=True, error_model="numpy")
+def clustered_pair(i: int, j: int, panels: PanelArrays) -> float:
+    """Double integral with samples of panel i clustered at its rim, potential of j exact."""
+    side = panels.sides[i, :, 2]
+    wide, tall = max(side[0], side[2]), max(side[1], side[3])
+    short, long = (_SHORT, _SHORT_W), (_LONG, _LONG_W)
+    nodes_u = long if wide > 6.0 * tall else short
+    nodes_v = long if tall > 6.0 * wide else short
+    points, weights = _clustered_points(i, panels, nodes_u, nodes_v)
+    work = np.empty(points.shape)
+    potential(j, panels, points, np.empty(points.shape), work)
+    return np.dot(weights, work[0])
+
+
+@njit(cache=True, error_model="numpy")
+def _ends(gap, axis, half_i, half_j, sign, diff):
+    """Corner differences (2, 2) along one direction; ``gap`` is center i minus center j."""
+    at = _dot(gap, axis)
+    for a in range(2):
+        for b in range(2):
+            diff[a, b] = at + (2 * a - 1) * half_i - sign * (2 * b - 1) * half_j
+
+
+@njit(cache=True, error_model="numpy")
+def _parallel(i, j, panels, gap):
+    axes, half = panels.axes, panels.half
+    swap = abs(_dot(axes[i, 0], axes[j, 0])) < 0.5
+    u, v = np.empty((2, 2)), np.empty((2, 2))
+    _ends(gap, axes[i, 0], half[i, 0], half[j, 1 if swap else 0], 1.0, u)
+    _ends(gap, axes[i, 1], half[i, 1], half[j, 0 if swap else 1], 1.0, v)
+    return parallel_pair(u, v, abs(_dot(gap, axes[j, 2])))
+
+
+@njit(cache=True, error_model="numpy")
+def _perpendicular(i, j, panels, gap):
+    axes, half = panels.axes, panels.half
+    a = 0 if abs(_dot(axes[i, 0], axes[j, 2])) < 0.5 else 1
+    b = 0 if abs(_dot(axes[j, 0], axes[i, 2])) < 0.5 else 1
+    u, v, w = np.empty((2, 2)), np.empty(2), np.empty(2)
+    _ends(gap, axes[i, a], half[i, a], half[j, b], 1.0, u)
+    across_i, across_j = _dot(gap, axes[j, 2]), -_dot(gap, axes[i, 2])
+    for k in range(2):
+        v[k] = across_i + (2 * k - 1) * half[i, 1 - a]
+        w[k] = across_j + (2 * k - 1) * half[j, 1 - b]
+    return perpendicular_pair(u, v, w)
+
+
+@njit(cache=True, error_model="numpy")
+def _sides_aligned(i, j, axes):
+    """Whether every axis of one frame is parallel or perpendicular to every axis of the other."""
+    for a in range(3):
+        for b in range(3):
+            c = abs(_dot(axes[i, a], axes[j, b]))
+            if ALIGNED < c < 1.0 - ALIGNED:
+                return False
+    return True
+
+
+@njit(cache=True, error_model="numpy")
+def near_pair(i: int, j: int, panels: PanelArrays) -> float:
+    """Double integral over two near panels, or one and the same, by the best rule there is."""
+    axes, half = panels.axes, panels.half
+    gap = panels.center[i] - panels.center[j]
+    extent = math.sqrt(_dot(gap, gap)) + panels.radius[i] + panels.radius[j]
+    areas = panels.area[i] * panels.area[j]
+    facing = abs(_dot(axes[i, 2], axes[j, 2]))
+    boxes = half[i, 0] > 0.0 and half[j, 0] > 0.0 and extent**4 < CLOSED_LOSS * areas
+    if boxes and _sides_aligned(i, j, axes):
+        return _parallel(i, j, panels, gap) if facing > 0.5 else _perpendicular(i, j, panels, gap)
+    reach = extent**2 * 4.0 * panels.radius[i] * panels.radius[j]
+    if facing > 1.0 - ALIGNED**2 * 50.0 and reach < SIDES_LOSS * areas:
+        return coplanar_pair(i, j, panels)
+    if panels.area[i] <= panels.area[j]:
+        return clustered_pair(i, j, panels)
+    return clustered_pair(j, i, panels)
+
+
+@njit(cache=True, error_model="numpy")
+def _fill_row(i, panels, targets, reach, reuse, single, tests):
+    n = panels.area.size
+    scratch = np.empty((2, 3, targets.weights.shape[1]))
+    out = np.empty(5)
+    near_count = 0
+    for j in range(n):
+        if reuse[i] and reuse[j]:
+            continue
+        dx = panels.center[i] - panels.center[j]
+        distance = math.sqrt(_dot(dx, dx)) / (panels.radius[i] + panels.radius[j])
+        if distance > reach[1]:
+            _far_pair(i, j, panels, targets, out)
+        else:
+            _sampled_pair(i, j, panels, targets, scratch, out)
+            near_count += 1
+            if distance <= reach[0]:
+                if j < i:
+                    out[0] = 0.0
+                else:
+                    out[0] = near_pair(i, j, panels)
+        single[i, j] = out[0]
+        for k in range(4):
+            tests[k, i, j] = out[k + 1]
+    return near_count
+
+
+@njit(cache=True, parallel=True, error_model="numpy")
+def fill(
+    panels: PanelArrays,
+    targets: Targets,
+    reach: np.ndarray,
+    reuse: np.ndarray,
+    single: np.ndarray,
+    tests: np.ndarray,
+) -> int:
+    """Fill A (n, n) and T (4, n, n) where not both panels are marked for reuse.
+
+    Near pairs are computed once and left out (zero) below the diagonal; all others have
+    both rows, which differ by quadrature error only.
+
+    Args:
+        panels: geometry.
+        targets: samples and tests.
+        reach: (2,) ``near`` and ``far``: distances over the sum of both radii.
+        reuse: (n,) bool, panels whose mutual integrals are already there.
+        single: (n, n) A, filled in place.
+        tests: (4, n, n) T, filled in place.
+
+    Returns:
+        Number of pairs that were sampled against an exact potential.
+    """
+    sampled = 0
+    for i in prange(panels.area.size):
+        sampled += _fill_row(i, panels, targets, reach, reuse, single, tests)
+    return sampled
