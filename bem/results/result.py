@@ -1,14 +1,20 @@
-"""The result of an extraction: the Maxwell matrix, its error bars, and how it was reached."""
+"""The result of an extraction: the Maxwell matrix, its error bars, and how it was reached.
+
+Signs and units: Q = C V with Q in coulomb, V in volt, C in farad. Diagonal entries are
+positive, the others negative or zero. The sum of a row is the capacitance of that conductor
+to the surroundings; minus an off-diagonal entry is the capacitance between two conductors.
+"""
 
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from os import PathLike
 from typing import Any
 
 import numpy as np
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Round:
     """Record of one refinement round.
 
@@ -27,7 +33,7 @@ class Round:
     seconds: float
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False, repr=False)
 class CapacitanceResult:
     """Maxwell capacitance matrix with error bars.
 
@@ -48,6 +54,7 @@ class CapacitanceResult:
         inputs: one dict per conductor: name, file, sha256, unit, part, changes.
         settings: all that determines the run.
         seconds: {phase: seconds}.
+        version: version of bem that made the result.
         panel_corners: (p, 4, 3) m, the last mesh; a triangle repeats its last corner.
         panel_conductor: (p,) index of the conductor that owns each panel.
         density: (p, n) C/m^2 per volt: column j for 1 V on conductor j, 0 V on the others.
@@ -78,3 +85,68 @@ class CapacitanceResult:
     def panels(self) -> int:
         """Number of panels of the last round."""
         return self.rounds[-1].panels
+
+    @property
+    def mutual(self) -> np.ndarray:
+        """(n, n) F: -C_ij between two conductors; on the diagonal, to the surroundings."""
+        between = 0.0 - self.capacitance
+        np.fill_diagonal(between, self.row_sum)
+        return between
+
+    @property
+    def allowance(self) -> np.ndarray:
+        """(n, n) F: the bar that the tolerance allows each entry, t sqrt(C_ii C_jj)."""
+        size = np.sqrt(np.abs(np.diagonal(self.capacitance)))
+        return self.tolerance * np.outer(size, size)
+
+    def to_json(self, path: str | PathLike[str], arrays: bool = True) -> None:
+        """Save everything; ``load_result`` reads it back without loss.
+
+        Args:
+            path: file to write; it appears complete or not at all.
+            arrays: also save the panels and densities.
+
+        Raises:
+            InputError: the file cannot be written.
+        """
+        from bem.exports.json_file import save_json
+
+        save_json(self, path, arrays)
+
+    def to_csv(self, path: str | PathLike[str]) -> None:
+        """Save the entries and row sums with their bars, one line each.
+
+        Raises:
+            InputError: the file cannot be written.
+        """
+        from bem.exports.csv_file import save_csv
+
+        save_csv(self, path)
+
+    def __str__(self) -> str:
+        from bem.exports.text import report
+
+        return report(self)
+
+    def __repr__(self) -> str:
+        reached = "reached" if self.converged else "not reached"
+        return (
+            f"<CapacitanceResult: {len(self.conductors)} conductors, {self.panels} panels, "
+            f"tolerance {self.tolerance:g} {reached}>"
+        )
+
+    def _repr_html_(self) -> str:
+        from bem.exports.html import report
+
+        return report(self)
+
+
+def load_result(path: str | PathLike[str]) -> CapacitanceResult:
+    """Read a result that ``CapacitanceResult.to_json`` saved.
+
+    Raises:
+        InputError: the file is missing, damaged, or not a saved result.
+    """
+    from bem.exports.json_file import load_json
+
+    return load_json(path)

@@ -1,0 +1,195 @@
+"""bem extract: the capacitance matrix of a scene file or of mesh files."""
+
+from __future__ import annotations
+
+import argparse
+from typing import TYPE_CHECKING, Any
+
+from bem.cli import values
+from bem.cli.live import live_or_none
+from bem.cli.outputs import check_outputs, deliver
+from bem.cli.pairs import match_pairs, read_pair
+from bem.cli.terminal import tell
+from bem.errors import EXIT_DONE, EXIT_INTERRUPTED, InputError, ToleranceNotReached, UsageError
+from bem.results.outcome import remedy
+from bem.units import METRES_PER, metres_per
+
+if TYPE_CHECKING:
+    from bem.results.result import CapacitanceResult
+    from bem.scene.scene import Scene
+
+_EPILOG = """\
+examples:
+  bem extract probe.toml --tolerance 0.1% --json probe.json
+  bem extract rod.stl wall.msh --unit mm --pair rod,wall=1%
+
+exit codes:
+  0    done, everything that was asked was reached
+  2    the command is not understood, or an output file cannot be written
+  3    an input cannot be used, or writing the result failed
+  4    the tolerance was not reached; the result is still written, and marked
+  5    refused: more memory would be needed than is allowed
+  130  interrupted; the best result so far is written, if there is one
+"""
+
+
+def add_parser(subparsers: Any) -> None:
+    """Describe the command."""
+    parser = subparsers.add_parser(
+        "extract",
+        help="compute the capacitance matrix of a scene or of meshes",
+        description="Compute the Maxwell capacitance matrix with an error bar on every entry.",
+        epilog=_EPILOG,
+    )
+    parser.add_argument(
+        "files", nargs="+", metavar="FILE", help="one scene file (.toml), or mesh files"
+    )
+    _add_scene_options(parser)
+    _add_accuracy_options(parser)
+    _add_effort_options(parser)
+    _add_output_options(parser)
+
+
+def _add_scene_options(parser: argparse.ArgumentParser) -> None:
+    group = parser.add_argument_group("the scene")
+    group.add_argument(
+        "--unit", metavar="UNIT", help=f"unit of mesh coordinates: {', '.join(METRES_PER)}"
+    )
+    group.add_argument(
+        "--surroundings-permittivity",
+        metavar="NUMBER",
+        type=values.positive("--surroundings-permittivity"),
+        help="relative permittivity of the medium (default: the scene's, or 1)",
+    )
+
+
+def _add_accuracy_options(parser: argparse.ArgumentParser) -> None:
+    group = parser.add_argument_group("accuracy")
+    group.add_argument(
+        "--tolerance",
+        metavar="FRACTION",
+        type=values.fraction("--tolerance"),
+        default=1e-3,
+        help="every bar at most this times sqrt(C_ii C_jj) (default 0.001)",
+    )
+    group.add_argument(
+        "--pair",
+        metavar="A,B=ACCURACY",
+        type=read_pair,
+        action="append",
+        default=[],
+        help="relative accuracy of one coupling, such as 'rod,wall=1%%'; may be repeated",
+    )
+
+
+def _add_effort_options(parser: argparse.ArgumentParser) -> None:
+    group = parser.add_argument_group("effort")
+    group.add_argument(
+        "--max-panels",
+        metavar="N",
+        type=values.count("--max-panels"),
+        default=20000,
+        help="stop before more panels than this (default 20000)",
+    )
+    group.add_argument(
+        "--memory",
+        metavar="AMOUNT",
+        type=values.memory("--memory"),
+        help="use no more memory than this, such as 8GB (default: what is free)",
+    )
+    group.add_argument(
+        "--threads",
+        metavar="N",
+        type=values.count("--threads"),
+        help="number of threads (default: one per processor)",
+    )
+
+
+def _add_output_options(parser: argparse.ArgumentParser) -> None:
+    group = parser.add_argument_group("output")
+    group.add_argument("--json", metavar="FILE", help="save everything, to be read by bem show")
+    group.add_argument("--csv", metavar="FILE", help="save the entries with their bars")
+    group.add_argument("--budget", action="store_true", help="print how the bars are composed")
+    group.add_argument("--quiet", action="store_true", help="no progress on standard error")
+
+
+def run(args: argparse.Namespace) -> int:
+    """Extract, deliver, and tell how it went by the exit code."""
+    check_outputs(args, args.files)
+    _check_unit(args)
+    scene = _load(args)
+    pairs = match_pairs(args.pair, [conductor.name for conductor in scene.conductors])
+    result = _extract(scene, pairs, args)
+    if not deliver(result, args):
+        return InputError.exit_code
+    return _exit_code(result)
+
+
+def _check_unit(args: argparse.Namespace) -> None:
+    scenes = [name for name in args.files if _is_scene(name)]
+    if not scenes and args.unit is None:
+        raise UsageError(
+            "--unit is missing: mesh files do not say their unit; "
+            f"allowed are {', '.join(METRES_PER)}"
+        )
+    if scenes and len(args.files) > 1:
+        raise UsageError(
+            f"found the scene {scenes[0]} among {len(args.files)} files; "
+            "give one scene file, or mesh files alone"
+        )
+    if scenes and args.unit is not None:
+        raise UsageError(
+            f"--unit {args.unit}: a scene file states its own unit; "
+            f"drop the option or change the unit in {scenes[0]}"
+        )
+    if args.unit is not None:
+        metres_per(args.unit)
+
+
+def _is_scene(name: str) -> bool:
+    return name.lower().endswith(".toml")
+
+
+def _load(args: argparse.Namespace) -> Scene:
+    from bem.scene.scene_file import load_scene, scene_from_files
+
+    permittivity = args.surroundings_permittivity
+    if not _is_scene(args.files[0]):
+        return scene_from_files(
+            args.files, args.unit, 1.0 if permittivity is None else permittivity
+        )
+    scene = load_scene(args.files[0])
+    if permittivity is not None:
+        scene.relative_permittivity = permittivity
+    return scene
+
+
+def _extract(
+    scene: Scene, pairs: dict[tuple[str, str], float], args: argparse.Namespace
+) -> CapacitanceResult:
+    from bem.extraction.extract import extract
+
+    live = live_or_none(args.quiet, args.tolerance)
+    try:
+        return extract(
+            scene,
+            args.tolerance,
+            pairs=pairs,
+            max_panels=args.max_panels,
+            memory=args.memory,
+            threads=args.threads,
+            progress=live,
+        )
+    finally:
+        if live is not None:
+            live.close()
+
+
+def _exit_code(result: CapacitanceResult) -> int:
+    if result.stopped_by == "interrupt":
+        tell(f"bem: {remedy(result.stopped_by)}")
+        return EXIT_INTERRUPTED
+    if not result.converged:
+        tell(f"bem: tolerance {result.tolerance:g} not reached: {remedy(result.stopped_by)}")
+        return ToleranceNotReached.exit_code
+    return EXIT_DONE

@@ -1,0 +1,103 @@
+"""The lines below the tables: what the bars mean, how the result was reached, what to know."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+import numpy as np
+
+from bem.exports.names import shown
+from bem.results.outcome import remedy
+from bem.results.result import CapacitanceResult
+from bem.units import metre_unit
+
+MEANING = "{sign} is a bound meant to hold for at least 95 % of entries"
+MOST_NOTES = 10
+
+
+def lines_of(result: CapacitanceResult, sign: str) -> list[str]:
+    """One fact per line, in the order in which a reader needs them.
+
+    Args:
+        result: what to describe.
+        sign: how plus-minus is written.
+    """
+    return [
+        MEANING.format(sign=sign),
+        _outcome(result),
+        _effort(result),
+        *_phases(result),
+        *_bodies(result),
+        _audit(result),
+        *_changes(result),
+        *(f"warning: {shown(line)}" for line in result.warnings),
+    ]
+
+
+def _outcome(result: CapacitanceResult) -> str:
+    worst = result.rounds[-1].worst
+    times = f"{worst:.2g} times" if math.isfinite(worst) else "not yet comparable with"
+    largest = f"the largest bar is {times} what it allows"
+    if result.converged:
+        return f"tolerance {result.tolerance:g} reached: {largest}"
+    reason = remedy(result.stopped_by)
+    return f"TOLERANCE {result.tolerance:g} NOT REACHED: {largest}; {reason}"
+
+
+def _effort(result: CapacitanceResult) -> str:
+    threads = result.settings.get("threads", "not recorded")
+    return (
+        f"panels {result.panels}, rounds {len(result.rounds)}, "
+        f"time {result.rounds[-1].seconds:.3g} s, threads {threads}"
+    )
+
+
+def _phases(result: CapacitanceResult) -> list[str]:
+    parts = [f"{shown(phase)} {seconds:.2g} s" for phase, seconds in result.seconds.items()]
+    return [f"time by phase: {', '.join(parts)}"] if parts else []
+
+
+def _bodies(result: CapacitanceResult) -> list[str]:
+    """Give the size of the whole, so that a wrong unit strikes the eye, and the medium."""
+    facts = []
+    if result.panel_corners is not None and len(result.panel_corners):
+        points = result.panel_corners.reshape(-1, 3)
+        span = points.max(axis=0) - points.min(axis=0)
+        name, size = metre_unit(float(span.max()))
+        lengths = " x ".join(f"{length / size:.4g}" for length in span)
+        facts.append(f"bodies span {lengths} {name}")
+    if "relative_permittivity" in result.settings:
+        facts.append(f"relative permittivity {result.settings['relative_permittivity']:g}")
+    return [", ".join(facts)] if facts else []
+
+
+def _audit(result: CapacitanceResult) -> str:
+    if not result.audit:
+        return "audit: no check was recorded"
+    off = [_finding(name, found) for name, found in result.audit.items() if not found["ok"]]
+    if off:
+        return f"audit: {len(off)} of {len(result.audit)} checks off: {'; '.join(off)}"
+    name = max(result.audit, key=lambda check: _used(result.audit[check]))
+    nearest = _finding(name, result.audit[name])
+    return f"audit: {len(result.audit)} of {len(result.audit)} checks passed; nearest to its limit: {nearest}"
+
+
+def _finding(name: str, found: dict[str, Any]) -> str:
+    return f"{shown(name)} {found['value']:.2g} (limit {found['limit']:.2g})"
+
+
+def _used(found: dict[str, Any]) -> float:
+    """How much of its limit a finding takes."""
+    return float(np.divide(abs(found["value"]), abs(found["limit"]))) if found["limit"] else 0.0
+
+
+def _changes(result: CapacitanceResult) -> list[str]:
+    notes = [
+        f"{shown(str(entry.get('name')))}: {shown(change)}"
+        for entry in result.inputs
+        for change in entry.get("changes", ())
+    ]
+    left_out = len(notes) - MOST_NOTES
+    more = [f"{left_out} more changes on reading; all are in the JSON file"] if left_out > 0 else []
+    return notes[:MOST_NOTES] + more

@@ -1,0 +1,137 @@
+"""What a reader of a result wants to see, as tables that text and HTML both render."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+
+from bem.exports.digits import UNKNOWN, Reading, reading
+from bem.results.result import CapacitanceResult
+from bem.units import farad_unit
+
+WIDEST_MATRIX = 8
+"""More conductors than this: no matrix, but the self-capacitances and the largest couplings."""
+
+LONGEST_LIST = 40
+MOST_COUPLINGS = 20
+ELSEWHERE = "every entry is in the JSON and CSV files (--json, --csv; to_json, to_csv)"
+
+
+@dataclass(frozen=True)
+class Row:
+    """One line of a table: the conductors that it is about, and its cells."""
+
+    names: tuple[str, ...]
+    cells: tuple[Reading, ...]
+
+
+@dataclass(frozen=True)
+class Table:
+    """A titled table; every cell is a reading in the unit that the title names."""
+
+    title: str
+    heads: tuple[str, ...]
+    rows: tuple[Row, ...]
+    note: str = ""
+
+
+@dataclass(frozen=True)
+class Unit:
+    """A unit of capacitance, 10**power farad."""
+
+    name: str
+    power: int
+
+    def reading(self, value: float, bar: float) -> Reading:
+        """``value`` and ``bar`` (farad) in this unit."""
+        return reading(value, bar, self.power)
+
+
+def unit_of(result: CapacitanceResult) -> Unit:
+    """Return the unit of all tables of ``result``: it suits the largest diagonal entry."""
+    diagonal = np.abs(np.diagonal(result.capacitance))
+    largest = float(np.max(diagonal, initial=0.0, where=np.isfinite(diagonal)))
+    name, size = farad_unit(largest)
+    return Unit(name, round(math.log10(size)))
+
+
+def tables_of(result: CapacitanceResult) -> list[Table]:
+    """Lay out the matrix (with many conductors, its diagonal), row sums and couplings."""
+    unit = unit_of(result)
+    small = len(result.conductors) <= WIDEST_MATRIX
+    first = [_matrix(result, unit), _row_sums(result, unit)] if small else [_own(result, unit)]
+    return [*first, *_couplings(result, unit)]
+
+
+def _matrix(result: CapacitanceResult, unit: Unit) -> Table:
+    rows = [
+        Row((name,), tuple(map(unit.reading, result.capacitance[i], result.error[i])))
+        for i, name in enumerate(result.conductors)
+    ]
+    title = f"Maxwell capacitance matrix C in {unit.name} (Q = C V)"
+    return Table(title, result.conductors, tuple(rows))
+
+
+def _row_sums(result: CapacitanceResult, unit: Unit) -> Table:
+    readings = map(unit.reading, result.row_sum, result.row_sum_error)
+    rows = [Row((name,), (cell,)) for name, cell in zip(result.conductors, readings, strict=True)]
+    return Table(f"To the surroundings (row sums) in {unit.name}", ("",), tuple(rows))
+
+
+def _own(result: CapacitanceResult, unit: Unit) -> Table:
+    diagonal = map(unit.reading, np.diagonal(result.capacitance), np.diagonal(result.error))
+    outward = map(unit.reading, result.row_sum, result.row_sum_error)
+    lines = zip(result.conductors, diagonal, outward, strict=True)
+    rows = [Row((name,), (own, out)) for name, own, out in lines][:LONGEST_LIST]
+    title = f"Maxwell capacitance matrix C in {unit.name} (Q = C V): diagonal and row sums"
+    left_out = len(result.conductors) - len(rows)
+    note = f"{left_out} more conductors; {ELSEWHERE}" if left_out else ""
+    return Table(title, ("C_ii", "to the surroundings"), tuple(rows), note)
+
+
+def _couplings(result: CapacitanceResult, unit: Unit) -> list[Table]:
+    n = len(result.conductors)
+    count = n * (n - 1) // 2
+    if not count:
+        return []
+    chosen = list(_chosen_pairs(result))
+    rows = tuple(_coupling(result, unit, i, j) for i, j in chosen)
+    title = f"Mutual capacitances (-C_ij) in {unit.name}, largest first"
+    heads = ("", "bar / value", "asked")[: 3 if result.pairs else 2]
+    note = f"{count - len(rows)} more pairs; {ELSEWHERE}" if count > len(rows) else ""
+    return [Table(title, heads, rows, note)]
+
+
+def _chosen_pairs(result: CapacitanceResult) -> Iterator[tuple[int, int]]:
+    """Choose the pairs to list, by size: all, or the largest and those that were asked for."""
+    n = len(result.conductors)
+    first, second = np.triu_indices(n, 1)
+    order = np.argsort(-np.abs(result.capacitance[first, second]), kind="stable")
+    most = len(order) if n <= WIDEST_MATRIX else MOST_COUPLINGS
+    for place, index in enumerate(order):
+        i, j = int(first[index]), int(second[index])
+        if place < most or _asked(result, i, j) is not None:
+            yield i, j
+
+
+def _coupling(result: CapacitanceResult, unit: Unit, i: int, j: int) -> Row:
+    value, bar = -result.capacitance[i, j], result.error[i, j]
+    cells = [unit.reading(value, bar), Reading(_percent(bar / abs(value) if value else math.inf))]
+    if result.pairs:
+        asked = _asked(result, i, j)
+        cells.append(Reading("" if asked is None else _percent(asked)))
+    return Row((result.conductors[i], result.conductors[j]), tuple(cells))
+
+
+def _asked(result: CapacitanceResult, i: int, j: int) -> float | None:
+    a, b = result.conductors[i], result.conductors[j]
+    return result.pairs.get((a, b), result.pairs.get((b, a)))
+
+
+def _percent(ratio: float) -> str:
+    if not math.isfinite(ratio):
+        return UNKNOWN
+    return f"{100 * ratio:.2g} %" if ratio < 1 else "over 100 %"
