@@ -18,7 +18,8 @@ EXIT_UNEXPECTED = 1
 EXIT_BROKEN_PIPE = 141
 
 _DESCRIPTION = """\
-Capacitance matrices of 3D conductors from mesh files, with an error bar on every entry.
+Capacitance matrices of 3D conductors from mesh files,
+with an error bar on every entry.
 """
 
 _EPILOG = """\

@@ -18,16 +18,14 @@ def budget_text(result: CapacitanceResult, sign: str) -> str:
         return wrapped("budget: no parts of the bars were recorded")
     unit = unit_of(result)
     rows = [_part(unit, name, part, (i, j), result) for name, part in result.budget.items()]
-    entry = f"{shown(result.conductors[i])}, {shown(result.conductors[j])}"
-    rows.append(_bar_row(unit, (i, j), result))
-    return table_text(
-        Table(
-            f"Parts of the bars in {unit.name}; the entry nearest to its allowance is C({entry})",
-            ("at that entry", "share of its bar", "largest at any entry"),
-            tuple(rows),
-        ),
-        sign,
+    entry = f"C({shown(result.conductors[i])}, {shown(result.conductors[j])})"
+    table = Table(
+        f"Parts of the bars in {unit.name}",
+        ("at one entry", "share of its bar", "largest at any entry"),
+        (*rows, _bar_row(unit, (i, j), result)),
+        f"the one entry is that nearest to its allowance, {entry}",
     )
+    return table_text(table, sign)
 
 
 def tightest_entry(result: CapacitanceResult) -> tuple[int, int]:

@@ -23,7 +23,7 @@ def plain(value: Any) -> Any:
     if isinstance(value, list | tuple):
         return [plain(item) for item in value]
     if isinstance(value, np.ndarray | np.generic):
-        return plain(value.tolist())
+        return value.tolist()
     if value is None or isinstance(value, bool | int | float | str):
         return value
     return str(value)
@@ -42,9 +42,17 @@ def take_non_finite(value: Any, where: Where) -> tuple[Any, list[dict[str, Any]]
         keys = list(value)
         items, found = _take_each(list(value.values()), keys, where)
         return dict(zip(keys, items, strict=True)), found
-    if isinstance(value, list):
+    if isinstance(value, list) and not _all_finite(value):
         return _take_each(value, list(range(len(value))), where)
     return value, []
+
+
+def _all_finite(items: list[Any]) -> bool:
+    """Tell at once that a list holds nothing but finite numbers: then so does their sum."""
+    try:
+        return math.isfinite(sum(items))
+    except (TypeError, OverflowError):
+        return False
 
 
 def _take_each(

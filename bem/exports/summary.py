@@ -80,7 +80,8 @@ def _audit(result: CapacitanceResult) -> str:
         return f"audit: {len(off)} of {len(result.audit)} checks off: {'; '.join(off)}"
     name = max(result.audit, key=lambda check: _used(result.audit[check]))
     nearest = _finding(name, result.audit[name])
-    return f"audit: {len(result.audit)} of {len(result.audit)} checks passed; nearest to its limit: {nearest}"
+    count = len(result.audit)
+    return f"audit: {count} of {count} checks passed; nearest to its limit: {nearest}"
 
 
 def _finding(name: str, found: dict[str, Any]) -> str:
