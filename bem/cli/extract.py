@@ -25,6 +25,7 @@ examples:
 
 exit codes:
   0    done, everything that was asked was reached
+  1    a fault in bem; please report it
   2    the command is not understood, or an output file cannot be written
   3    an input cannot be used, or writing the result failed
   4    the tolerance was not reached; the result is still written, and marked

@@ -31,8 +31,8 @@ examples:
 
 exit codes:
   0 done; 1 a fault in bem; 2 usage; 3 bad input, or writing the result failed;
-  4 tolerance not reached, the result is still written; 5 refused for lack of memory;
-  130 interrupted; 141 the reader of the output went away
+  4 tolerance not reached, the result is still written, and marked;
+  5 refused for lack of memory; 130 interrupted; 141 nobody read the output
 
 bem COMMAND --help describes each command.
 """
@@ -106,3 +106,7 @@ def _unexpected(error: Exception) -> int:
         "please report it with the command and its files (BEM_DEBUG=1 shows where it happened)"
     )
     return EXIT_UNEXPECTED
+
+
+if __name__ == "__main__":
+    sys.exit(main())
