@@ -24,10 +24,10 @@ with an error bar on every entry.
 
 _EPILOG = """\
 examples:
-  bem inspect probe.toml                         look at the bodies before solving
-  bem extract probe.toml --json probe.json       compute, print and save
-  bem extract rod.stl wall.msh --unit mm         the same from mesh files
-  bem show probe.json --csv probe.csv            print a saved result
+  bem inspect probe.toml                    look at the bodies before solving
+  bem extract probe.toml --json probe.json  compute, print and save
+  bem extract rod.stl wall.msh --unit mm    the same from mesh files
+  bem show probe.json --csv probe.csv       print a saved result
 
 exit codes:
   0 done; 1 a fault in bem; 2 usage; 3 bad input, or writing the result failed;
