@@ -7,10 +7,20 @@ import math
 import numpy as np
 import pytest
 import reference_formulas as formulas
-from reference_thin_revolved import Generator, thin_capacitance
+from reference_revolved import Generator, revolved_capacitance
 from reference_values import BY_NAME, LEFT_OUT, PER_LENGTH, REFERENCES, Reference
 
-PINHOLE = 3e-4
+PINHOLE = 1e-3
+
+
+def line(*points: tuple[float, float]) -> Generator:
+    return Generator(points)
+
+
+def can(half_length: float, middle: float = 0.0) -> Generator:
+    low, high = middle - half_length, middle + half_length
+    return line((PINHOLE, low), (1.0, low), (1.0, high), (PINHOLE, high))
+
 
 CLOSED_FORMS: dict[str, float | np.ndarray] = {
     "sphere": 1.0,
@@ -31,16 +41,20 @@ CLOSED_FORMS: dict[str, float | np.ndarray] = {
     "two discs, gap 1": formulas.two_discs(1.0),
 }
 
-THIN_SHEETS = {
-    "disc": [Generator(PINHOLE, 0.0, 1.0, 0.0)],
-    "open tube, half length 1": [Generator(1.0, -1.0, 1.0, 1.0)],
-    "annulus 0.5, 1": [Generator(0.5, 0.0, 1.0, 0.0)],
-    "two discs, gap 1": [Generator(PINHOLE, z, 1.0, z) for z in (0.0, 1.0)],
+REVOLVED = {
+    "disc": [line((PINHOLE, 0.0), (1.0, 0.0))],
+    "open tube, half length 1": [line((1.0, -1.0), (1.0, 1.0))],
+    "annulus 0.5, 1": [line((0.5, 0.0), (1.0, 0.0))],
+    "two discs, gap 1": [line((PINHOLE, z), (1.0, z)) for z in (0.0, 1.0)],
     "guard ring": [
-        Generator(PINHOLE, 0.5, 1.0, 0.5),
-        Generator(1.1, 0.5, 2.0, 0.5),
-        Generator(PINHOLE, 0.0, 2.0, 0.0),
+        line((PINHOLE, 0.5), (1.0, 0.5)),
+        line((1.1, 0.5), (2.0, 0.5)),
+        line((PINHOLE, 0.0), (2.0, 0.0)),
     ],
+    "solid cylinder, half length 0.25": [can(0.25)],
+    "solid cylinder, half length 1": [can(1.0)],
+    "solid cylinder, half length 4": [can(4.0)],
+    "two thick discs": [can(0.1, 0.35), can(0.1, -0.35)],
 }
 
 VOLUMES = {
@@ -89,11 +103,11 @@ def test_closed_forms_give_the_digits(name: str) -> None:
     assert np.all(np.abs(record.matrix - CLOSED_FORMS[name]) <= record.uncertainty)
 
 
-@pytest.mark.parametrize("name", THIN_SHEETS)
-def test_thin_sheets_by_a_second_method(name: str) -> None:
-    """A spectral method for sheets of revolution confirms the computed values."""
-    found = thin_capacitance(THIN_SHEETS[name], nodes=150)
-    assert np.all(np.abs(found - BY_NAME[name].matrix) <= 1e-10)
+@pytest.mark.parametrize("name", REVOLVED)
+def test_bodies_of_revolution_by_a_second_method(name: str) -> None:
+    """A spectral method confirms the computed values to their last digits."""
+    found = revolved_capacitance(REVOLVED[name])
+    assert np.all(np.abs(found - BY_NAME[name].matrix) <= 1e-9)
 
 
 def test_more_digits_of_the_cube_lie_in_the_published_interval() -> None:
