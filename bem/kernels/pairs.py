@@ -210,10 +210,7 @@ def _fill_row(i, panels, targets, reach, reuse, single, tests):
             _sampled_pair(i, j, panels, targets, scratch, out)
             near_count += 1
             if distance <= reach[0]:
-                if j < i:
-                    out[0] = 0.0
-                else:
-                    out[0] = near_pair(i, j, panels)
+                out[0] = near_pair(i, j, panels) if j >= i else math.nan
         single[i, j] = out[0]
         for k in range(4):
             tests[k, i, j] = out[k + 1]
@@ -231,8 +228,8 @@ def fill(
 ) -> int:
     """Fill A (n, n) and T (4, n, n) where not both panels are marked for reuse.
 
-    Near pairs are computed once and left out (zero) below the diagonal; all others have
-    both rows, which differ by quadrature error only.
+    Near pairs are computed once and mirrored; all others have both rows, which differ by
+    quadrature error only.
 
     Args:
         panels: geometry.
@@ -248,4 +245,35 @@ def fill(
     sampled = 0
     for i in prange(panels.area.size):
         sampled += _fill_row(i, panels, targets, reach, reuse, single, tests)
+    for i in range(panels.area.size):
+        for j in range(i):
+            if math.isnan(single[i, j]):
+                single[i, j] = single[j, i]
     return sampled
+
+
+@njit(cache=True, error_model="numpy")
+def symmetric(single: np.ndarray, area: np.ndarray, out: np.ndarray) -> None:
+    """Fill ``out`` with A, each pair taken from the row whose outer panel is smaller."""
+    for i in range(area.size):
+        for j in range(i + 1):
+            value = single[i, j] if area[i] < area[j] else single[j, i]
+            out[i, j] = value
+            out[j, i] = value
+
+
+@njit(cache=True, error_model="numpy")
+def asymmetry(single: np.ndarray, area: np.ndarray, x: np.ndarray) -> np.ndarray:
+    """x^T (A - mean of both rows) x, (k, k) for x (n, k): what the choice of row decides."""
+    k = x.shape[1]
+    total = np.zeros((k, k))
+    for i in range(area.size):
+        for j in range(i):
+            half = 0.5 * (single[i, j] - single[j, i])
+            if area[i] >= area[j]:
+                half = -half
+            if half != 0.0:
+                for a in range(k):
+                    for b in range(k):
+                        total[a, b] += half * (x[i, a] * x[j, b] + x[j, a] * x[i, b])
+    return total

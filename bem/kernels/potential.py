@@ -102,3 +102,15 @@ def potential(j: int, panels: PanelArrays, points: np.ndarray, local: np.ndarray
         angle = atan2(work[2, k], work[1, k])
         angle = angle + 2.0 * math.pi if angle < _WRAP else angle
         work[0, k] -= abs(local[2, k]) * angle
+
+
+@njit(cache=True, error_model="numpy")
+def potential_of_panels(panels: PanelArrays, points: np.ndarray, density: np.ndarray) -> np.ndarray:
+    """Sum over panels of density times the integral of 1/|x - y|, at points (3, m): (m,)."""
+    local, work = np.empty(points.shape), np.empty(points.shape)
+    total = np.zeros(points.shape[1])
+    for j in range(density.size):
+        potential(j, panels, points, local, work)
+        for k in range(points.shape[1]):
+            total[k] += density[j] * work[0, k]
+    return total

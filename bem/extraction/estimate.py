@@ -1,0 +1,94 @@
+"""The reported value and its error bar, from the rounds so far.
+
+    X   = L + kappa S + F
+    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + FACET |F| + FLOOR sqrt(L_ii L_jj)
+
+S and Sabs are the signed and absolute summed indicator, F the faceting effect, q the
+quadrature effect. One kappa serves the whole matrix: the slope of L against S over the last
+rounds on the normalised trace, drawn toward its usual value. dX is the largest change of X
+over the last rounds, dk the distance of kappa from raw slopes. The coefficients were chosen
+on the cases of benchmarks/bench_bars.py, which also reports how well they hold.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from bem.extraction.solution import Sums
+
+KAPPA_USUAL = 1.0
+KAPPA_DRAW = 0.3
+KAPPA_LOW, KAPPA_HIGH = 0.6, 3.0
+SHARE, TREND, DOUBT, FACET = 0.25, 0.35, 0.4, 0.25
+FLOOR = 1e-6
+ROUNDS = 4
+"""Rounds before a bar is believed."""
+
+
+@dataclass(frozen=True)
+class Estimate:
+    """Value and bar of every entry, (k, k + 1) each; the last column is the row sum.
+
+    Args:
+        value: extrapolated L.
+        bar: its error bar.
+        parts: what the bar is made of.
+        kappa: slope used.
+    """
+
+    value: np.ndarray
+    bar: np.ndarray
+    parts: dict[str, np.ndarray]
+    kappa: float
+
+
+def _slope(steps: list[tuple[float, float]], anchor: float) -> float:
+    """Least-squares slope of value against indicator, drawn to KAPPA_USUAL by ``anchor``."""
+    over = sum(dc * ds for dc, ds in steps) + anchor * KAPPA_USUAL
+    under = sum(ds * ds for _, ds in steps) + anchor
+    return over / under if under > 0.0 else KAPPA_USUAL
+
+
+def _steps(rounds: list[Sums]) -> list[tuple[float, float]]:
+    """Changes of value (up) and of indicator (down) of the normalised trace between rounds."""
+    size = np.diagonal(rounds[-1].value)
+    c = [float((np.diagonal(r.value) / size).sum()) for r in rounds]
+    s = [float((np.diagonal(r.signed) / size).sum()) for r in rounds]
+    return [(c[k + 1] - c[k], s[k] - s[k + 1]) for k in range(len(rounds) - 1)]
+
+
+def _kappa(rounds: list[Sums]) -> tuple[float, float]:
+    """Kappa and how far raw slopes stray from it."""
+    steps = _steps(rounds[-4:])
+    if not steps:
+        return KAPPA_USUAL, KAPPA_USUAL
+    last = rounds[-1]
+    s = float((np.diagonal(last.signed) / np.diagonal(last.value)).sum())
+    kappa = float(np.clip(_slope(steps, KAPPA_DRAW * s * s), KAPPA_LOW, KAPPA_HIGH))
+    raw = [_slope(steps[-n:], 1e-12 * s * s) for n in (2, 3)]
+    return kappa, max(abs(kappa - np.clip(r, 0.0, KAPPA_HIGH)) for r in raw)
+
+
+def _extrapolated(rounds: list[Sums]) -> np.ndarray:
+    last = rounds[-1]
+    return last.value + _kappa(rounds)[0] * last.signed + last.faceting
+
+
+def estimate(rounds: list[Sums]) -> Estimate:
+    """Value and bar after the last of ``rounds``."""
+    last = rounds[-1]
+    value = _extrapolated(rounds)
+    kappa, doubt = _kappa(rounds)
+    earlier = [_extrapolated(rounds[:n]) for n in range(max(1, len(rounds) - 2), len(rounds))]
+    drift = np.max([np.abs(value - x) for x in earlier], axis=0) if earlier else np.abs(value)
+    root = np.sqrt(np.diagonal(last.value))
+    floor = FLOOR * root[:, None] * np.append(root, np.sqrt(max(last.value[:, -1].sum(), 0.0)))
+    parts = {
+        "discretisation": (SHARE + DOUBT * doubt) * last.absolute,
+        "trend": TREND * drift,
+        "quadrature": last.quadrature + floor,
+        "faceting": FACET * np.abs(last.faceting),
+    }
+    return Estimate(value, sum(parts.values()), parts, kappa)

@@ -1,0 +1,181 @@
+"""From a scene to its capacitance matrix: the one call that everything else serves."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable
+from dataclasses import asdict
+from typing import Any
+
+import numpy as np
+
+from bem import __version__
+from bem.errors import SolutionError, UsageError
+from bem.extraction.audit import Audit, audit
+from bem.extraction.loop import Limits, RoundState, Run
+from bem.extraction.marking import Goal
+from bem.extraction.memory import MemoryPlan
+from bem.extraction.progress import Progress
+from bem.extraction.scaled import ScaledScene
+from bem.extraction.threads import use_threads
+from bem.panels.mesh import Mesh
+from bem.results.result import CapacitanceResult, Round
+from bem.scene.inspect import check_scene
+from bem.scene.scene import Scene
+
+MAX_PANELS = 10000
+TIGHTEST = 1e-6
+
+
+def extract(
+    scene: Scene,
+    tolerance: float = 1e-3,
+    *,
+    pairs: dict[tuple[str, str], float] | None = None,
+    max_panels: int = MAX_PANELS,
+    memory: int | None = None,
+    threads: int | None = None,
+    progress: Callable[[Progress], None] | None = None,
+) -> CapacitanceResult:
+    """Maxwell capacitance matrix of a scene, with an error bar on every entry.
+
+    Args:
+        scene: conductors and surroundings.
+        tolerance: every bar is brought below this times sqrt(C_ii C_jj).
+        pairs: relative accuracy wanted for single couplings, by their two names.
+        max_panels: the extraction stops, unconverged, before it needs more.
+        memory: limit in bytes for its matrices; by default 80 % of what is free.
+        threads: of the compiled integrals and the linear algebra; by default all cores.
+        progress: called with a Progress at every step.
+
+    Returns:
+        The result; ``converged`` says whether all bars came below what was asked.
+
+    Raises:
+        UsageError: a setting is out of range or names no conductor.
+        GeometryError: conductors touch, cross, or lie inside solid metal.
+        MemoryRefused: the starting mesh alone exceeds the limit.
+        SolutionError: the audit found the result unusable.
+    """
+    started = time.perf_counter()
+    goal = _goal(scene, tolerance, pairs or {})
+    _check_counts(max_panels, memory)
+    report = progress or (lambda _: None)
+    report(Progress("checking the geometry", 0, 0, float("nan"), 0.0))
+    inspection = check_scene(scene)
+    checked = time.perf_counter()
+    scaled = ScaledScene.of(scene)
+    mesh = Mesh.start(scaled.surfaces)
+    plan = MemoryPlan.of(memory)
+    plan.check_start(len(mesh.conductor))
+    run = Run(len(scene.conductors), goal, Limits(max_panels, plan), report, started=started)
+    with use_threads(threads) as used:
+        if _must_compile():
+            report(Progress("compiling kernels, first run only", 0, 0, float("nan"), run.elapsed))
+        run.go(mesh)
+        solved = time.perf_counter()
+        findings = audit(run.rounds[-1].solution, run.rounds[-1].found)
+    if findings.wild:
+        raise SolutionError(
+            f"the result failed its audit: {findings.wild[0]}; "
+            "check the geometry with 'bem inspect' and report the case if it is sound"
+        )
+    ended = time.perf_counter()
+    seconds = {
+        "geometry": checked - started,
+        "rounds": solved - checked,
+        "audit": ended - solved,
+        "total": ended - started,
+    }
+    settings = {"max_panels": max_panels, "memory_bytes": plan.limit, "threads": used,
+                "relative_permittivity": scene.relative_permittivity, "operator": "dense"}  # fmt: skip
+    return _result(scene, scaled, run, findings, (seconds, settings, tuple(inspection.notes)))
+
+
+def _goal(scene: Scene, tolerance: float, pairs: dict[tuple[str, str], float]) -> Goal:
+    if not scene.conductors:
+        raise UsageError("the scene has no conductors: add at least one")
+    if not (isinstance(tolerance, (int, float)) and TIGHTEST <= tolerance <= 0.5):
+        raise UsageError(f"tolerance: found {tolerance!r}, allowed is {TIGHTEST:g} to 0.5")
+    names = [c.name for c in scene.conductors]
+    wanted = []
+    for pair, accuracy in pairs.items():
+        for name in pair:
+            if name not in names:
+                raise UsageError(f"pair: no conductor is named {name!r}; there are {', '.join(names)}")
+        if pair[0] == pair[1]:
+            raise UsageError(f"pair: found {pair[0]!r} twice, needs two different conductors")
+        if not TIGHTEST <= accuracy <= 1.0:
+            raise UsageError(f"pair: found accuracy {accuracy!r}, allowed is {TIGHTEST:g} to 1")
+        wanted.append((names.index(pair[0]), names.index(pair[1]), float(accuracy)))
+    return Goal(float(tolerance), tuple(wanted))
+
+
+def _check_counts(max_panels: int, memory: int | None) -> None:
+    if max_panels < 1:
+        raise UsageError(f"max_panels: found {max_panels}, needs at least 1")
+    if memory is not None and memory < 1:
+        raise UsageError(f"memory: found {memory} bytes, needs at least 1")
+
+
+def _must_compile() -> bool:
+    """Whether the largest kernel is in no cache yet."""
+    from pathlib import Path
+
+    from bem.kernels.pairs import fill
+
+    if fill.signatures:
+        return False
+    folder = Path(fill.stats.cache_path)
+    return not any(folder.glob("pairs.fill-*.nbi"))
+
+
+def _record(state: RoundState, farad: float) -> Round:
+    count = len(state.found.value)
+    return Round(
+        panels=state.sums.panels,
+        capacitance=farad * state.found.value[:, :count],
+        error=farad * state.found.bar[:, :count],
+        worst=state.worst,
+        seconds=state.seconds,
+    )
+
+
+def _symmetric(value: np.ndarray) -> np.ndarray:
+    return 0.5 * (value + value.T)
+
+
+def _result(
+    scene: Scene, scaled: ScaledScene, run: Run, findings: Audit, context: tuple[Any, Any, Any]
+) -> CapacitanceResult:
+    seconds, settings, notes = context
+    last, farad, count = run.rounds[-1], scaled.farad, run.count
+    value = farad * last.found.value
+    bar = farad * last.found.bar + findings.extra * np.abs(value)
+    warnings = list(notes)
+    if findings.extra > 0.0:
+        warnings.append(f"the energy check adds {findings.extra:.1e} of each entry to its bar")
+    converged = run.stopped_by == "tolerance" and findings.extra == 0.0
+    budget = {name: farad * part[:, :count] for name, part in last.found.parts.items()}
+    return CapacitanceResult(
+        conductors=tuple(c.name for c in scene.conductors),
+        capacitance=_symmetric(value[:, :count]),
+        error=_symmetric(bar[:, :count]),
+        row_sum=value[:, -1],
+        row_sum_error=bar[:, -1],
+        tolerance=run.goal.tolerance,
+        converged=converged,
+        stopped_by=run.stopped_by,
+        rounds=tuple(_record(state, farad) for state in run.rounds),
+        pairs={(scene.conductors[i].name, scene.conductors[j].name): a for i, j, a in run.goal.pairs},
+        budget=budget,
+        audit=findings.findings,
+        warnings=tuple(warnings),
+        inputs=tuple({"name": c.name, **asdict(c.source)} for c in scene.conductors),
+        settings=settings,
+        seconds=seconds,
+        version=__version__,
+        panel_corners=last.solution.mesh.corners * scaled.length + scaled.center,
+        panel_conductor=last.solution.conductor,
+        density=last.solution.density * (farad / scaled.length**2),
+    )

@@ -1,0 +1,135 @@
+"""Solve, value, bar, refine: until every bar is small enough or a limit is met."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from bem.errors import SolutionError
+from bem.extraction.estimate import ROUNDS, Estimate, estimate
+from bem.extraction.marking import Goal, indicator, mark
+from bem.extraction.memory import MemoryPlan
+from bem.extraction.progress import Progress
+from bem.extraction.solution import Solution, Sums, solve_round, sums
+from bem.operators.dense import Reuse
+from bem.panels.mesh import Mesh
+
+MOST_ROUNDS = 60
+BULK_FAR, BULK_NEAR = 0.85, 0.7
+"""Part of the promise that is refined in one round, far from the goal and near it."""
+FAR_FROM_GOAL = 4.0
+
+
+@dataclass(frozen=True)
+class Limits:
+    """When to stop early: panels, and bytes of the matrices."""
+
+    max_panels: int
+    memory: MemoryPlan
+
+
+@dataclass(frozen=True)
+class RoundState:
+    """One finished round."""
+
+    solution: Solution
+    sums: Sums
+    found: Estimate
+    worst: float
+    seconds: float
+
+
+@dataclass
+class Run:
+    """The rounds of an extraction and why it stopped.
+
+    Args:
+        count: number of conductors.
+        goal: what is asked.
+        limits: when to stop early.
+        report: called with a Progress at every step.
+    """
+
+    count: int
+    goal: Goal
+    limits: Limits
+    report: Callable[[Progress], None]
+    rounds: list[RoundState] = field(default_factory=list)
+    stopped_by: str = ""
+    started: float = field(default_factory=time.perf_counter)
+
+    @property
+    def elapsed(self) -> float:
+        """Seconds since the start."""
+        return time.perf_counter() - self.started
+
+    def tell(self, phase: str, panels: int) -> None:
+        """Report a step of the round that is being worked on."""
+        worst = self.rounds[-1].worst if self.rounds else float("nan")
+        self.report(Progress(phase, len(self.rounds) + 1, panels, worst, self.elapsed))
+
+    def go(self, mesh: Mesh) -> None:
+        """Run rounds from a starting mesh until the goal or a limit is met.
+
+        Raises:
+            KeyboardInterrupt: interrupted before the first round was done.
+        """
+        try:
+            origin = None
+            while not self.stopped_by:
+                origin, mesh = self._round(mesh, origin)
+        except KeyboardInterrupt:
+            if not self.rounds:
+                raise
+            self.stopped_by = "interrupt"
+        except SolutionError:
+            if len(self.rounds) < ROUNDS:
+                raise
+            self.stopped_by = "breakdown"
+
+    def _round(self, mesh: Mesh, origin: np.ndarray | None) -> tuple[np.ndarray, Mesh]:
+        panels = len(mesh.conductor)
+        self.tell("solving", panels)
+        reuse = Reuse(self.rounds[-1].solution.operator, origin) if origin is not None else None
+        solution = solve_round(mesh, self.count, self.goal.tolerance, reuse)
+        self._keep(solution)
+        self.tell("refining", panels)
+        return self._refine(mesh, solution)
+
+    def _keep(self, solution: Solution) -> None:
+        """Estimate the round, and let go of the matrices of the one before."""
+        here = sums(solution)
+        found = estimate([r.sums for r in self.rounds] + [here])
+        worst = float(self.goal.worst(found).max())
+        if len(self.rounds) + 1 < ROUNDS:
+            worst = max(worst, 1.0 + 1e-9)
+        self.rounds = [_light(r) for r in self.rounds]
+        self.rounds.append(RoundState(solution, here, found, worst, self.elapsed))
+
+    def _refine(self, mesh: Mesh, solution: Solution) -> tuple[np.ndarray, Mesh]:
+        last = self.rounds[-1]
+        panels = len(mesh.conductor)
+        if last.worst <= 1.0:
+            self.stopped_by = "tolerance"
+        elif len(self.rounds) >= MOST_ROUNDS:
+            self.stopped_by = "rounds"
+        elif panels >= self.limits.max_panels:
+            self.stopped_by = "max-panels"
+        if self.stopped_by:
+            return np.empty(0), mesh
+        bulk = BULK_FAR if last.worst > FAR_FROM_GOAL else BULK_NEAR
+        room = self.limits.max_panels - panels
+        finer, origin = mesh.refine(*mark(indicator(solution, self.goal, last.found), bulk, room))
+        if not self.limits.memory.fits(len(finer.conductor), panels):
+            self.stopped_by = "memory"
+        elif len(finer.conductor) > self.limits.max_panels:
+            self.stopped_by = "max-panels"
+        return origin, finer
+
+
+def _light(state: RoundState) -> RoundState:
+    """The round without its solution."""
+    return RoundState(None, state.sums, state.found, state.worst, state.seconds)  # type: ignore[arg-type]

@@ -1,0 +1,65 @@
+"""The memory plan of a dense round, made before anything is allocated."""
+
+from __future__ import annotations
+
+import os
+from dataclasses import dataclass
+
+from bem.errors import MemoryRefused
+
+BYTES_PER_PAIR = 8 + 16 + 8
+"""Operator, its tests in single precision, and the factor."""
+SHARE_OF_FREE = 0.8
+
+
+def available_bytes() -> int:
+    """Memory that can be had without swapping, or all memory where the system does not say."""
+    try:
+        with open("/proc/meminfo", encoding="ascii") as lines:
+            for line in lines:
+                if line.startswith("MemAvailable:"):
+                    return int(line.split()[1]) * 1024
+    except OSError:
+        pass
+    try:
+        return os.sysconf("SC_PAGE_SIZE") * os.sysconf("SC_PHYS_PAGES")
+    except (AttributeError, ValueError, OSError):
+        return 4 * 1024**3
+
+
+def readable(size: float) -> str:
+    """Bytes as MB or GB."""
+    return f"{size / 1e9:.2f} GB" if size >= 1e9 else f"{size / 1e6:.0f} MB"
+
+
+@dataclass(frozen=True)
+class MemoryPlan:
+    """Limit in bytes for the matrices of the extraction."""
+
+    limit: int
+
+    @classmethod
+    def of(cls, asked: int | None) -> MemoryPlan:
+        """The asked limit, or 80 % of what is free now."""
+        return cls(int(asked) if asked is not None else int(SHARE_OF_FREE * available_bytes()))
+
+    def need(self, panels: int, kept: int = 0) -> int:
+        """Bytes of a round of ``panels``, while the round before with ``kept`` is held."""
+        return BYTES_PER_PAIR * panels**2 + (BYTES_PER_PAIR - 8) * kept**2
+
+    def fits(self, panels: int, kept: int = 0) -> bool:
+        """Whether the next round stays within the limit."""
+        return self.need(panels, kept) <= self.limit
+
+    def check_start(self, panels: int) -> None:
+        """Refuse a start that cannot fit.
+
+        Raises:
+            MemoryRefused: names the need, the limit and what to change.
+        """
+        if not self.fits(panels):
+            raise MemoryRefused(
+                f"the starting mesh of {panels} panels needs {readable(self.need(panels))}, "
+                f"the limit is {readable(self.limit)}: raise --memory, or use a coarser mesh "
+                "of the curved faces"
+            )

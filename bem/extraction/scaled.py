@@ -1,0 +1,39 @@
+"""The scene in lengths of its own size: coordinates near 1, so that no power of them under- or overflows."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from bem.geometry.surface import Surface
+from bem.scene.scene import Scene
+from bem.units import EPS0
+
+
+@dataclass(frozen=True)
+class ScaledScene:
+    """Surfaces in units of ``length``, centred.
+
+    Args:
+        surfaces: one per conductor.
+        length: metres per unit, the largest side of the scene's bounding box.
+        center: (3,) m, what was subtracted first.
+        farad: capacitance in farad of one unit of L = C / (4 pi eps).
+    """
+
+    surfaces: list[Surface]
+    length: float
+    center: np.ndarray
+    farad: float
+
+    @classmethod
+    def of(cls, scene: Scene) -> ScaledScene:
+        """Scale a scene."""
+        bounds = np.array([c.surface.bounds for c in scene.conductors])
+        low, high = bounds[:, 0].min(axis=0), bounds[:, 1].max(axis=0)
+        length, center = float((high - low).max()), 0.5 * (low + high)
+        matrix = np.eye(3) / length
+        surfaces = [c.surface.placed(matrix, -center / length) for c in scene.conductors]
+        farad = 4.0 * np.pi * EPS0 * scene.relative_permittivity * length
+        return cls(surfaces, length, center, farad)

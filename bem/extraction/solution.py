@@ -1,0 +1,128 @@
+"""One round: the densities on a mesh, their matrix, and what they fail to satisfy.
+
+With L = C / (4 pi eps), the density s_j of conductor j at unit potential solves
+
+    sum over panels q of A_pq s_q = area_p where p is on conductor j, else 0
+    L_ij = sum over panels of i of area * s_j
+
+The error indicator of a panel, test k and entry (i, j) is the product of two residuals over
+the energy of the test, which is what that test would add to L_ij if it stood alone (Mund,
+Stephan and Weisse 1998; Erath, Ferraz-Leite, Funken and Praetorius 2009):
+
+    eta = <r_i, psi> <r_j, psi> / <A psi, psi>,    <r_j, psi> = - sum over panels T_pq s_q
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from bem.kernels.arrays import PanelArrays, panel_arrays
+from bem.kernels.indicator_energy import indicator_energies
+from bem.kernels.targets import make_targets
+from bem.operators.dense import DenseOperator, Reuse
+from bem.panels.mesh import Faceting, Mesh
+from bem.solve.dense import solve_dense
+
+
+@dataclass(frozen=True)
+class Solution:
+    """A solved round, in scaled units.
+
+    Args:
+        mesh: n panels of k conductors.
+        panels: their arrays.
+        operator: their operator.
+        density: (n, k).
+        residual: (4, n, k) residual against each test over the root of its energy.
+        seconds: {"assembly": ..., "solve": ..., "estimate": ...}.
+    """
+
+    mesh: Mesh
+    panels: PanelArrays
+    operator: DenseOperator
+    density: np.ndarray
+    residual: np.ndarray
+
+    @property
+    def conductor(self) -> np.ndarray:
+        """(n,) owner of each panel."""
+        return self.mesh.conductor
+
+
+def incidence(conductor: np.ndarray, count: int) -> np.ndarray:
+    """(n, count) 1 where a panel belongs to a conductor."""
+    return (conductor[:, None] == np.arange(count)).astype(float)
+
+
+def with_all(columns: np.ndarray) -> np.ndarray:
+    """The last axis extended by its sum: all conductors at unit potential together."""
+    return np.concatenate([columns, columns.sum(axis=-1, keepdims=True)], axis=-1)
+
+
+def solve_round(mesh: Mesh, count: int, tolerance: float, reuse: Reuse | None) -> Solution:
+    """Assemble, solve and test the residual on a mesh of ``count`` conductors."""
+    panels = panel_arrays(mesh.corners)
+    targets = make_targets(panels)
+    operator = DenseOperator(panels, targets, tolerance, reuse)
+    right = panels.area[:, None] * incidence(mesh.conductor, count)
+    density = solve_dense(operator, right)
+    energy = indicator_energies(panels, targets)
+    residual = -operator.tests(density) / np.sqrt(energy.T)[:, :, None]
+    return Solution(mesh, panels, operator, density, residual)
+
+
+@dataclass(frozen=True)
+class Sums:
+    """What one round says of every entry, (k, k + 1) each; the last column is the row sum.
+
+    Args:
+        panels: number of panels.
+        value: L from the density.
+        signed: summed indicator.
+        absolute: summed absolute indicator.
+        quadrature: effect of choosing between the two rows of each pair.
+        faceting: first-order effect of the true surface lying off the panels.
+    """
+
+    panels: int
+    value: np.ndarray
+    signed: np.ndarray
+    absolute: np.ndarray
+    quadrature: np.ndarray
+    faceting: np.ndarray
+
+
+def sums(solution: Solution) -> Sums:
+    """Collect the sums of a round."""
+    density, area = solution.density, solution.panels.area
+    count = density.shape[1]
+    owner = incidence(solution.conductor, count)
+    value = (owner * area[:, None]).T @ density
+    value = 0.5 * (value + value.T)
+    w = solution.residual.reshape(-1, count)
+    every = with_all(w)
+    quadrature = np.abs(solution.operator.asymmetry(density))
+    return Sums(
+        panels=len(area),
+        value=with_all(value),
+        signed=w.T @ every,
+        absolute=np.abs(w).T @ np.abs(every),
+        quadrature=with_all(quadrature),
+        faceting=faceting_effect(density, area, solution.mesh.faceting()),
+    )
+
+
+def faceting_effect(density: np.ndarray, area: np.ndarray, faceting: Faceting) -> np.ndarray:
+    """First-order change of L (k, k + 1) when the panels move out to the true surface.
+
+    On a closed surface the change is 4 pi times the integral of s_i s_j times the normal
+    displacement (Hadamard 1908). At a curved free rim of a sheet the density is K / sqrt(r)
+    and the change is 2 pi^2 times the integral along the rim of K_i K_j times the in-plane
+    displacement (the energy release of a crack front, with the constant of the disk); a
+    panel of width w at the rim has the mean density 2 K / sqrt(w).
+    """
+    weight = 4.0 * np.pi * area * faceting.offset
+    weight = weight + 0.5 * np.pi**2 * area * faceting.rim_offset * faceting.rim_width
+    return density.T @ (weight[:, None] * with_all(density))

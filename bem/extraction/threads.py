@@ -1,0 +1,39 @@
+"""One setting for the threads of the compiled integrals and of the linear algebra."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Iterator
+from contextlib import contextmanager
+
+import numba
+from threadpoolctl import threadpool_limits
+
+from bem.errors import UsageError
+
+
+def usable_cores() -> int:
+    """Cores this process may run on."""
+    if hasattr(os, "sched_getaffinity"):
+        return len(os.sched_getaffinity(0))
+    return os.cpu_count() or 1
+
+
+@contextmanager
+def use_threads(asked: int | None) -> Iterator[int]:
+    """Limit both thread pools while the body runs; yields the number used.
+
+    Raises:
+        UsageError: less than one thread, or more than the compiled code was started with.
+    """
+    most = int(numba.config.NUMBA_NUM_THREADS)
+    if asked is not None and not 1 <= asked <= most:
+        raise UsageError(f"threads: found {asked}, allowed is 1 to {most} on this machine")
+    count = asked if asked is not None else min(most, usable_cores())
+    before = numba.get_num_threads()
+    numba.set_num_threads(count)
+    try:
+        with threadpool_limits(limits=count, user_api="blas"):
+            yield count
+    finally:
+        numba.set_num_threads(before)

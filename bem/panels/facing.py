@@ -1,0 +1,141 @@
+"""Walls that a patch is divided along: its outline, and the shadows of faces close to it.
+
+Where a face of another conductor lies parallel and near, the charge changes within one gap
+of every rim, its own or the other's projected on it. Halving alone gains only gap/size of
+that charge per step, so the indicator is blind to it and the starting mesh must know.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from bem.panels.planar import Patch
+
+NEAR = 0.5
+"""A face counts as facing if its distance is below this part of the smaller of both sizes."""
+
+
+@dataclass(frozen=True)
+class Walls:
+    """Segments that divide a patch.
+
+    Args:
+        ends: (n, 2, 2) in the plane of the patch.
+        outline: (n,) bool, those that bound the patch.
+        gap: (n,) distance to what faces the patch there, infinite where nothing does.
+    """
+
+    ends: np.ndarray
+    outline: np.ndarray
+    gap: np.ndarray
+
+
+@dataclass(frozen=True)
+class _Shadow:
+    """Outline of a facing patch projected on this one."""
+
+    edges: np.ndarray
+    gap: float
+    conductor: int
+    side: float
+
+    @property
+    def box(self) -> np.ndarray:
+        points = self.edges.reshape(-1, 2)
+        return np.array([points.min(axis=0), points.max(axis=0)])
+
+
+def _overlap(a: np.ndarray, b: np.ndarray) -> bool:
+    return bool(np.all(np.minimum(a[1], b[1]) > np.maximum(a[0], b[0])))
+
+
+def _covers(a: np.ndarray, b: np.ndarray) -> bool:
+    return bool(np.all(a[0] <= b[0] + 1e-9) and np.all(a[1] >= b[1] - 1e-9))
+
+
+@dataclass(frozen=True)
+class FacingTable:
+    """All patches, with what is needed to find the parallel ones quickly."""
+
+    patches: list[Patch]
+    normals: np.ndarray
+    origins: np.ndarray
+    sizes: np.ndarray
+
+    @classmethod
+    def of(cls, patches: list[Patch]) -> FacingTable:
+        """Table of the patches of all conductors."""
+        return cls(
+            patches,
+            np.array([p.axes[2] for p in patches]),
+            np.array([p.origin for p in patches]),
+            np.array([p.size for p in patches]),
+        )
+
+    def _parallel(self, k: int) -> np.ndarray:
+        """Indices of patches parallel to patch k, near it in height and not in its plane."""
+        cosine = np.abs(self.normals @ self.normals[k])
+        height = np.abs((self.origins - self.origins[k]) @ self.normals[k])
+        reach = NEAR * np.minimum(self.sizes, self.sizes[k])
+        near = (cosine > 1.0 - 1e-12) & (height < reach) & (height > 1e-9 * self.sizes[k])
+        apart = np.linalg.norm(self.origins - self.origins[k], axis=1)
+        near &= apart < self.sizes + self.sizes[k]
+        return np.flatnonzero(near)
+
+    def _shadow(self, k: int, other: int) -> _Shadow:
+        patch, facing = self.patches[k], self.patches[other]
+        height = float((self.origins[other] - self.origins[k]) @ self.normals[k])
+        edges = patch.drop(facing.lift(facing.edges))
+        return _Shadow(edges, abs(height), facing.conductor, np.sign(height))
+
+    def shadows(self, k: int) -> list[_Shadow]:
+        """Shadows on patch k of faces that see it; what lies behind metal is left out."""
+        own = self.patches[k].edges.reshape(-1, 2)
+        box = np.array([own.min(axis=0), own.max(axis=0)])
+        found = [self._shadow(k, other) for other in self._parallel(k)]
+        found = sorted((s for s in found if _overlap(s.box, box)), key=lambda s: s.gap)
+        seen: list[_Shadow] = []
+        for shadow in found:
+            hidden = any(s.side == shadow.side and _covers(s.box, shadow.box) for s in seen)
+            if not hidden:
+                seen.append(shadow)
+        return [s for s in seen if s.conductor != self.patches[k].conductor]
+
+    def walls(self, k: int) -> Walls:
+        """Outline and shadows of patch k."""
+        own = self.patches[k].edges
+        shadows = self.shadows(k)
+        parts = [own, *(s.edges for s in shadows)]
+        outline = np.concatenate([np.full(len(p), m == 0) for m, p in enumerate(parts)])
+        gap = np.concatenate([np.full(len(own), np.inf), *(np.full(len(s.edges), s.gap) for s in shadows)])
+        for shadow in shadows:
+            gap[: len(own)] = np.where(
+                _touched(own, shadow), np.minimum(gap[: len(own)], shadow.gap), gap[: len(own)]
+            )
+        return Walls(np.concatenate(parts), outline, gap)
+
+
+def _touched(edges: np.ndarray, shadow: _Shadow) -> np.ndarray:
+    """Which edges lie, at least in part, under the shadow or within two gaps of its rim."""
+    t = np.linspace(0.02, 0.98, 13)[:, None]
+    points = edges[:, None, 0] * (1 - t) + edges[:, None, 1] * t
+    return (_inside(points, shadow.edges) | (_distance(points, shadow.edges) < 2 * shadow.gap)).any(axis=1)
+
+
+def _inside(points: np.ndarray, edges: np.ndarray) -> np.ndarray:
+    """Even-odd rule for points (..., 2) and edges (e, 2, 2)."""
+    x, y = points[..., None, 0], points[..., None, 1]
+    (x0, y0), (x1, y1) = edges[:, 0].T, edges[:, 1].T
+    spans = (y0 > y) != (y1 > y)
+    rise = np.where(y1 == y0, 1.0, y1 - y0)
+    return (spans & (x < x0 + (y - y0) / rise * (x1 - x0))).sum(axis=-1) % 2 == 1
+
+
+def _distance(points: np.ndarray, edges: np.ndarray) -> np.ndarray:
+    """Distance of points (..., 2) to the nearest edge."""
+    a, d = edges[:, 0], edges[:, 1] - edges[:, 0]
+    gap = points[..., None, :] - a
+    t = np.clip((gap * d).sum(axis=-1) / np.maximum((d * d).sum(axis=-1), 1e-300), 0.0, 1.0)
+    return np.linalg.norm(gap - t[..., None] * d, axis=-1).min(axis=-1)

@@ -1,0 +1,110 @@
+"""All panels of a scene, made of families that know how to refine themselves."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from bem.geometry.surface import Surface
+from bem.panels.align import align_patches
+from bem.panels.flat import FlatFamily
+from bem.panels.planar import planar_patches
+
+if TYPE_CHECKING:
+    from bem.panels.curved import CurvedFamily
+
+    Family = FlatFamily | CurvedFamily
+
+
+@dataclass(frozen=True)
+class Mesh:
+    """Panels of all conductors, family after family.
+
+    Args:
+        families: flat panels of the whole scene, then one family per curved body.
+        owners: per family, the conductor (n_family,) of each panel.
+    """
+
+    families: tuple[Family, ...]
+    owners: tuple[np.ndarray, ...]
+
+    @classmethod
+    def start(cls, surfaces: list[Surface]) -> Mesh:
+        """Starting mesh of one surface per conductor."""
+        patches = []
+        curved: list[tuple[int, CurvedFamily]] = []
+        for k, surface in enumerate(surfaces):
+            if surface.curve is None:
+                patches += planar_patches(surface, k)
+            else:
+                from bem.panels.curved import CurvedFamily
+
+                curved.append((k, CurvedFamily.start(surface.curve)))
+        families: list[Family] = []
+        owners = []
+        if patches:
+            flat = FlatFamily.start(align_patches(patches, max(s.extent for s in surfaces)))
+            families.append(flat)
+            owners.append(flat.conductor)
+        for k, family in curved:
+            families.append(family)
+            owners.append(np.full(len(family.corners), k))
+        return cls(tuple(families), tuple(owners))
+
+    @property
+    def corners(self) -> np.ndarray:
+        """(n, 4, 3)."""
+        return np.concatenate([f.corners for f in self.families])
+
+    @property
+    def conductor(self) -> np.ndarray:
+        """(n,) owner of each panel."""
+        return np.concatenate(self.owners)
+
+    def faceting(self) -> Faceting:
+        """How far the panels are from the true surface."""
+        parts = [_faceting(f) for f in self.families]
+        return Faceting(*(np.concatenate(column) for column in zip(*parts, strict=True)))
+
+    def refine(self, marked: np.ndarray, across: np.ndarray) -> tuple[Mesh, np.ndarray]:
+        """Halve marked panels, ``across`` 0 (sides 0-1) or 1 (sides 1-2) each.
+
+        Returns:
+            The new mesh and, per new panel, the index of the old one it equals, or -1.
+        """
+        families, owners, origin = [], [], []
+        start = 0
+        for family, owner in zip(self.families, self.owners, strict=True):
+            here = slice(start, start + len(owner))
+            finer, kept = family.refine(marked[here], across[here])
+            fresh = np.full(len(finer.corners), -1)
+            fresh[: len(kept)] = start + kept
+            families.append(finer)
+            origin.append(fresh)
+            owners.append(finer.conductor if isinstance(finer, FlatFamily) else np.full(len(fresh), owner[0]))
+            start += len(owner)
+        return Mesh(tuple(families), tuple(owners)), np.concatenate(origin)
+
+
+@dataclass(frozen=True)
+class Faceting:
+    """Distance of the true surface from the panels, per panel.
+
+    Args:
+        offset: (n,) mean outward distance of the true surface from the panel.
+        rim_offset: (n,) part of the panel's area that is missing at a curved free rim.
+        rim_width: (n,) width of such a panel across the rim, 0 for all others.
+    """
+
+    offset: np.ndarray
+    rim_offset: np.ndarray
+    rim_width: np.ndarray
+
+
+def _faceting(family: Family) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    if isinstance(family, FlatFamily):
+        zero = np.zeros(len(family.corners))
+        return zero, zero, zero
+    return family.offset, family.rim_offset, family.rim_width

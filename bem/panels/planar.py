@@ -1,0 +1,212 @@
+"""Flat faces: the planar patches that the faces of a body make up, and their outlines.
+
+How a flat face was triangulated says nothing about the body, so coplanar neighbours are
+joined and only the outline is kept. Flatness tolerance: FLATNESS of the body's size, which
+is above the rounding of single-precision files and far below any tolerance.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.sparse import coo_matrix
+from scipy.sparse.csgraph import connected_components
+
+from bem.geometry.surface import Surface
+
+FLATNESS = 1e-6
+
+
+@dataclass(frozen=True)
+class Patch:
+    """One flat face of one conductor.
+
+    Args:
+        conductor: index of its owner.
+        origin: (3,) a point of its plane.
+        axes: (3, 3) rows: two in-plane directions and the normal.
+        edges: (e, 2, 2) outline in the plane, as unordered segments (holes included).
+        faces: (f, 4, 2) the original faces in the plane, a triangle repeating its last corner.
+    """
+
+    conductor: int
+    origin: np.ndarray
+    axes: np.ndarray
+    edges: np.ndarray
+    faces: np.ndarray
+
+    def lift(self, xy: np.ndarray) -> np.ndarray:
+        """Points (..., 2) of the plane in space (..., 3)."""
+        return self.origin + xy @ self.axes[:2]
+
+    def drop(self, xyz: np.ndarray) -> np.ndarray:
+        """Points (..., 3) projected to the plane (..., 2)."""
+        return (xyz - self.origin) @ self.axes[:2].T
+
+    @property
+    def size(self) -> float:
+        """Diagonal of the outline's bounding box in the plane."""
+        points = self.edges.reshape(-1, 2)
+        return float(np.linalg.norm(np.ptp(points, axis=0)))
+
+
+@dataclass(frozen=True)
+class _Edges:
+    """Sides of faces: sorted vertex pairs, grouped by equal pair."""
+
+    pairs: np.ndarray
+    face: np.ndarray
+    group: np.ndarray
+    count: np.ndarray
+
+
+def _face_corners(faces: np.ndarray) -> np.ndarray:
+    """(f, 4) with a triangle's last corner repeated."""
+    corners = faces.copy()
+    triangle = corners[:, 3] < 0
+    corners[triangle, 3] = corners[triangle, 2]
+    return corners
+
+
+def _sides(corners: np.ndarray) -> _Edges:
+    ends = np.stack([corners, np.roll(corners, -1, axis=1)], axis=2).reshape(-1, 2)
+    face = np.repeat(np.arange(len(corners)), 4)
+    real = ends[:, 0] != ends[:, 1]
+    ends, face = ends[real], face[real]
+    pairs = np.sort(ends, axis=1)
+    _, group, count = np.unique(pairs, axis=0, return_inverse=True, return_counts=True)
+    return _Edges(pairs, face, group.ravel(), count)
+
+
+def _area_vectors(points: np.ndarray) -> np.ndarray:
+    return 0.5 * np.cross(points[:, 2] - points[:, 0], points[:, 3] - points[:, 1])
+
+
+def _neighbours(edges: _Edges) -> np.ndarray:
+    """(p, 2) faces that share a side which belongs to no third one."""
+    inner = edges.count[edges.group] == 2
+    order = np.argsort(edges.group[inner], kind="stable")
+    return edges.face[inner][order].reshape(-1, 2)
+
+
+def _coplanar(pairs: np.ndarray, points: np.ndarray, area: np.ndarray, limit: float) -> np.ndarray:
+    """Which pairs of faces lie within ``limit`` of the plane of the larger one."""
+    size = np.linalg.norm(area, axis=1)
+    larger = np.where(size[pairs[:, 0]] >= size[pairs[:, 1]], pairs[:, 0], pairs[:, 1])
+    smaller = pairs.sum(axis=1) - larger
+    normal = area[larger] / np.maximum(size[larger], 1e-300)[:, None]
+    height = np.einsum("pkc,pc->pk", points[smaller] - points[larger][:, :1], normal)
+    return np.abs(height).max(axis=1) <= limit
+
+
+def _group_faces(points: np.ndarray, corners: np.ndarray, limit: float) -> np.ndarray:
+    """Label of each face; coplanar neighbours share one unless the whole group is bent."""
+    area = _area_vectors(points)
+    pairs = _neighbours(_sides(corners))
+    pairs = pairs[_coplanar(pairs, points, area, limit)] if len(pairs) else pairs
+    n = len(points)
+    graph = coo_matrix((np.ones(len(pairs)), (pairs[:, 0], pairs[:, 1])), shape=(n, n))
+    count, label = connected_components(graph, directed=False)
+    bent = _bent_groups(points, area, label, count, limit)
+    alone = bent[label]
+    label[alone] = count + np.arange(alone.sum())
+    return np.unique(label, return_inverse=True)[1]
+
+
+def _group_planes(points, area, label, count):
+    """Origin (g, 3) and normal (g, 3) of each group; signs of opposed faces are aligned first."""
+    size = np.linalg.norm(area, axis=1)
+    largest = np.zeros(count, dtype=int)
+    order = np.argsort(size)
+    largest[label[order]] = order
+    sign = np.sign(np.einsum("fc,fc->f", area, area[largest[label]]))
+    total = np.zeros((count, 3))
+    np.add.at(total, label, area * sign[:, None])
+    normal = total / np.maximum(np.linalg.norm(total, axis=1), 1e-300)[:, None]
+    weight = np.bincount(label, size, count)
+    center = points.mean(axis=1)
+    origin = np.stack([np.bincount(label, size * center[:, c], count) for c in range(3)], axis=1)
+    return origin / np.maximum(weight, 1e-300)[:, None], normal
+
+
+def _bent_groups(points, area, label, count, limit) -> np.ndarray:
+    origin, normal = _group_planes(points, area, label, count)
+    height = np.einsum("fkc,fc->fk", points - origin[label][:, None], normal[label])
+    worst = np.zeros(count)
+    np.maximum.at(worst, label, np.abs(height).max(axis=1))
+    return worst > 2.0 * limit
+
+
+def _split_bent_quads(surface: Surface, limit: float) -> np.ndarray:
+    """(f, 4) corner indices; quadrilaterals that are not flat become two triangles."""
+    corners = _face_corners(surface.faces)
+    points = surface.vertices[corners]
+    area = _area_vectors(points)
+    normal = area / np.maximum(np.linalg.norm(area, axis=1), 1e-300)[:, None]
+    height = np.abs(np.einsum("fkc,fc->fk", points - points.mean(axis=1)[:, None], normal))
+    bent = (height.max(axis=1) > limit) & (surface.faces[:, 3] >= 0)
+    first, second = corners[bent][:, [0, 1, 2, 2]], corners[bent][:, [0, 2, 3, 3]]
+    return np.concatenate([corners[~bent], first, second])
+
+
+def _in_plane_axes(points: np.ndarray, normal: np.ndarray) -> np.ndarray:
+    """Axes (3, 3) whose first runs along the longest side of the given (s, 2, 3) segments."""
+    step = points[:, 1] - points[:, 0]
+    along = step[np.argmax(np.linalg.norm(step, axis=1))]
+    along = along - normal * (along @ normal)
+    along /= np.linalg.norm(along)
+    return np.stack([along, np.cross(normal, along), normal])
+
+
+def _join_collinear(edges: np.ndarray, vertices: np.ndarray, limit: float) -> np.ndarray:
+    """Vertex pairs (e, 2) with corners removed where exactly two collinear edges meet."""
+    links: dict[int, list[int]] = {}
+    for a, b in edges.tolist():
+        links.setdefault(a, []).append(b)
+        links.setdefault(b, []).append(a)
+    for vertex in list(links):
+        if len(links[vertex]) != 2:
+            continue
+        a, b = links[vertex]
+        if a == b or b in links[a]:
+            continue
+        if _is_between(vertices[vertex], vertices[a], vertices[b], limit):
+            links[a][links[a].index(vertex)] = b
+            links[b][links[b].index(vertex)] = a
+            del links[vertex]
+    return np.array(sorted({(min(a, b), max(a, b)) for a in links for b in links[a]}))
+
+
+def _is_between(x: np.ndarray, a: np.ndarray, b: np.ndarray, limit: float) -> bool:
+    step = b - a
+    t = float((x - a) @ step) / float(step @ step)
+    return 0.0 < t < 1.0 and float(np.linalg.norm(x - a - t * step)) <= limit
+
+
+def planar_patches(surface: Surface, conductor: int) -> list[Patch]:
+    """The flat faces of a body, coplanar neighbours joined."""
+    limit = FLATNESS * surface.extent
+    corners = _split_bent_quads(surface, limit)
+    points = surface.vertices[corners]
+    label = _group_faces(points, corners, limit)
+    count = label.max() + 1
+    origin, normal = _group_planes(points, _area_vectors(points), label, count)
+    order = np.argsort(label, kind="stable")
+    starts = np.searchsorted(label[order], np.arange(count + 1))
+    patches = []
+    for g in range(count):
+        members = corners[order[starts[g] : starts[g + 1]]]
+        patches.append(_make_patch(surface.vertices, members, conductor, origin[g], normal[g], limit))
+    return patches
+
+
+def _make_patch(vertices, corners, conductor, origin, normal, limit) -> Patch:
+    edges = _sides(corners)
+    rim = np.unique(edges.pairs[edges.count[edges.group] == 1], axis=0)
+    if len(corners) > 1:
+        rim = _join_collinear(rim, vertices, 0.1 * limit)
+    axes = _in_plane_axes(vertices[rim], normal)
+    plane = axes[:2].T
+    flat = (vertices[corners] - origin) @ plane
+    return Patch(conductor, origin, axes, (vertices[rim] - origin) @ plane, flat)
