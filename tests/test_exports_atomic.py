@@ -22,6 +22,22 @@ def fail_with(number: int) -> Any:
     return fail
 
 
+def watched(monkeypatch: pytest.MonkeyPatch, *names: str) -> list[tuple[str, Any]]:
+    """Let calls of ``os`` functions through, and list them with their arguments."""
+    calls: list[tuple[str, Any]] = []
+
+    def watch(name: str, original: Any) -> Any:
+        def call(*arguments: Any) -> Any:
+            calls.append((name, arguments))
+            return original(*arguments)
+
+        return call
+
+    for name in names:
+        monkeypatch.setattr(os, name, watch(name, getattr(os, name)))
+    return calls
+
+
 def names_in(folder: Path) -> list[str]:
     return sorted(entry.name for entry in folder.iterdir())
 
@@ -62,22 +78,18 @@ def test_an_interrupt_on_the_way_leaves_no_rest(
 def test_the_bytes_are_on_disk_before_the_name_changes(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    order: list[str] = []
-    sync, replace = os.fsync, os.replace
-    monkeypatch.setattr(os, "fsync", lambda handle: (order.append("fsync"), sync(handle)))
-    monkeypatch.setattr(os, "replace", lambda a, b: (order.append("replace"), replace(a, b)))
+    calls = watched(monkeypatch, "fsync", "replace")
     write_file(tmp_path / "r.json", b"new")
-    assert order[:2] == ["fsync", "replace"]
+    assert [name for name, _ in calls][:2] == ["fsync", "replace"]
 
 
 def test_the_scratch_file_is_in_the_same_folder(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    seen: list[Path] = []
-    replace = os.replace
-    monkeypatch.setattr(os, "replace", lambda a, b: (seen.append(Path(a)), replace(a, b)))
+    calls = watched(monkeypatch, "replace")
     write_file(tmp_path / "r.json", b"new")
-    assert seen[0].parent == tmp_path and seen[0].name != "r.json"
+    scratch = Path(calls[0][1][0])
+    assert scratch.parent == tmp_path and scratch.name != "r.json"
 
 
 def test_permissions_of_the_old_file_are_kept_and_a_new_one_follows_the_mask(
@@ -85,14 +97,14 @@ def test_permissions_of_the_old_file_are_kept_and_a_new_one_follows_the_mask(
 ) -> None:
     old, new = tmp_path / "old", tmp_path / "new"
     old.write_bytes(b"")
-    old.chmod(0o640)
+    old.chmod(0o604)
     mask = os.umask(0o027)
     try:
         write_file(old, b"x")
         write_file(new, b"x")
     finally:
         os.umask(mask)
-    assert stat.S_IMODE(old.stat().st_mode) == 0o640
+    assert stat.S_IMODE(old.stat().st_mode) == 0o604
     assert stat.S_IMODE(new.stat().st_mode) == 0o640
 
 

@@ -103,7 +103,7 @@ def test_arrays_can_be_read_without_this_package(tmp_path: Path) -> None:
     packed = saved(tmp_path)["arrays"]["density_C_per_m2_per_V"]
     assert packed["dtype"] == "<f8" and packed["shape"] == [3, 2]
     numbers = struct.unpack("<6d", base64.b64decode(packed["base64"]))
-    assert list(numbers) == sample_result().density.ravel().tolist()
+    assert list(numbers) == np.ravel(sample_result().density).tolist()
 
 
 def test_one_entry_per_line(tmp_path: Path) -> None:

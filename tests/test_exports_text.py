@@ -92,6 +92,15 @@ def test_no_line_is_wider_than_80_columns(n: int, name: str) -> None:
     assert max(map(columns, text.splitlines())) <= 80
 
 
+@pytest.mark.parametrize("length", range(1, 30))
+def test_a_wide_matrix_uses_the_width_and_keeps_to_it(length: int) -> None:
+    names = tuple(str(k) * length for k in range(8))
+    matrix = report(sample_result(ladder(8), names=names)).partition("To the surroundings")[0]
+    widths = [columns(line) for line in matrix.splitlines()]
+    column = 3 + max(len("-1.0000 ± 0.0012"), min(length, 24))
+    assert 80 - column < max(widths) <= 80
+
+
 def test_every_entry_of_a_wide_matrix_is_there_once() -> None:
     matrix = ladder(8)
     bars = np.arange(1.0, 65.0).reshape(8, 8) * 1e-17

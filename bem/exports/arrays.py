@@ -16,7 +16,7 @@ DTYPES = ("<f8", "<f4", "<i8", "<i4")
 
 def pack(array: np.ndarray) -> dict[str, Any]:
     """``array`` as {"dtype", "shape", "base64"}, last index fastest; every bit is kept."""
-    little = np.ascontiguousarray(array, dtype=array.dtype.newbyteorder("<"))
+    little = np.asarray(array, dtype=array.dtype.newbyteorder("<"))
     if little.dtype.str not in DTYPES:
         raise InputError(
             f"cannot save an array of {array.dtype}; its type must be one of {', '.join(DTYPES)}"
