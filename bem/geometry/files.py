@@ -1,0 +1,101 @@
+"""Mesh files in: STL and Gmsh MSH become surfaces in metres, welded and checked.
+
+Files are loaded raw, without any merging or reordering by a library; what is changed
+afterwards is our own doing (see ``bem.geometry.weld``) and comes back as lines.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import hashlib
+from collections.abc import Iterator
+from functools import lru_cache
+from pathlib import Path
+
+from bem.errors import InputError
+from bem.geometry.mesh_data import MeshData
+from bem.geometry.surface import Surface
+from bem.geometry.weld import weld
+
+SUFFIXES = (".stl", ".msh")
+"""Kinds of mesh files that are read, by the ending of the name."""
+
+
+def read_surface(
+    path: str | Path, metres_per_unit: float, part: str | None = None
+) -> tuple[Surface, list[str]]:
+    """Surface of a mesh file, or of a named part of it.
+
+    Args:
+        path: STL (text or binary) or Gmsh MSH (2.2 or 4.1, text or binary).
+        metres_per_unit: length of the file's unit in metres.
+        part: a named solid of a text STL, or a physical group of an MSH; None takes all.
+
+    Returns:
+        The surface in metres, and what reading changed, one line each.
+
+    Raises:
+        InputError: the file is missing, unreadable, damaged or empty, or has no such part.
+    """
+    with _named(path):
+        mesh = _open(path)
+        faces = mesh.faces_of(part)
+        surface, changes = weld(Surface(mesh.vertices * metres_per_unit, faces))
+    return surface, [*mesh.changes, *changes]
+
+
+def part_faces(path: str | Path) -> tuple[int, dict[str, int]]:
+    """Count the faces in a mesh file, and in each of its named parts.
+
+    Raises:
+        InputError: the file is missing, unreadable, damaged or empty.
+    """
+    with _named(path):
+        mesh = _open(path)
+    return len(mesh.faces), {name: len(faces) for name, faces in mesh.parts.items()}
+
+
+def file_digest(path: str | Path) -> str:
+    """SHA-256 of a file's bytes, in hexadecimal.
+
+    Raises:
+        InputError: the file cannot be opened.
+    """
+    with _named(path), Path(path).open("rb") as data:
+        return hashlib.file_digest(data, "sha256").hexdigest()
+
+
+@contextlib.contextmanager
+def _named(path: str | Path) -> Iterator[None]:
+    """Put the file's name before messages about it."""
+    try:
+        yield
+    except InputError as problem:
+        raise InputError(f"{path}: {problem}") from None
+    except FileNotFoundError:
+        raise InputError(f"{path}: no such file") from None
+    except OSError as problem:
+        raise InputError(f"{path}: cannot be opened ({problem.strerror})") from None
+
+
+def _open(path: str | Path) -> MeshData:
+    path = Path(path)
+    if path.suffix.lower() not in SUFFIXES:
+        found = path.suffix or "no ending"
+        raise InputError(f"unknown kind of mesh file ({found}); known are {', '.join(SUFFIXES)}")
+    state = path.stat()
+    if path.is_file() and state.st_size == 0:
+        raise InputError("is empty (0 bytes)")
+    return _parsed(path, (state.st_mtime_ns, state.st_size))
+
+
+@lru_cache(maxsize=2)
+def _parsed(path: Path, _stamp: tuple[int, int]) -> MeshData:
+    """Contents of a file; kept for a while, since one file may hold many conductors."""
+    if path.suffix.lower() == ".stl":
+        from bem.geometry.stl import read_stl
+
+        return read_stl(path).check()
+    from bem.geometry.msh import read_msh
+
+    return read_msh(path).check()

@@ -1,0 +1,62 @@
+"""What a mesh file holds, before units, welding and choice of a part."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from bem.errors import InputError
+from bem.geometry.wording import counted, listed
+
+
+@dataclass(frozen=True)
+class MeshData:
+    """Faces of a file as they stand in it.
+
+    Args:
+        vertices: (v, 3) float64, in the file's unit.
+        faces: (f, 4) int64; a triangle has -1 last.
+        parts: faces (indices) of each named portion.
+        changes: what was left out or reduced, one line each.
+    """
+
+    vertices: np.ndarray
+    faces: np.ndarray
+    parts: dict[str, np.ndarray] = field(default_factory=dict)
+    changes: tuple[str, ...] = ()
+
+    def faces_of(self, part: str | None) -> np.ndarray:
+        """Faces (n, 4) of a named portion, or all of them.
+
+        Raises:
+            InputError: there is no such part; the message lists those found.
+        """
+        if part is None:
+            return self.faces
+        if part not in self.parts:
+            found = f"found {listed(list(self.parts))}" if self.parts else "the file names no parts"
+            raise InputError(f"part {listed([part])} is not in the file; {found}")
+        return self.faces[self.parts[part]]
+
+    def check(self) -> MeshData:
+        """Return the data itself if its faces can be used.
+
+        Raises:
+            InputError: no faces, indices out of range, or coordinates that are not finite.
+        """
+        if len(self.faces) == 0:
+            raise InputError(
+                "; ".join(["holds no triangle or quadrilateral", *self.changes, "export a surface"])
+            )
+        corners = self.faces[self.faces != -1]
+        if len(corners) and not 0 <= corners.min() <= corners.max() < len(self.vertices):
+            raise InputError("a face uses a corner that is not in the file; export it again")
+        finite = np.isfinite(self.vertices).all(axis=1)
+        bad = np.unique(corners[~finite[corners]])
+        if len(bad):
+            raise InputError(
+                f"{counted(len(bad), 'corner')} not finite, the first is number {bad[0] + 1} at "
+                f"{tuple(self.vertices[bad[0]].tolist())}; export the file again"
+            )
+        return self
