@@ -19,6 +19,7 @@ EVENTS = [
     Progress("solving", 1, 96, math.nan, 9.2),
     Progress("assembling", 2, 308, 2.4, 9.3),
     Progress("solving", 2, 308, 2.4, 9.4),
+    Progress("refining", 2, 308, 0.8, 9.5),
 ]
 
 
@@ -40,7 +41,7 @@ def played(stream: io.StringIO) -> str:
 
 def test_a_line_says_all_that_was_asked_for() -> None:
     assert line_of(EVENTS[-1], 1e-3) == (
-        "9.4 s: round 2, 308 panels, largest bar / target 2.4, target 0.001, solving"
+        "9.5 s: round 2, 308 panels, largest bar / target 0.8, target 0.001, refining"
     )
     assert "largest bar / target not known yet" in line_of(EVENTS[2], 1e-3)
 

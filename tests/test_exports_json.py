@@ -149,6 +149,7 @@ def test_a_missing_entry_is_named(tmp_path: Path, key: str) -> None:
         ({"rounds": []}, "'rounds' is damaged"),
         ({"rounds": [{"panels": 3}]}, "'rounds' is damaged"),
         ({"pairs": [{"conductors": ["a"], "accuracy": 1}]}, "'pairs' is damaged"),
+        ({"pairs": [{"conductors": ["wall", "x"], "accuracy": 1}]}, "'pairs' is damaged"),
         ({"audit": []}, "'audit' is damaged"),
         ({"budget_F": {"quadrature": [1.0]}}, "'budget_F' is damaged"),
         ({"arrays": []}, "'arrays' is damaged"),

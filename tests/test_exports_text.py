@@ -138,12 +138,23 @@ def test_missing_the_tolerance_is_loud_and_says_what_to_do() -> None:
     assert "raise max-panels or the tolerance" in " ".join(text.split())
 
 
+def test_bars_that_the_audit_widened_count_as_they_are() -> None:
+    result = sample_result(error=np.full((2, 2), 3e-14), converged=False)
+    text = " ".join(report(result).split())
+    assert "the largest bar is 2.4 times what it allows; the audit widened the bars" in text
+
+
+def test_the_total_is_not_a_phase() -> None:
+    text = report(sample_result(seconds={"geometry": 0.1, "total": 0.4}))
+    assert "time 0.4 s" in text and "time by phase: geometry 0.1 s\n" in text
+
+
 def test_a_failed_check_is_named_with_both_numbers() -> None:
     audit = {
-        "reciprocity": {"value": 2e-3, "limit": 1e-3, "ok": False},
+        "far_residual": {"value": 2e-3, "limit": 1e-3, "ok": False},
         "signs": {"value": 0.0, "limit": 0.0, "ok": True},
     }
-    assert "audit: 1 of 2 checks off: reciprocity 0.002 (limit 0.001)" in report(
+    assert "audit: 1 of 2 checks off: far residual 0.002 (limit 0.001)" in report(
         sample_result(audit=audit)
     )
 

@@ -111,6 +111,23 @@ def test_allowance_is_the_tolerance_times_the_mean_of_the_diagonal() -> None:
     np.testing.assert_allclose(result.allowance, 1e-3 * np.array([[4.0, 6.0], [6.0, 9.0]]))
 
 
+def test_a_pair_may_be_allowed_less_than_the_tolerance_does() -> None:
+    matrix = np.array([[4.0, -1.0], [-1.0, 9.0]])
+    strict = sample_result(matrix, pairs={("wall", "probe rod"): 1e-4})
+    np.testing.assert_allclose(strict.allowance, [[4e-3, 1e-4], [1e-4, 9e-3]])
+    loose = sample_result(matrix, pairs={("wall", "probe rod"): 0.5})
+    np.testing.assert_allclose(loose.allowance, [[4e-3, 6e-3], [6e-3, 9e-3]])
+
+
+def test_used_is_the_bar_over_what_is_allowed() -> None:
+    result = sample_result(
+        np.array([[4.0, -1.0], [-1.0, 9.0]]), np.array([[2e-3, 0], [3e-3, 9e-3]])
+    )
+    np.testing.assert_allclose(result.used, [[0.5, 0.0], [0.5, 1.0]])
+    nothing = sample_result(np.zeros((2, 2)), np.array([[0.0, 1.0], [0.0, 0.0]]))
+    np.testing.assert_array_equal(nothing.used, [[0.0, np.inf], [0.0, 0.0]])
+
+
 def test_panels_are_those_of_the_last_round() -> None:
     assert sample_result().panels == 308
 
@@ -124,9 +141,11 @@ def test_repr_is_one_short_line_and_str_the_table() -> None:
 
 
 def test_every_reason_to_stop_has_a_remedy() -> None:
-    for reason in ("tolerance", "max-panels", "memory", "rounds", "interrupt"):
-        assert remedy(reason) == STOPPED_BY[reason] != reason
-    assert remedy("power cut") == "power cut"
+    for reason in ("max-panels", "memory", "rounds", "breakdown", "interrupt"):
+        assert remedy(reason, False) == STOPPED_BY[reason] != reason
+    assert remedy("tolerance", True) == STOPPED_BY["tolerance"]
+    assert "audit widened the bars" in remedy("tolerance", False)
+    assert remedy("power cut", False) == "power cut"
 
 
 def test_saved_and_loaded_is_the_same(tmp_path: Path) -> None:

@@ -187,10 +187,11 @@ def _extract(
 
 
 def _exit_code(result: CapacitanceResult) -> int:
+    reason = remedy(result.stopped_by, result.converged)
     if result.stopped_by == "interrupt":
-        tell(f"bem: {remedy(result.stopped_by)}")
+        tell(f"bem: {reason}")
         return EXIT_INTERRUPTED
     if not result.converged:
-        tell(f"bem: tolerance {result.tolerance:g} not reached: {remedy(result.stopped_by)}")
+        tell(f"bem: tolerance {result.tolerance:g} not reached: {reason}")
         return ToleranceNotReached.exit_code
     return EXIT_DONE

@@ -58,10 +58,10 @@ class Live:
 
 
 def _milestone(progress: Progress) -> str | int:
-    """Name what deserves a line of its own: each round, and the one wait for the compiler."""
+    """Name what deserves a line: each round's mesh, and the one wait for the compiler."""
     if progress.round == 0 or progress.phase.startswith(_COMPILING):
         return progress.phase
-    return progress.round
+    return progress.panels
 
 
 def line_of(progress: Progress, tolerance: float) -> str:

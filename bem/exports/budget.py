@@ -29,11 +29,9 @@ def budget_text(result: CapacitanceResult, sign: str) -> str:
 
 
 def tightest_entry(result: CapacitanceResult) -> tuple[int, int]:
-    """Row and column of the entry whose bar takes most of what the tolerance allows."""
-    allowed = result.allowance
-    used = np.divide(result.error, allowed, out=np.zeros_like(allowed), where=allowed > 0)
-    index = int(np.argmax(np.where(np.isnan(used), np.inf, used)))
-    return divmod(index, len(result.conductors))
+    """Row and column of the entry whose bar takes most of what is allowed for it."""
+    used = np.where(np.isnan(result.used), np.inf, result.used)
+    return divmod(int(np.argmax(used)), len(result.conductors))
 
 
 def _part(

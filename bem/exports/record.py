@@ -105,7 +105,7 @@ def from_record(record: Any) -> CapacitanceResult:
         error=entries.floats("error_F", (n, n)),
         row_sum=entries.floats("row_sum_F", (n,)),
         row_sum_error=entries.floats("row_sum_error_F", (n,)),
-        **_outcome(entries),
+        **_outcome(entries, names),
         **_history(entries, n),
         **_circumstances(entries),
         **_unpacked(record),
@@ -150,10 +150,10 @@ def _floats(found: Any, shape: tuple[int, ...]) -> np.ndarray:
     return array
 
 
-def _outcome(entries: _Entries) -> dict[str, Any]:
+def _outcome(entries: _Entries, names: tuple[str, ...]) -> dict[str, Any]:
     return {
         "tolerance": entries.get("tolerance", float),
-        "pairs": entries.get("pairs", _pairs),
+        "pairs": entries.get("pairs", lambda found: _pairs(found, names)),
         "converged": entries.get("converged", bool),
         "stopped_by": entries.get("stopped_by", _text),
         "version": entries.get("version", _text),
@@ -201,13 +201,15 @@ def _text(found: Any) -> str:
     return found
 
 
-def _pairs(found: list[dict[str, Any]]) -> dict[tuple[str, str], float]:
-    return {_pair(entry["conductors"]): float(entry["accuracy"]) for entry in found}
+def _pairs(found: list[dict[str, Any]], names: tuple[str, ...]) -> dict[tuple[str, str], float]:
+    return {_pair(entry["conductors"], names): float(entry["accuracy"]) for entry in found}
 
 
-def _pair(names: list[str]) -> tuple[str, str]:
-    first, second = names
-    return _text(first), _text(second)
+def _pair(pair: list[str], names: tuple[str, ...]) -> tuple[str, str]:
+    first, second = pair
+    if first not in names or second not in names:
+        raise ValueError(f"{pair} are not conductors")
+    return first, second
 
 
 def _by_name(found: dict[str, dict[str, Any]]) -> dict[str, dict[str, Any]]:

@@ -15,6 +15,8 @@ from bem.units import metre_unit
 MEANING = "{sign} is a bound meant to hold for at least 95 % of entries"
 MOST_NOTES = 10
 
+_TOTAL = "total"
+
 
 def lines_of(result: CapacitanceResult, sign: str) -> list[str]:
     """One fact per line, in the order in which a reader needs them.
@@ -36,25 +38,27 @@ def lines_of(result: CapacitanceResult, sign: str) -> list[str]:
 
 
 def _outcome(result: CapacitanceResult) -> str:
-    worst = result.rounds[-1].worst
+    worst = max(result.rounds[-1].worst, float(result.used.max()))
     times = f"{worst:.2g} times" if math.isfinite(worst) else "not yet comparable with"
     largest = f"the largest bar is {times} what it allows"
     if result.converged:
         return f"tolerance {result.tolerance:g} reached: {largest}"
-    reason = remedy(result.stopped_by)
+    reason = remedy(result.stopped_by, result.converged)
     return f"TOLERANCE {result.tolerance:g} NOT REACHED: {largest}; {reason}"
 
 
 def _effort(result: CapacitanceResult) -> str:
     threads = result.settings.get("threads", "not recorded")
+    seconds = result.seconds.get(_TOTAL, result.rounds[-1].seconds)
     return (
         f"panels {result.panels}, rounds {len(result.rounds)}, "
-        f"time {result.rounds[-1].seconds:.3g} s, threads {threads}"
+        f"time {seconds:.3g} s, threads {threads}"
     )
 
 
 def _phases(result: CapacitanceResult) -> list[str]:
-    parts = [f"{shown(phase)} {seconds:.2g} s" for phase, seconds in result.seconds.items()]
+    phases = {phase: time for phase, time in result.seconds.items() if phase != _TOTAL}
+    parts = [f"{shown(phase)} {time:.2g} s" for phase, time in phases.items()]
     return [f"time by phase: {', '.join(parts)}"] if parts else []
 
 
@@ -85,7 +89,7 @@ def _audit(result: CapacitanceResult) -> str:
 
 
 def _finding(name: str, found: dict[str, Any]) -> str:
-    return f"{shown(name)} {found['value']:.2g} (limit {found['limit']:.2g})"
+    return f"{shown(name.replace('_', ' '))} {found['value']:.2g} (limit {found['limit']:.2g})"
 
 
 def _used(found: dict[str, Any]) -> float:

@@ -7,11 +7,17 @@ STOPPED_BY = {
     "max-panels": "the limit on panels was met; raise max-panels or the tolerance",
     "memory": "the memory limit was met; allow more memory or raise the tolerance",
     "rounds": "further rounds no longer shrink the bars; raise the tolerance or simplify the mesh",
+    "breakdown": "the equations could not be solved on a finer mesh; raise the tolerance, or mend "
+    "very thin gaps and slivers (bem inspect shows them)",
     "interrupt": "interrupted; this is the best result so far, run again to reach the tolerance",
 }
 """Every value of ``CapacitanceResult.stopped_by``, with the remedy in words."""
 
+_WIDENED = "the audit widened the bars afterwards; raise the tolerance, and see the warnings"
 
-def remedy(stopped_by: str) -> str:
+
+def remedy(stopped_by: str, converged: bool) -> str:
     """Return the words for ``stopped_by``; a reason that is not listed stands for itself."""
+    if stopped_by == "tolerance" and not converged:
+        return _WIDENED
     return STOPPED_BY.get(stopped_by, stopped_by)

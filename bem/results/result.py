@@ -46,7 +46,7 @@ class CapacitanceResult:
         tolerance: what was asked: every bar at most this times sqrt(C_ii C_jj).
         pairs: {(name, name): relative accuracy asked for that coupling}.
         converged: whether all that was asked was reached.
-        stopped_by: "tolerance", "max-panels", "memory", "rounds" or "interrupt".
+        stopped_by: "tolerance", "max-panels", "memory", "rounds", "breakdown" or "interrupt".
         rounds: one record per round.
         budget: parts of the largest bars, {part name: (n, n) F}.
         audit: findings of the audit, {check name: {"value": float, "limit": float, "ok": bool}}.
@@ -95,9 +95,21 @@ class CapacitanceResult:
 
     @property
     def allowance(self) -> np.ndarray:
-        """(n, n) F: the bar that the tolerance allows each entry, t sqrt(C_ii C_jj)."""
+        """(n, n) F: largest bar that was asked for: t sqrt(C_ii C_jj), or less for a pair."""
         size = np.sqrt(np.abs(np.diagonal(self.capacitance)))
-        return self.tolerance * np.outer(size, size)
+        allowed = self.tolerance * np.outer(size, size)
+        for pair, accuracy in self.pairs.items():
+            i, j = map(self.conductors.index, pair)
+            allowed[i, j] = min(allowed[i, j], accuracy * abs(self.capacitance[i, j]))
+            allowed[j, i] = min(allowed[j, i], accuracy * abs(self.capacitance[j, i]))
+        return allowed
+
+    @property
+    def used(self) -> np.ndarray:
+        """(n, n): each bar over what is allowed for it; 1 or less is good enough."""
+        allowed = self.allowance
+        nothing = np.where(self.error == 0.0, 0.0, np.inf)
+        return np.divide(self.error, allowed, out=nothing, where=allowed > 0.0)
 
     def to_json(self, path: str | PathLike[str], arrays: bool = True) -> None:
         """Save everything; ``load_result`` reads it back without loss.
