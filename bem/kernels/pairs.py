@@ -188,7 +188,7 @@ def near_pair(i: int, j: int, panels: PanelArrays) -> float:
     reach = extent**2 * 4.0 * panels.radius[i] * panels.radius[j]
     if facing > 1.0 - ALIGNED**2 * 50.0 and reach < SIDES_LOSS * areas:
         return coplanar_pair(i, j, panels)
-    if panels.area[i] <= panels.area[j]:
+    if panels.radius[i] <= panels.radius[j]:
         return clustered_pair(i, j, panels)
     return clustered_pair(j, i, panels)
 
@@ -253,24 +253,24 @@ def fill(
 
 
 @njit(cache=True, error_model="numpy")
-def symmetric(single: np.ndarray, area: np.ndarray, out: np.ndarray) -> None:
+def symmetric(single: np.ndarray, radius: np.ndarray, out: np.ndarray) -> None:
     """Fill ``out`` with A, each pair taken from the row whose outer panel is smaller."""
-    for i in range(area.size):
+    for i in range(radius.size):
         for j in range(i + 1):
-            value = single[i, j] if area[i] < area[j] else single[j, i]
+            value = single[i, j] if radius[i] < radius[j] else single[j, i]
             out[i, j] = value
             out[j, i] = value
 
 
 @njit(cache=True, error_model="numpy")
-def asymmetry(single: np.ndarray, area: np.ndarray, x: np.ndarray) -> np.ndarray:
+def asymmetry(single: np.ndarray, radius: np.ndarray, x: np.ndarray) -> np.ndarray:
     """x^T (A - mean of both rows) x, (k, k) for x (n, k): what the choice of row decides."""
     k = x.shape[1]
     total = np.zeros((k, k))
-    for i in range(area.size):
+    for i in range(radius.size):
         for j in range(i):
             half = 0.5 * (single[i, j] - single[j, i])
-            if area[i] >= area[j]:
+            if radius[i] >= radius[j]:
                 half = -half
             if half != 0.0:
                 for a in range(k):

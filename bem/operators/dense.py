@@ -50,7 +50,7 @@ class DenseOperator:
         self, panels: PanelArrays, targets: Targets, tolerance: float, reuse: Reuse | None = None
     ) -> None:
         n = len(panels.area)
-        self.area = panels.area
+        self.radius = panels.radius
         self.single = np.empty((n, n))
         self.test_rows = np.empty((4, n, n), dtype=np.float32)
         known = np.zeros(n, dtype=bool)
@@ -71,12 +71,12 @@ class DenseOperator:
     @property
     def size(self) -> int:
         """Number of panels."""
-        return len(self.area)
+        return len(self.radius)
 
     def matrix(self) -> np.ndarray:
         """Symmetric matrix (n, n), each pair from the row whose outer panel is smaller."""
         out = np.empty_like(self.single)
-        pairs.symmetric(self.single, self.area, out)
+        pairs.symmetric(self.single, self.radius, out)
         return out
 
     def apply(self, density: np.ndarray) -> np.ndarray:
@@ -94,4 +94,4 @@ class DenseOperator:
 
     def asymmetry(self, density: np.ndarray) -> np.ndarray:
         """(k, k) energy that the choice between both rows of each pair decides."""
-        return pairs.asymmetry(self.single, self.area, np.ascontiguousarray(density))
+        return pairs.asymmetry(self.single, self.radius, np.ascontiguousarray(density))
