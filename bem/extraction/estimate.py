@@ -1,7 +1,7 @@
 """The reported value and its error bar, from the rounds so far.
 
     X   = L + kappa S + F
-    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + FACET |F| + FLOOR sqrt(L_ii L_jj)
+    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + FLOOR sqrt(L_ii L_jj)
 
 S and Sabs are the signed and absolute summed indicator, F the faceting effect, q the
 quadrature effect. One kappa serves the whole matrix: the slope of L against S over the last
@@ -18,10 +18,10 @@ import numpy as np
 
 from bem.extraction.solution import Sums
 
-KAPPA_USUAL = 1.0
+KAPPA_USUAL = 1.05
 KAPPA_DRAW = 0.3
 KAPPA_LOW, KAPPA_HIGH = 0.6, 3.0
-SHARE, TREND, DOUBT, FACET = 0.25, 0.35, 0.4, 0.25
+SHARE, TREND, DOUBT = 0.25, 0.35, 0.4
 FLOOR = 1e-6
 ROUNDS = 4
 """Rounds before a bar is believed."""
@@ -36,12 +36,23 @@ class Estimate:
         bar: its error bar.
         parts: what the bar is made of.
         kappa: slope used.
+        facet_doubt: part of the faceting effect that the bar holds.
     """
 
     value: np.ndarray
     bar: np.ndarray
     parts: dict[str, np.ndarray]
     kappa: float
+    facet_doubt: float
+
+
+def facet_doubt(faceting: np.ndarray, value: np.ndarray) -> float:
+    """Part of the faceting effect that may be wrong: about the turn between neighbouring facets.
+
+    The effect is of second order in that turn and what it leaves out is of third.
+    """
+    part = np.abs(np.diagonal(faceting)) / np.diagonal(value)
+    return float(min(np.sqrt(part.max()), 1.0))
 
 
 def _slope(steps: list[tuple[float, float]], anchor: float) -> float:
@@ -54,9 +65,16 @@ def _slope(steps: list[tuple[float, float]], anchor: float) -> float:
 def _steps(rounds: list[Sums]) -> list[tuple[float, float]]:
     """Changes of value (up) and of indicator (down) of the normalised trace between rounds."""
     size = np.diagonal(rounds[-1].value)
-    c = [float((np.diagonal(r.value) / size).sum()) for r in rounds]
+    c = [float((np.diagonal(r.value + r.faceting) / size).sum()) for r in rounds]
     s = [float((np.diagonal(r.signed) / size).sum()) for r in rounds]
     return [(c[k + 1] - c[k], s[k] - s[k + 1]) for k in range(len(rounds) - 1)]
+
+
+def _faceting_steps(rounds: list[Sums]) -> float:
+    """Summed squared changes of the faceting effect: where they are large, slopes say little."""
+    size = np.diagonal(rounds[-1].value)
+    f = np.array([(np.diagonal(r.faceting) / size).sum() for r in rounds])
+    return float(np.sum(np.diff(f) ** 2))
 
 
 def _kappa(rounds: list[Sums]) -> tuple[float, float]:
@@ -66,7 +84,8 @@ def _kappa(rounds: list[Sums]) -> tuple[float, float]:
         return KAPPA_USUAL, KAPPA_USUAL
     last = rounds[-1]
     s = float((np.diagonal(last.signed) / np.diagonal(last.value)).sum())
-    kappa = float(np.clip(_slope(steps, KAPPA_DRAW * s * s), KAPPA_LOW, KAPPA_HIGH))
+    anchor = KAPPA_DRAW * s * s + _faceting_steps(rounds[-4:])
+    kappa = float(np.clip(_slope(steps, anchor), KAPPA_LOW, KAPPA_HIGH))
     raw = [_slope(steps[-n:], 1e-12 * s * s) for n in (2, 3)]
     return kappa, max(abs(kappa - np.clip(r, 0.0, KAPPA_HIGH)) for r in raw)
 
@@ -85,10 +104,11 @@ def estimate(rounds: list[Sums]) -> Estimate:
     drift = np.max([np.abs(value - x) for x in earlier], axis=0) if earlier else np.abs(value)
     root = np.sqrt(np.diagonal(last.value))
     floor = FLOOR * root[:, None] * np.append(root, np.sqrt(max(last.value[:, -1].sum(), 0.0)))
+    facets = facet_doubt(last.faceting, last.value)
     parts = {
         "discretisation": (SHARE + DOUBT * doubt) * last.absolute,
         "trend": TREND * drift,
         "quadrature": last.quadrature + floor,
-        "faceting": FACET * np.abs(last.faceting),
+        "faceting": facets * np.abs(last.faceting),
     }
-    return Estimate(value, sum(parts.values()), parts, kappa)
+    return Estimate(value, sum(parts.values()), parts, kappa, facets)

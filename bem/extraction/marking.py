@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from bem.extraction.estimate import Estimate
+from bem.extraction.estimate import SHARE, Estimate
 from bem.extraction.solution import Solution
 
 
@@ -52,20 +52,20 @@ def indicator(solution: Solution, goal: Goal, found: Estimate) -> np.ndarray:
     for i, j, _ in goal.pairs:
         if excess[i, j] > 1.0:
             energy += np.abs(solution.residual[:, :, i] * solution.residual[:, :, j]) / allowed[i, j]
-    facet = _facet_indicator(solution, weight)
+    facet = _facet_indicator(solution, weight, found.facet_doubt / SHARE)
     return np.stack([energy[0] + energy[2] + facet[0], energy[1] + energy[3] + facet[1]])
 
 
-def _facet_indicator(solution: Solution, weight: np.ndarray) -> np.ndarray:
+def _facet_indicator(solution: Solution, weight: np.ndarray, doubt: float) -> np.ndarray:
     """(2, n) doubt in the faceting effect of each panel, given to its longer direction."""
     faceting = solution.mesh.faceting()
-    if not (faceting.offset.any() or faceting.rim_offset.any()):
+    if faceting.exact:
         return np.zeros((2, len(faceting.offset)))
     area, side = solution.panels.area, solution.panels.sides[:, :, 2]
     charge = np.einsum("nk,k->n", solution.density**2, weight)
     normal = 4.0 * np.pi * area * np.abs(faceting.offset)
     rim = 0.5 * np.pi**2 * area * np.abs(faceting.rim_offset) * faceting.rim_width
-    size = 0.1 * (normal + rim) * charge
+    size = doubt * (normal + rim) * charge
     along = side[:, 0] + side[:, 2] >= side[:, 1] + side[:, 3]
     return np.stack([np.where(along, size, 0.0), np.where(along, 0.0, size)])
 

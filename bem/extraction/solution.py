@@ -20,10 +20,14 @@ import numpy as np
 
 from bem.kernels.arrays import PanelArrays, panel_arrays
 from bem.kernels.indicator_energy import indicator_energies
+from bem.kernels.potential import potential_of_panels
 from bem.kernels.targets import make_targets
 from bem.operators.dense import DenseOperator, Reuse
 from bem.panels.mesh import Faceting, Mesh
 from bem.solve.dense import solve_dense
+
+SIDE_STEP = 1e-3
+"""Distance from a sheet, over the panel's radius, at which its two sides are told apart."""
 
 
 @dataclass(frozen=True)
@@ -36,7 +40,6 @@ class Solution:
         operator: their operator.
         density: (n, k).
         residual: (4, n, k) residual against each test over the root of its energy.
-        seconds: {"assembly": ..., "solve": ..., "estimate": ...}.
     """
 
     mesh: Mesh
@@ -110,19 +113,48 @@ def sums(solution: Solution) -> Sums:
         signed=w.T @ every,
         absolute=np.abs(w).T @ np.abs(every),
         quadrature=with_all(quadrature),
-        faceting=faceting_effect(density, area, solution.mesh.faceting()),
+        faceting=faceting_effect(solution),
     )
 
 
-def faceting_effect(density: np.ndarray, area: np.ndarray, faceting: Faceting) -> np.ndarray:
+def faceting_effect(solution: Solution) -> np.ndarray:
     """First-order change of L (k, k + 1) when the panels move out to the true surface.
 
-    On a closed surface the change is 4 pi times the integral of s_i s_j times the normal
-    displacement (Hadamard 1908). At a curved free rim of a sheet the density is K / sqrt(r)
-    and the change is 2 pi^2 times the integral along the rim of K_i K_j times the in-plane
-    displacement (the energy release of a crack front, with the constant of the disk); a
-    panel of width w at the rim has the mean density 2 K / sqrt(w).
+    With a and b the densities on the outer and the inner side of a panel the change is 4 pi
+    times the integral of (a_i a_j - b_i b_j) times the displacement along the normal
+    (Hadamard 1908); inside a closed body b is zero. At a curved free rim of a sheet the
+    density is K / sqrt(r) and the change is 2 pi^2 times the integral along the rim of
+    K_i K_j times the in-plane displacement (the energy release of a crack front, with the
+    constant of the disk); a panel of width w at the rim has the mean density 2 K / sqrt(w).
     """
-    weight = 4.0 * np.pi * area * faceting.offset
-    weight = weight + 0.5 * np.pi**2 * area * faceting.rim_offset * faceting.rim_width
-    return density.T @ (weight[:, None] * with_all(density))
+    faceting, density, area = solution.mesh.faceting(), solution.density, solution.panels.area
+    count = density.shape[1]
+    if faceting.exact:
+        return np.zeros((count, count + 1))
+    normal = 4.0 * np.pi * area * faceting.offset
+    rim = 0.5 * np.pi**2 * area * faceting.rim_offset * faceting.rim_width
+    excess = _side_difference(solution, faceting)
+    change = density.T @ (normal[:, None] * excess)
+    change = 0.5 * (change + change.T) + density.T @ (rim[:, None] * density)
+    return with_all(change)
+
+
+def _side_difference(solution: Solution, faceting: Faceting) -> np.ndarray:
+    """(n, k) density on the outer side less that on the inner side of each panel.
+
+    On a sheet it is -1/(2 pi) times the mean normal derivative of the potential, taken from
+    the potential a little above and below the centroid.
+    """
+    difference = solution.density.copy()
+    rows = np.flatnonzero(faceting.sheet & (faceting.offset != 0.0))
+    if len(rows) == 0:
+        return difference
+    panels = solution.panels
+    step = SIDE_STEP * panels.radius[rows, None]
+    normal = panels.axes[rows, 2]
+    points = np.concatenate([panels.center[rows] + step * normal, panels.center[rows] - step * normal])
+    for column, density in enumerate(solution.density.T):
+        u = potential_of_panels(panels, np.ascontiguousarray(points.T), np.ascontiguousarray(density))
+        slope = (u[: len(rows)] - u[len(rows) :]) / (2.0 * step[:, 0])
+        difference[rows, column] = -slope / (2.0 * np.pi)
+    return difference

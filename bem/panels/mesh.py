@@ -96,15 +96,24 @@ class Faceting:
         offset: (n,) mean outward distance of the true surface from the panel.
         rim_offset: (n,) part of the panel's area that is missing at a curved free rim.
         rim_width: (n,) width of such a panel across the rim, 0 for all others.
+        sheet: (n,) bool, panels of open surfaces, with field on both sides.
     """
 
     offset: np.ndarray
     rim_offset: np.ndarray
     rim_width: np.ndarray
+    sheet: np.ndarray
+
+    @property
+    def exact(self) -> bool:
+        """Whether all panels lie on the true surface."""
+        return not (self.offset.any() or self.rim_offset.any())
 
 
-def _faceting(family: Family) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+def _faceting(family: Family) -> tuple[np.ndarray, ...]:
+    count = len(family.corners)
     if isinstance(family, FlatFamily):
-        zero = np.zeros(len(family.corners))
-        return zero, zero, zero
-    return family.offset, family.rim_offset, family.rim_width
+        zero = np.zeros(count)
+        return zero, zero, zero, zero.astype(bool)
+    sheet = np.full(count, any(family.grid.surface.free_rims))
+    return family.offset, family.rim_offset, family.rim_width, sheet
