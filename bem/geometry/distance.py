@@ -11,7 +11,7 @@ import math
 
 from numba import njit
 
-from bem.geometry.vectors import Vector, along, cross, dot, minus, norm
+from bem.geometry.vectors import Vector, along, cross, dot, minus, norm, unit
 
 Triangle = tuple[Vector, Vector, Vector]
 Nearest = tuple[float, Vector, Vector]
@@ -82,21 +82,29 @@ def _edges(best: Nearest, a: Vector, b: Vector, c: Vector, d: Vector) -> Nearest
 
 
 @njit(cache=True)
+def _clearance(p: Vector, t: Triangle, n: Vector) -> float:
+    """Distance of p, in the triangle's plane with unit normal n, from its rim; < 0 outside."""
+    clear = math.inf
+    for k in range(3):
+        edge = minus(t[(k + 1) % 3], t[k])
+        clear = min(clear, dot(cross(edge, minus(p, t[k])), n) / norm(edge))
+    return clear
+
+
+@njit(cache=True)
 def _pierced(a: Vector, b: Vector, t: Triangle, n: Vector) -> tuple[float, Vector]:
     """Depth by which the segment ab goes through the triangle, and where; zero if not."""
     from_a, from_b = dot(minus(a, t[0]), n), dot(minus(b, t[0]), n)
     if from_a * from_b >= 0.0:
         return 0.0, a
     place = along(a, from_a / (from_a - from_b), minus(b, a))
-    if not _above(place, t, n):
-        return 0.0, a
-    return min(abs(from_a), abs(from_b)) / norm(n), place
+    return max(min(abs(from_a), abs(from_b), _clearance(place, t, n)), 0.0), place
 
 
 @njit(cache=True)
 def _through(first: Triangle, second: Triangle) -> tuple[float, Vector]:
     """Deepest piercing of ``second`` by an edge of ``first``."""
-    n = cross(minus(second[1], second[0]), minus(second[2], second[0]))
+    n = unit(cross(minus(second[1], second[0]), minus(second[2], second[0])))
     deepest, where = 0.0, first[0]
     for k in range(3):
         depth, place = _pierced(first[k], first[(k + 1) % 3], second, n)
@@ -109,8 +117,9 @@ def _through(first: Triangle, second: Triangle) -> tuple[float, Vector]:
 def piercing(first: Triangle, second: Triangle) -> tuple[float, Vector]:
     """Depth by which an edge of one triangle goes through the other, and where.
 
-    The depth is the shorter of the two pieces of the edge, measured normal to the
-    triangle that it goes through; zero if the triangles do not cross.
+    The depth is how far one of them has to move so that they no longer cross: the edge's
+    shorter piece along the normal of the triangle that it goes through, or the way from
+    there to the triangle's rim. It is zero if the triangles do not cross.
     """
     depth, place = _through(first, second)
     other, elsewhere = _through(second, first)

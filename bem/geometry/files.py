@@ -11,6 +11,7 @@ import hashlib
 from collections.abc import Iterator
 from functools import lru_cache
 from pathlib import Path
+from typing import NamedTuple
 
 from bem.errors import InputError
 from bem.geometry.mesh_data import MeshData
@@ -44,15 +45,27 @@ def read_surface(
     return surface, [*mesh.changes, *changes]
 
 
-def part_faces(path: str | Path) -> tuple[int, dict[str, int]]:
-    """Count the faces in a mesh file, and in each of its named parts.
+class Bodies(NamedTuple):
+    """Parts of a mesh file that stand for a body each.
+
+    Args:
+        names: of the parts; none in an STL file, or if the file names no surface group.
+        outside: number of faces in none of them.
+    """
+
+    names: tuple[str, ...]
+    outside: int
+
+
+def bodies_in(path: str | Path) -> Bodies:
+    """Named surface groups of a mesh file.
 
     Raises:
         InputError: the file is missing, unreadable, damaged or empty.
     """
     with _named(path):
         mesh = _open(path)
-    return len(mesh.faces), {name: len(faces) for name, faces in mesh.parts.items()}
+    return Bodies(mesh.bodies, mesh.outside_bodies)
 
 
 def file_digest(path: str | Path) -> str:
@@ -79,7 +92,7 @@ def _named(path: str | Path) -> Iterator[None]:
 
 
 def _open(path: str | Path) -> MeshData:
-    path = Path(path)
+    path = Path(path).absolute()
     if path.suffix.lower() not in SUFFIXES:
         found = path.suffix or "no ending"
         raise InputError(f"unknown kind of mesh file ({found}); known are {', '.join(SUFFIXES)}")

@@ -18,12 +18,14 @@ class MeshData:
         vertices: (v, 3) float64, in the file's unit.
         faces: (f, 4) int64; a triangle has -1 last.
         parts: faces (indices) of each named portion.
+        bodies: the parts that stand for a body each, where the kind of file has such.
         changes: what was left out or reduced, one line each.
     """
 
     vertices: np.ndarray
     faces: np.ndarray
     parts: dict[str, np.ndarray] = field(default_factory=dict)
+    bodies: tuple[str, ...] = ()
     changes: tuple[str, ...] = ()
 
     def faces_of(self, part: str | None) -> np.ndarray:
@@ -35,9 +37,17 @@ class MeshData:
         if part is None:
             return self.faces
         if part not in self.parts:
-            found = f"found {listed(list(self.parts))}" if self.parts else "the file names no parts"
+            found = f"found {listed(self.parts)}" if self.parts else "the file names no parts"
             raise InputError(f"part {listed([part])} is not in the file; {found}")
         return self.faces[self.parts[part]]
+
+    @property
+    def outside_bodies(self) -> int:
+        """Number of faces that belong to none of the bodies."""
+        outside = np.ones(len(self.faces), dtype=bool)
+        for name in self.bodies:
+            outside[self.parts[name]] = False
+        return int(outside.sum())
 
     def check(self) -> MeshData:
         """Return the data itself if its faces can be used.

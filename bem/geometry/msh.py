@@ -44,10 +44,13 @@ def read_msh(path: Path) -> MeshData:
     mesh = _read(sections, form)
     kept = [i for i, block in enumerate(mesh.cells) if _kind(block.type) is not None]
     faces = [_faces(mesh.cells[i]) for i in kept]
+    names = surface_names(sections.get("PhysicalNames", b""))
+    parts = _parts(names, _members(sections, form, mesh, kept))
     return MeshData(
         np.asarray(mesh.points, dtype=np.float64),
         np.concatenate([np.empty((0, 4), dtype=np.int64), *faces]),
-        _parts(sections, form, mesh, kept),
+        parts,
+        tuple(name for name in parts if name in names.values()),
         tuple(_changes(mesh)),
     )
 
@@ -110,18 +113,25 @@ def _changes(mesh: Any) -> list[str]:
     return lines
 
 
-def _parts(
+def _parts(names: dict[int, str], members: dict[int, np.ndarray]) -> dict[str, np.ndarray]:
+    """Cells (indices) of each group by name; groups of one name are one part."""
+    parts: dict[str, np.ndarray] = {}
+    for number in sorted(members):
+        name = names.get(number, f"group {number}")
+        parts[name] = np.union1d(parts.get(name, members[number]), members[number])
+    return parts
+
+
+def _members(
     sections: dict[str, bytes], form: MshFormat, mesh: Any, kept: list[int]
-) -> dict[str, np.ndarray]:
-    names = surface_names(sections.get("PhysicalNames", b""))
+) -> dict[int, np.ndarray]:
+    """Cells (indices) of each group that has any."""
     if form.version.startswith("4"):
         entity = _tags(mesh, "gmsh:geometrical", kept)
-        groups = groups_of_surfaces(sections.get("Entities", b"0 0 0 0"), form)
-        members = _members(entity, groups)
-    else:
-        group = np.abs(_tags(mesh, "gmsh:physical", kept))
-        members = {tag: np.flatnonzero(group == tag) for tag in np.unique(group[group > 0])}
-    return {names.get(tag, f"group {tag}"): members[tag] for tag in sorted(members)}
+        groups = groups_of_surfaces(sections.get("Entities", b""), form)
+        return _by_group(entity, groups)
+    group = np.abs(_tags(mesh, "gmsh:physical", kept))
+    return {int(tag): np.flatnonzero(group == tag) for tag in np.unique(group[group > 0])}
 
 
 def _tags(mesh: Any, key: str, kept: list[int]) -> np.ndarray:
@@ -135,7 +145,7 @@ def _tags(mesh: Any, key: str, kept: list[int]) -> np.ndarray:
     return np.concatenate([np.asarray(blocks[i], dtype=np.int64) for i in kept])
 
 
-def _members(entity: np.ndarray, groups: dict[int, list[int]]) -> dict[int, np.ndarray]:
+def _by_group(entity: np.ndarray, groups: dict[int, list[int]]) -> dict[int, np.ndarray]:
     """Cells (indices) of each group, from the entity of each cell."""
     entities: dict[int, list[int]] = {}
     for tag, numbers in groups.items():

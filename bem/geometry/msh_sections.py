@@ -107,6 +107,8 @@ def groups_of_surfaces(section: bytes, form: MshFormat) -> dict[int, list[int]]:
     Raises:
         InputError: the section ends early or holds words where numbers belong.
     """
+    if not section:
+        return {}
     numbers = _Numbers(section, form)
     try:
         counts = [numbers.size() for _ in range(4)]

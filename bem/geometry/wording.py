@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from collections.abc import Iterable
 from typing import Any
 
 from bem.units import metre_unit
@@ -21,7 +22,7 @@ def counted(number: int, thing: str, plural: str | None = None) -> str:
     return f"{number:,} {thing if number == 1 else plural or thing + 's'}"
 
 
-def listed(names: list[str]) -> str:
+def listed(names: Iterable[str]) -> str:
     """Names in quotes with commas between them, as in '"rod", "plate"'."""
     return ", ".join(shown(name) for name in names)
 

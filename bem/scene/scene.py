@@ -4,27 +4,18 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Any
 
-import numpy as np
-
+from bem.errors import BemError, InputError
 from bem.geometry.surface import Surface
+from bem.scene import checks
+from bem.scene.placing import Place, place_or_refuse, rotation
+from bem.units import metres_per
 
+__all__ = ["Conductor", "Place", "Scene", "Source", "rotation"]
 
-@dataclass(frozen=True)
-class Place:
-    """Where a body goes: scaled first, then turned about the origin, then shifted.
-
-    Args:
-        shift: three lengths in the scene's unit.
-        turn_axis: direction of the axis through the origin, any length.
-        turn_degrees: right-handed angle in degrees.
-        scale: positive factor.
-    """
-
-    shift: tuple[float, float, float] = (0.0, 0.0, 0.0)
-    turn_axis: tuple[float, float, float] = (0.0, 0.0, 1.0)
-    turn_degrees: float = 0.0
-    scale: float = 1.0
+BODIES = ("solid", "shell")
+"""What a closed surface may stand for: solid metal, or a hollow skin of metal."""
 
 
 @dataclass(frozen=True)
@@ -70,11 +61,24 @@ class Scene:
     Args:
         unit: unit of every length that the scene is given; required.
         relative_permittivity: of the surroundings.
+        conductors: filled by ``add_conductor``.
+        folder: where relative names of mesh files start; None is the current directory.
+
+    Raises:
+        UsageError: the unit is unknown.
+        InputError: the permittivity is not a positive finite number.
     """
 
     unit: str
     relative_permittivity: float = 1.0
     conductors: list[Conductor] = field(default_factory=list)
+    folder: Path | None = None
+
+    def __post_init__(self) -> None:
+        metres_per(self.unit)
+        self.relative_permittivity = checks.positive(
+            "relative_permittivity", self.relative_permittivity
+        )
 
     def add_conductor(
         self,
@@ -85,11 +89,76 @@ class Scene:
         part: str | None = None,
         place: Place | None = None,
         body: str = "solid",
+        unit: str | None = None,
     ) -> Scene:
-        """Add a conductor from a shape or a mesh file; returns the scene itself."""
-        raise NotImplementedError
+        """Add a conductor from a shape or a mesh file; returns the scene itself.
+
+        Args:
+            name: unique in the scene.
+            shape: faces in the scene's unit; or else
+            mesh: STL or Gmsh MSH file, and
+            part: a named portion of it.
+            place: scaled first, then turned about the origin, then shifted.
+            body: "solid" (a closed surface is solid metal) or "shell" (hollow).
+            unit: of the numbers in the mesh file, if not the scene's.
+
+        Raises:
+            InputError: a value does not fit, or the file cannot be used.
+            UsageError: the unit is unknown.
+        """
+        entry = entry_name(len(self.conductors) + 1, name)
+        self._check_name(entry, name)
+        checks.one_of(f"{entry}: body", body, BODIES)
+        where = place_or_refuse(f"{entry}: place", place)
+        _check_choice(entry, {"shape": shape, "mesh": mesh, "part": part, "unit": unit})
+        try:
+            if mesh is None:
+                surface, source = self._from_shape(shape)
+            else:
+                surface, source = self._from_mesh(mesh, part, unit or self.unit)
+        except BemError as problem:
+            raise type(problem)(f"{entry}: {problem}") from None
+        if where != Place():
+            shift = [metres_per(self.unit) * x for x in where.shift]
+            surface = surface.placed(where.matrix, shift)
+        self.conductors.append(Conductor(name, surface, body, source))
+        return self
+
+    def _check_name(self, entry: str, name: Any) -> None:
+        checks.text(f"{entry}: name", name)
+        for number, other in enumerate(self.conductors, 1):
+            if other.name == name:
+                raise InputError(f"{entry}: name: already that of conductor {number}; rename one")
+
+    def _from_shape(self, shape: Any) -> tuple[Surface, Source]:
+        from bem.geometry.arrays_in import tidy_surface
+
+        surface, changes = tidy_surface(shape, metres_per(self.unit))
+        return surface, Source(None, None, self.unit, changes=tuple(changes))
+
+    def _from_mesh(self, mesh: Any, part: str | None, unit: str) -> tuple[Surface, Source]:
+        from bem.geometry.files import file_digest, read_surface
+
+        if not isinstance(mesh, str | Path):
+            raise checks.refuse("mesh", mesh, "a file name")
+        path = Path(mesh) if self.folder is None else self.folder / mesh
+        surface, changes = read_surface(path, metres_per(unit), part)
+        return surface, Source(str(mesh), file_digest(path), unit, part, tuple(changes))
 
 
-def rotation(axis: tuple[float, float, float], degrees: float) -> np.ndarray:
-    """Rotation matrix (3, 3) about ``axis`` (Rodrigues 1840)."""
-    raise NotImplementedError
+def entry_name(number: int, name: Any) -> str:
+    """Name an entry as messages do: 'conductor 2 ("probe rod")'."""
+    return f'conductor {number} ("{name}")' if isinstance(name, str) else f"conductor {number}"
+
+
+def _check_choice(entry: str, given: dict[str, Any]) -> None:
+    """Refuse a shape and a mesh together, neither, or a mesh's options without a mesh."""
+    if given["shape"] is not None and given["mesh"] is not None:
+        raise InputError(f"{entry}: found a shape and a mesh; give one of them")
+    if given["shape"] is None and given["mesh"] is None:
+        raise InputError(f"{entry}: mesh: missing; give the name of a mesh file, or a shape")
+    for key in ("part", "unit"):
+        if given["mesh"] is None and given[key] is not None:
+            raise InputError(f"{entry}: {key}: goes with a mesh file only; drop it for a shape")
+    if given["part"] is not None:
+        checks.text(f"{entry}: part", given["part"])

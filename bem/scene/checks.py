@@ -1,0 +1,106 @@
+"""Checks of single values in a scene; each message names the entry, what was found, the limit."""
+
+from __future__ import annotations
+
+import difflib
+import math
+from collections.abc import Iterable
+from typing import Any
+
+from bem.errors import InputError
+from bem.geometry.wording import listed, shown
+
+
+def refuse(where: str, found: Any, needs: str) -> InputError:
+    """Make the error for a value that does not fit."""
+    return InputError(f"{where}: found {shown(found)}, needs {needs}")
+
+
+def number(where: str, value: Any) -> float:
+    """Return a finite number as float.
+
+    Raises:
+        InputError: it is none.
+    """
+    if isinstance(value, bool) or not hasattr(value, "__float__"):
+        raise refuse(where, value, "a number")
+    if not math.isfinite(float(value)):
+        raise refuse(where, str(value), "a finite number")
+    return float(value)
+
+
+def positive(where: str, value: Any) -> float:
+    """Return a positive finite number as float.
+
+    Raises:
+        InputError: it is none.
+    """
+    if number(where, value) <= 0.0:
+        raise refuse(where, value, "a number above 0")
+    return float(value)
+
+
+def triple(where: str, value: Any) -> tuple[float, float, float]:
+    """Return three finite numbers.
+
+    Raises:
+        InputError: they are not.
+    """
+    try:
+        items = None if isinstance(value, str | dict) else list(value)
+    except TypeError:
+        items = None
+    if items is None or len(items) != 3:
+        raise refuse(where, value, "three numbers")
+    x, y, z = (number(f"{where}[{i}]", item) for i, item in enumerate(items))
+    return x, y, z
+
+
+def text(where: str, value: Any) -> str:
+    """Return printable text that is not blank.
+
+    Raises:
+        InputError: it is none.
+    """
+    if not isinstance(value, str) or not value.strip():
+        raise refuse(where, value, "text that is not blank")
+    if not value.isprintable():
+        raise refuse(where, value, "printable text on one line")
+    return value
+
+
+def one_of(where: str, value: Any, allowed: tuple[str, ...]) -> str:
+    """Return one of the allowed words.
+
+    Raises:
+        InputError: it is none; the message lists those allowed.
+    """
+    if value not in allowed:
+        raise InputError(f"{where}: found {shown(value)}; allowed are {listed(allowed)}")
+    return value
+
+
+def table(where: str, value: Any, known: tuple[str, ...]) -> dict[str, Any]:
+    """Return a table whose keys are all known.
+
+    Args:
+        where: the entry, "" for the whole file.
+        value: what was found there.
+        known: the keys allowed.
+
+    Raises:
+        InputError: no table, or an unknown key; the message suggests the nearest one.
+    """
+    if not isinstance(value, dict):
+        raise refuse(where, value, f"a table with {' and '.join(known)}")
+    for key in value:
+        if key not in known:
+            start = f"{where}: " if where else ""
+            raise InputError(f"{start}unknown key {shown(key)}{_near(key, known)}")
+    return value
+
+
+def _near(key: str, known: Iterable[str]) -> str:
+    near = difflib.get_close_matches(key.lower(), known, n=1, cutoff=0.5)
+    hint = f"; did you mean {shown(near[0])}?" if near else ";"
+    return f"{hint} known are {', '.join(known)}"

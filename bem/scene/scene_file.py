@@ -1,0 +1,166 @@
+"""Scenes from TOML files, and from mesh files alone.
+
+A scene file::
+
+    unit = "mm"                    # required: m, cm, mm, um, nm, in, mil
+    [surroundings]
+    relative_permittivity = 1.0    # optional
+    [[conductor]]
+    name = "probe rod"
+    mesh = "probe_rod.stl"         # relative to this file
+    part = "rod"                   # optional: a named portion of the file
+    unit = "mm"                    # optional: of the mesh file, if not the scene's
+    body = "solid"                 # optional: or "shell", hollow
+    place = { shift = [0, 0, 12.5], turn = { axis = [0, 0, 1], degrees = 90 }, scale = 1.0 }
+"""
+
+from __future__ import annotations
+
+import contextlib
+import re
+import tomllib
+from collections.abc import Iterator, Sequence
+from pathlib import Path
+from typing import Any
+
+from bem.errors import BemError, InputError, UsageError
+from bem.geometry.wording import counted, listed
+from bem.scene import checks
+from bem.scene.placing import Place
+from bem.scene.scene import Scene, entry_name
+from bem.units import METRES_PER
+
+_TOP = ("unit", "surroundings", "conductor")
+_CONDUCTOR = ("name", "mesh", "part", "unit", "body", "place")
+_POSITION = re.compile(r"\(at (line \d+, column \d+|end of document)\)")
+
+
+def load_scene(path: str | Path) -> Scene:
+    """Scene of a TOML file; mesh files are read relative to it.
+
+    Raises:
+        InputError: the file or a mesh file is missing or damaged, or an entry does not fit.
+    """
+    with _about(path):
+        entries = checks.table("", _parsed(Path(path)), _TOP)
+        if "unit" not in entries:
+            raise InputError(f"unit: missing; allowed are {', '.join(METRES_PER)}")
+        scene = Scene(entries["unit"], _permittivity(entries), folder=Path(path).parent)
+        for number, conductor in enumerate(_conductors(entries), 1):
+            _add(scene, number, conductor)
+    return scene
+
+
+def scene_from_files(
+    paths: Sequence[str | Path], unit: str, relative_permittivity: float = 1.0
+) -> Scene:
+    """Scene of mesh files alone.
+
+    Each STL file is one conductor, named after the file; an MSH file gives one conductor
+    for each named surface group, or a single one named after the file if it names none.
+
+    Raises:
+        UsageError: no files, or the unit is unknown.
+        InputError: a file cannot be used, or two conductors would have one name.
+    """
+    if not paths:
+        raise UsageError("no mesh files given; name at least one STL or MSH file")
+    scene = Scene(unit, relative_permittivity)
+    origin: dict[str, Path] = {}
+    for path in map(Path, paths):
+        for name, part in _bodies_of(path):
+            if name in origin:
+                raise InputError(
+                    f"two conductors would be called {listed([name])} (from {origin[name]} and "
+                    f'{path}); name them in a scene file: [[conductor]] name = "...", mesh = "..."'
+                )
+            origin[name] = path
+            scene.add_conductor(name, mesh=path, part=part)
+    return scene
+
+
+def _bodies_of(path: Path) -> list[tuple[str, str | None]]:
+    """Name and part of each conductor that a mesh file gives."""
+    from bem.geometry.files import bodies_in
+
+    bodies = bodies_in(path)
+    if not bodies.names:
+        return [(path.stem, None)]
+    if bodies.outside:
+        raise InputError(
+            f"{path}: {counted(bodies.outside, 'face')} in none of the groups "
+            f"{listed(bodies.names)}; name a group for them, or pick parts in a scene file"
+        )
+    return [(name, name) for name in bodies.names]
+
+
+@contextlib.contextmanager
+def _about(path: str | Path) -> Iterator[None]:
+    """Put the file's name before messages about it."""
+    try:
+        yield
+    except BemError as problem:
+        raise InputError(f"{path}: {problem}") from None
+
+
+def _parsed(path: Path) -> dict[str, Any]:
+    try:
+        text = path.read_bytes().decode()
+        return tomllib.loads(text)
+    except tomllib.TOMLDecodeError as problem:
+        raise InputError(_syntax(str(problem), text)) from None
+    except UnicodeDecodeError as problem:
+        raise InputError(f"is not UTF-8 text (byte {problem.start}); save it as UTF-8") from None
+    except FileNotFoundError:
+        raise InputError("no such file") from None
+    except OSError as problem:
+        raise InputError(f"cannot be opened ({problem.strerror})") from None
+
+
+def _syntax(problem: str, text: str) -> str:
+    """Message of the TOML reader with its place in front."""
+    place = _POSITION.search(problem)
+    where = place.group(1) if place else "end of document"
+    if where == "end of document":
+        where = f"line {text.count(chr(10)) + 1}"
+    return f"{where}: not TOML: {_POSITION.sub('', problem).strip().rstrip(':')}"
+
+
+def _permittivity(entries: dict[str, Any]) -> float:
+    key = "relative_permittivity"
+    around = checks.table("surroundings", entries.get("surroundings", {}), (key,))
+    return checks.positive(f"surroundings.{key}", around.get(key, 1.0))
+
+
+def _conductors(entries: dict[str, Any]) -> list[Any]:
+    found = entries.get("conductor", [])
+    if not isinstance(found, list):
+        raise InputError("conductor: found a single value or [conductor]; write [[conductor]]")
+    if not found:
+        raise InputError("no [[conductor]] found; a scene needs at least one")
+    return found
+
+
+def _add(scene: Scene, number: int, entry: Any) -> None:
+    """Add one [[conductor]] table."""
+    name = entry.get("name") if isinstance(entry, dict) else None
+    where = entry_name(number, name)
+    keys = dict(checks.table(where, entry, _CONDUCTOR))
+    for key in ("name", "mesh"):
+        if key not in keys:
+            raise InputError(f"{where}: {key}: missing")
+    if "place" in keys:
+        keys["place"] = _place(f"{where}: place", keys["place"])
+    scene.add_conductor(**keys)
+
+
+def _place(where: str, value: Any) -> Place:
+    entries = checks.table(where, value, ("shift", "turn", "scale"))
+    given = {key: entries[key] for key in ("shift", "scale") if key in entries}
+    if "turn" in entries:
+        turn = checks.table(f"{where}.turn", entries["turn"], ("axis", "degrees"))
+        for key in ("axis", "degrees"):
+            if key not in turn:
+                raise InputError(f"{where}.turn.{key}: missing")
+        given |= {"turn_axis": turn["axis"], "turn_degrees": turn["degrees"]}
+    return Place(**given)
