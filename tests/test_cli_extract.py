@@ -32,10 +32,10 @@ class Stage:
         self.calls["load"] = path
         return self._scene(7.0)
 
-    def scene_from_files(self, paths: list[str], unit: str, permittivity: float) -> Any:
+    def scene_from_files(self, paths: list[str], unit: str) -> Any:
         """Play the reader of mesh files."""
         self.calls["load"] = (paths, unit)
-        return self._scene(permittivity)
+        return self._scene(1.0)
 
     def extract(self, scene: Any, tolerance: float, **options: Any) -> Any:
         """Play the extraction: one sign of life, then the outcome."""

@@ -9,10 +9,10 @@ from bem.cli import values
 from bem.cli.live import live_or_none
 from bem.cli.outputs import check_outputs, deliver
 from bem.cli.pairs import match_pairs, read_pair
+from bem.cli.scene_input import add_files, check_files, load
 from bem.cli.terminal import tell
-from bem.errors import EXIT_DONE, EXIT_INTERRUPTED, InputError, ToleranceNotReached, UsageError
+from bem.errors import EXIT_DONE, EXIT_INTERRUPTED, InputError, ToleranceNotReached
 from bem.results.outcome import remedy
-from bem.units import METRES_PER, metres_per
 
 if TYPE_CHECKING:
     from bem.results.result import CapacitanceResult
@@ -42,9 +42,7 @@ def add_parser(subparsers: Any) -> None:
         description="Compute the Maxwell capacitance matrix with an error bar on every entry.",
         epilog=_EPILOG,
     )
-    parser.add_argument(
-        "files", nargs="+", metavar="FILE", help="one scene file (.toml), or mesh files"
-    )
+    add_files(parser)
     _add_scene_options(parser)
     _add_accuracy_options(parser)
     _add_effort_options(parser)
@@ -53,9 +51,6 @@ def add_parser(subparsers: Any) -> None:
 
 def _add_scene_options(parser: argparse.ArgumentParser) -> None:
     group = parser.add_argument_group("the scene")
-    group.add_argument(
-        "--unit", metavar="UNIT", help=f"unit of mesh coordinates: {', '.join(METRES_PER)}"
-    )
     group.add_argument(
         "--surroundings-permittivity",
         metavar="NUMBER",
@@ -117,7 +112,7 @@ def _add_output_options(parser: argparse.ArgumentParser) -> None:
 def run(args: argparse.Namespace) -> int:
     """Extract, deliver, and tell how it went by the exit code."""
     check_outputs(args, args.files)
-    _check_unit(args)
+    check_files(args.files, args.unit)
     scene = _load(args)
     pairs = match_pairs(args.pair, [conductor.name for conductor in scene.conductors])
     result = _extract(scene, pairs, args)
@@ -126,42 +121,10 @@ def run(args: argparse.Namespace) -> int:
     return _exit_code(result)
 
 
-def _check_unit(args: argparse.Namespace) -> None:
-    scenes = [name for name in args.files if _is_scene(name)]
-    if not scenes and args.unit is None:
-        raise UsageError(
-            "--unit is missing: mesh files do not say their unit; "
-            f"allowed are {', '.join(METRES_PER)}"
-        )
-    if scenes and len(args.files) > 1:
-        raise UsageError(
-            f"found the scene {scenes[0]} among {len(args.files)} files; "
-            "give one scene file, or mesh files alone"
-        )
-    if scenes and args.unit is not None:
-        raise UsageError(
-            f"--unit {args.unit}: a scene file states its own unit; "
-            f"drop the option or change the unit in {scenes[0]}"
-        )
-    if args.unit is not None:
-        metres_per(args.unit)
-
-
-def _is_scene(name: str) -> bool:
-    return name.lower().endswith(".toml")
-
-
 def _load(args: argparse.Namespace) -> Scene:
-    from bem.scene.scene_file import load_scene, scene_from_files
-
-    permittivity = args.surroundings_permittivity
-    if not _is_scene(args.files[0]):
-        return scene_from_files(
-            args.files, args.unit, 1.0 if permittivity is None else permittivity
-        )
-    scene = load_scene(args.files[0])
-    if permittivity is not None:
-        scene.relative_permittivity = permittivity
+    scene = load(args.files, args.unit)
+    if args.surroundings_permittivity is not None:
+        scene.relative_permittivity = args.surroundings_permittivity
     return scene
 
 
