@@ -38,6 +38,10 @@ class Piece(Protocol):
     def least_r(self) -> float:
         """Smallest r of the piece, an end on the axis left out."""
 
+    @property
+    def bend(self) -> float:
+        """Angle by which the direction changes from end to end, radians."""
+
     def at(self, t: np.ndarray) -> np.ndarray:
         """(..., 2): r and z at t; exactly ``start`` and ``end`` at 0 and 1."""
 
@@ -59,6 +63,11 @@ class Segment:
     def least_r(self) -> float:
         """Smallest r of the piece, an end on the axis left out."""
         return min(self.start[0], self.end[0]) or max(self.start[0], self.end[0])
+
+    @property
+    def bend(self) -> float:
+        """Zero."""
+        return 0.0
 
     def at(self, t: np.ndarray) -> np.ndarray:
         """(..., 2): r and z at t."""
@@ -106,6 +115,11 @@ class Arc:
             return self.centre[0] - self.radius
         ends = min(self.start[0], self.end[0]) or max(self.start[0], self.end[0])
         return ends or self.radius
+
+    @property
+    def bend(self) -> float:
+        """Angle by which the direction changes from end to end, radians."""
+        return abs(self.sweep)
 
     def at(self, t: np.ndarray) -> np.ndarray:
         """(..., 2): r and z at t."""
@@ -264,7 +278,8 @@ class Revolution:
 
 def _together(u: np.ndarray | float, s: np.ndarray | float) -> tuple[np.ndarray, np.ndarray]:
     u, s = np.broadcast_arrays(np.asarray(u, dtype=float), np.asarray(s, dtype=float))
-    return np.ascontiguousarray(u), np.ascontiguousarray(s)
+    # Contiguous: strided sines may be rounded differently.
+    return u.copy(), s.copy()
 
 
 def _position(piece: Piece, t: np.ndarray) -> np.ndarray:

@@ -364,8 +364,7 @@ def _swept_volume(outline: np.ndarray) -> float:
 
 def _corners(piece: Piece, around: int) -> np.ndarray:
     """(m, 2): the ends of a piece, and for an arc points between as dense as ``around``."""
-    sweep = abs(getattr(piece, "sweep", 0.0))
-    count = max(1, math.ceil(around * sweep / (2.0 * math.pi) - 1e-9))
+    count = max(1, math.ceil(around * piece.bend / (2.0 * math.pi) - 1e-9))
     return piece.at(np.arange(count + 1) / count)
 
 

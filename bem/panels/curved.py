@@ -29,6 +29,8 @@ BULGE = 0.25
 """Largest distance of a hanging point from its straight side, in widths of the leaf."""
 MOST_ALONG = 16
 """Largest number of leaves along one piece of the profile in the starting mesh."""
+LARGEST_BEND = np.pi / 3.0
+"""Largest angle of an arc along the profile that a leaf of the starting mesh covers."""
 FEWEST_AROUND, MOST_AROUND = 8, 32
 """Range of the number of leaves around in a starting mesh that chooses it."""
 ALIKE = 6
@@ -39,7 +41,7 @@ U0, U1, S0, S1 = range(4)
 POLE_BELOW, POLE_ABOVE = 16, 32
 """Bits of a leaf's pattern beside 1, 2, 4, 8 for a point hanging on side 0, 1, 2, 3."""
 
-_GAUSS_X, _GAUSS_W = np.polynomial.legendre.leggauss(4)
+_GAUSS_X, _GAUSS_W = np.polynomial.legendre.leggauss(3)
 _NODES, _WEIGHTS = 0.5 * (_GAUSS_X + 1.0), 0.5 * _GAUSS_W
 
 
@@ -204,9 +206,10 @@ def _bulging(grid: Grid, box: np.ndarray, once: np.ndarray) -> np.ndarray:
     for k in range(4):
         here = np.flatnonzero(once[:, k])
         side, opposite = _side(box[here], k), _side(box[here], (k + 2) % 4)
-        middle = 0.5 * (grid.points(side.first) + grid.points(side.last))
-        beyond = 0.5 * (grid.points(opposite.first) + grid.points(opposite.last))
-        bulge = np.linalg.norm(grid.points(side.middle) - middle, axis=1)
+        nodes = np.stack([side.middle, side.first, side.last, opposite.first, opposite.last])
+        hanging, *ends = grid.points(nodes)
+        middle, beyond = 0.5 * (ends[0] + ends[1]), 0.5 * (ends[2] + ends[3])
+        bulge = np.linalg.norm(hanging - middle, axis=1)
         cut[here, k % 2] |= bulge > BULGE * np.linalg.norm(beyond - middle, axis=1)
     return cut
 
@@ -504,5 +507,7 @@ def _start_counts(surface: Revolution, around: int | None) -> tuple[int, tuple[i
         around = FEWEST_AROUND
         while around < MOST_AROUND and 4.0 * around * lengths.sum() < rings.max():
             around *= 2
-    counts = np.clip(np.round(lengths * around / rings), 2, MOST_ALONG).astype(int)
-    return around, tuple(counts.tolist())
+    bends = np.array([piece.bend for piece in surface.profile])
+    least = np.maximum(2.0, np.ceil(bends / LARGEST_BEND - 1e-9))
+    counts = np.clip(np.round(lengths * around / rings), least, MOST_ALONG)
+    return around, tuple(counts.astype(int).tolist())
