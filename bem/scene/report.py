@@ -1,0 +1,107 @@
+"""An inspection as lines of text, lengths in the scene's unit or one that suits them."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from bem.geometry.wording import counted, metre_text
+from bem.scene.inspect import BodyReport, Inspection, point_text
+from bem.scene.pairs import PairReport
+from bem.scene.scene import Conductor, Scene
+from bem.units import metres_per
+
+MOST_PAIRS = 60
+"""Most gaps that are listed, smallest first."""
+
+
+def report(scene: Scene, inspection: Inspection) -> str:
+    """Text of an inspection: unit, bodies, gaps, notes, and what forbids a solution."""
+    lines = [_head(scene, inspection)]
+    for conductor, body in zip(scene.conductors, inspection.bodies, strict=True):
+        lines += ["", *_body(conductor, body, scene.unit)]
+    if inspection.pairs:
+        lines += ["", "smallest gaps", *_pairs(inspection.pairs)]
+    if inspection.notes:
+        lines += ["", "notes", *(f"  {line}" for line in inspection.notes)]
+    if inspection.fatal:
+        lines += ["", "cannot be solved", *(f"  {line}" for line in inspection.fatal)]
+    else:
+        lines += ["", "can be solved"]
+    return "\n".join(lines)
+
+
+def _head(scene: Scene, inspection: Inspection) -> str:
+    faces = sum(body.faces for body in inspection.bodies)
+    low = np.min([body.bounds[0] for body in inspection.bodies], axis=0)
+    high = np.max([body.bounds[1] for body in inspection.bodies], axis=0)
+    return "\n".join(
+        [
+            f"{counted(len(inspection.bodies), 'conductor')}, {counted(faces, 'face')}, "
+            f"unit {scene.unit}, relative permittivity {scene.relative_permittivity:g}",
+            f"  box     {_box(np.array([low, high]), scene.unit)}",
+        ]
+    )
+
+
+def _box(bounds: np.ndarray, unit: str) -> str:
+    low, high = bounds
+    size = " x ".join(f"{length / metres_per(unit):.6g}" for length in high - low)
+    return f"{size} {unit}, from {point_text(low, unit)} to {point_text(high, unit)}"
+
+
+def _body(conductor: Conductor, body: BodyReport, unit: str) -> list[str]:
+    return [
+        f"{conductor.name}{_origin(conductor)}",
+        f"  box     {_box(body.bounds, unit)}",
+        f"  faces   {_faces(body)}",
+        f"  kind    {_kind(body, unit)}",
+        *(f"  change  {line}" for line in body.changes),
+    ]
+
+
+def _origin(conductor: Conductor) -> str:
+    source = conductor.source
+    if source.file is None:
+        return " (shape)"
+    part = "" if source.part is None else f', part "{source.part}"'
+    return f" ({source.file}{part}, numbers in {source.unit})"
+
+
+def _faces(body: BodyReport) -> str:
+    kinds = [counted(body.triangles, "triangle")] if body.triangles else []
+    if body.quads:
+        kinds.append(counted(body.quads, "quadrilateral"))
+    curved = "; facets of a curved surface, gaps are theirs" if body.curved else ""
+    return (
+        f"{', '.join(kinds)}, {counted(body.vertices, 'vertex', 'vertices')}; "
+        f"worst aspect {body.worst_aspect:.3g}{curved}"
+    )
+
+
+def _kind(body: BodyReport, unit: str) -> str:
+    metres = metres_per(unit)
+    area = f"area {body.area / metres**2:.6g} {unit}^2"
+    pieces = counted(body.pieces, "piece")
+    if body.volume is None:
+        edges = counted(body.open_edges, "open edge")
+        return f"open, {edges}: metal sheet without thickness; {pieces}, {area}"
+    metal = "solid metal" if body.body == "solid" else "hollow shell"
+    return f"closed, {metal}; {pieces}, {area}, volume {body.volume / metres**3:.6g} {unit}^3"
+
+
+def _pairs(pairs: tuple[PairReport, ...]) -> list[str]:
+    names = [f"{pair.first} - {pair.second}" for pair in pairs[:MOST_PAIRS]]
+    width = max(map(len, names))
+    lines = [f"  {name:<{width}}  {_gap(pair)}" for name, pair in zip(names, pairs, strict=False)]
+    if len(pairs) > MOST_PAIRS:
+        lines.append(f"  {counted(len(pairs) - MOST_PAIRS, 'wider gap')} not listed")
+    return lines
+
+
+def _gap(pair: PairReport) -> str:
+    if pair.relation == "cross":
+        return "cross"
+    if pair.relation == "touch":
+        return f"{metre_text(pair.gap)}, touch"
+    inside = f", {pair.inner} inside" if pair.inner else ""
+    return metre_text(pair.gap) + inside
