@@ -16,6 +16,7 @@ near    (distance below ``near`` times both radii): A exact where a closed form 
 from __future__ import annotations
 
 import math
+from typing import NamedTuple
 
 import numpy as np
 from numba import njit, prange
@@ -193,14 +194,38 @@ def near_pair(i: int, j: int, panels: PanelArrays) -> float:
     return clustered_pair(j, i, panels)
 
 
+class Matrices(NamedTuple):
+    """Integrals over all pairs of n panels.
+
+    Args:
+        single: (n, n) float64, A.
+        tests: (4, n, n) float32, T.
+    """
+
+    single: np.ndarray
+    tests: np.ndarray
+
+
 @njit(cache=True, error_model="numpy")
-def _fill_row(i, panels, targets, reach, reuse, single, tests):
-    n = panels.area.size
+def _copy_row(i, origin, old, new):
+    """Take over the pairs of panel i with all panels that the old matrices know."""
+    k = origin[i]
+    for j in range(origin.size):
+        if origin[j] >= 0:
+            new.single[i, j] = old.single[k, origin[j]]
+    for t in range(4):
+        for j in range(origin.size):
+            if origin[j] >= 0:
+                new.tests[t, i, j] = old.tests[t, k, origin[j]]
+
+
+@njit(cache=True, error_model="numpy")
+def _fill_row(i, panels, targets, reach, origin, new):
     scratch = np.empty((2, 3, targets.weights.shape[1]))
     out = np.empty(5)
-    near_count = 0
-    for j in range(n):
-        if reuse[i] and reuse[j]:
+    sampled = 0
+    for j in range(panels.area.size):
+        if origin[i] >= 0 and origin[j] >= 0:
             continue
         dx = panels.center[i] - panels.center[j]
         distance = math.sqrt(_dot(dx, dx)) / (panels.radius[i] + panels.radius[j])
@@ -208,13 +233,29 @@ def _fill_row(i, panels, targets, reach, reuse, single, tests):
             _far_pair(i, j, panels, targets, out)
         else:
             _sampled_pair(i, j, panels, targets, scratch, out)
-            near_count += 1
+            sampled += 1
             if distance <= reach[0]:
                 out[0] = near_pair(i, j, panels) if j >= i else math.nan
-        single[i, j] = out[0]
+        new.single[i, j] = out[0]
         for k in range(4):
-            tests[k, i, j] = out[k + 1]
-    return near_count
+            new.tests[k, i, j] = out[k + 1]
+    return sampled
+
+
+TILE = 64
+"""Rows and columns handled together where a matrix is read across."""
+
+
+@njit(cache=True, error_model="numpy")
+def mirror(single: np.ndarray) -> None:
+    """Replace each NaN below the diagonal by the entry above it."""
+    n = single.shape[0]
+    for top in range(0, n, TILE):
+        for left in range(0, top + 1, TILE):
+            for i in range(top, min(top + TILE, n)):
+                for j in range(left, min(left + TILE, i)):
+                    if math.isnan(single[i, j]):
+                        single[i, j] = single[j, i]
 
 
 @njit(cache=True, parallel=True, error_model="numpy")
@@ -222,58 +263,62 @@ def fill(
     panels: PanelArrays,
     targets: Targets,
     reach: np.ndarray,
-    reuse: np.ndarray,
-    single: np.ndarray,
-    tests: np.ndarray,
+    origin: np.ndarray,
+    old: Matrices,
+    new: Matrices,
 ) -> int:
-    """Fill A (n, n) and T (4, n, n) where not both panels are marked for reuse.
+    """Fill ``new``, taking over from ``old`` the pairs of panels that it knows.
 
-    Near pairs are computed once and mirrored; all others have both rows, which differ by
-    quadrature error only.
+    Near pairs are computed once and mirrored (in a function of its own, or the compiler
+    would fuse it with the loop that it must follow); all others have both rows, which differ
+    by quadrature error only.
 
     Args:
-        panels: geometry.
-        targets: samples and tests.
+        panels: geometry of n panels.
+        targets: their samples and tests.
         reach: (2,) ``near`` and ``far``: distances over the sum of both radii.
-        reuse: (n,) bool, panels whose mutual integrals are already there.
-        single: (n, n) A, filled in place.
-        tests: (4, n, n) T, filled in place.
+        origin: (n,) index of each panel in ``old``, or -1.
+        old: matrices of the mesh before; of any size, even empty.
+        new: filled in place.
 
     Returns:
         Number of pairs that were sampled against an exact potential.
     """
     sampled = 0
     for i in prange(panels.area.size):
-        sampled += _fill_row(i, panels, targets, reach, reuse, single, tests)
-    for i in range(panels.area.size):
-        for j in range(i):
-            if math.isnan(single[i, j]):
-                single[i, j] = single[j, i]
+        if origin[i] >= 0:
+            _copy_row(i, origin, old, new)
+        sampled += _fill_row(i, panels, targets, reach, origin, new)
+    mirror(new.single)
     return sampled
+
 
 
 @njit(cache=True, error_model="numpy")
 def symmetric(single: np.ndarray, radius: np.ndarray, out: np.ndarray) -> None:
     """Fill ``out`` with A, each pair taken from the row whose outer panel is smaller."""
-    for i in range(radius.size):
-        for j in range(i + 1):
-            value = single[i, j] if radius[i] < radius[j] else single[j, i]
-            out[i, j] = value
-            out[j, i] = value
+    n = radius.size
+    for top in range(0, n, TILE):
+        for left in range(0, top + 1, TILE):
+            for i in range(top, min(top + TILE, n)):
+                for j in range(left, min(left + TILE, i + 1)):
+                    value = single[i, j] if radius[i] < radius[j] else single[j, i]
+                    out[i, j] = value
+                    out[j, i] = value
 
 
 @njit(cache=True, error_model="numpy")
 def asymmetry(single: np.ndarray, radius: np.ndarray, x: np.ndarray) -> np.ndarray:
     """x^T (A - mean of both rows) x, (k, k) for x (n, k): what the choice of row decides."""
-    k = x.shape[1]
-    total = np.zeros((k, k))
-    for i in range(radius.size):
-        for j in range(i):
-            half = 0.5 * (single[i, j] - single[j, i])
-            if radius[i] >= radius[j]:
-                half = -half
-            if half != 0.0:
-                for a in range(k):
-                    for b in range(k):
-                        total[a, b] += half * (x[i, a] * x[j, b] + x[j, a] * x[i, b])
-    return total
+    n, k = x.shape
+    product = np.zeros((n, k))
+    for top in range(0, n, TILE):
+        for left in range(0, top + 1, TILE):
+            for i in range(top, min(top + TILE, n)):
+                for j in range(left, min(left + TILE, i)):
+                    half = 0.5 * (single[i, j] - single[j, i])
+                    half = -half if radius[i] >= radius[j] else half
+                    for a in range(k):
+                        product[i, a] += half * x[j, a]
+                        product[j, a] += half * x[i, a]
+    return x.T @ product

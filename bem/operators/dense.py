@@ -36,6 +36,10 @@ def far_reach(tolerance: float) -> float:
     return float(np.clip(FAR_AT_MILLI * (1e-3 / tolerance) ** 0.25, 3.0, 16.0))
 
 
+def _empty(n: int) -> pairs.Matrices:
+    return pairs.Matrices(np.empty((n, n)), np.empty((4, n, n), dtype=np.float32))
+
+
 class DenseOperator:
     """Dense single-layer operator of a panel set.
 
@@ -51,22 +55,11 @@ class DenseOperator:
     ) -> None:
         n = len(panels.area)
         self.radius = panels.radius
-        self.single = np.empty((n, n))
-        self.test_rows = np.empty((4, n, n), dtype=np.float32)
-        known = np.zeros(n, dtype=bool)
-        if reuse is not None:
-            known = reuse.origin >= 0
-            self._take_over(reuse, np.flatnonzero(known))
+        self.matrices = _empty(n)
+        known = reuse.operator.matrices if reuse is not None else _empty(0)
+        origin = reuse.origin if reuse is not None else np.full(n, -1)
         reach = np.array([NEAR, far_reach(tolerance)])
-        self.sampled_pairs = int(
-            pairs.fill(panels, targets, reach, known, self.single, self.test_rows)
-        )
-
-    def _take_over(self, reuse: Reuse, here: np.ndarray) -> None:
-        there = reuse.origin[here]
-        self.single[np.ix_(here, here)] = reuse.operator.single[np.ix_(there, there)]
-        for mine, old in zip(self.test_rows, reuse.operator.test_rows, strict=True):
-            mine[np.ix_(here, here)] = old[np.ix_(there, there)]
+        self.sampled_pairs = int(pairs.fill(panels, targets, reach, origin, known, self.matrices))
 
     @property
     def size(self) -> int:
@@ -75,8 +68,8 @@ class DenseOperator:
 
     def matrix(self) -> np.ndarray:
         """Symmetric matrix (n, n), each pair from the row whose outer panel is smaller."""
-        out = np.empty_like(self.single)
-        pairs.symmetric(self.single, self.radius, out)
+        out = np.empty_like(self.matrices.single)
+        pairs.symmetric(self.matrices.single, self.radius, out)
         return out
 
     def apply(self, density: np.ndarray) -> np.ndarray:
@@ -86,12 +79,12 @@ class DenseOperator:
     def tests(self, density: np.ndarray) -> np.ndarray:
         """Potential integrated against each test function, (4, n, k)."""
         single = density.astype(np.float32)
-        return np.stack([rows @ single for rows in self.test_rows]).astype(float)
+        return np.stack([rows @ single for rows in self.matrices.tests]).astype(float)
 
     def near_rows(self, rows: np.ndarray) -> np.ndarray:
         """Rows (r, n) of the operator before pairs are made symmetric."""
-        return self.single[rows]
+        return self.matrices.single[rows]
 
     def asymmetry(self, density: np.ndarray) -> np.ndarray:
         """(k, k) energy that the choice between both rows of each pair decides."""
-        return pairs.asymmetry(self.single, self.radius, np.ascontiguousarray(density))
+        return pairs.asymmetry(self.matrices.single, self.radius, np.ascontiguousarray(density))

@@ -32,4 +32,10 @@ def solve_dense(operator: DenseOperator, right: np.ndarray) -> np.ndarray:
             "two conductors are too close for their size, or faces overlap; "
             "run 'bem inspect' and check the gaps"
         ) from error
-    return scale[:, None] * cho_solve(factor, scale[:, None] * right, check_finite=False)
+    density = scale[:, None] * cho_solve(factor, scale[:, None] * right, check_finite=False)
+    if not np.isfinite(density).all():
+        raise SolutionError(
+            f"the densities on {operator.size} panels are not finite: the geometry is out of "
+            "the range of double precision; run 'bem inspect' and check sizes and gaps"
+        )
+    return density
