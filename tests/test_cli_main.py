@@ -40,7 +40,15 @@ def bem(*arguments: str | Path, **options: Any) -> subprocess.CompletedProcess[b
 
 
 @pytest.mark.parametrize(
-    "arguments", [["--help"], ["--version"], ["extract", "--help"], ["show", "--help"], []]
+    "arguments",
+    [
+        ["--help"],
+        ["--version"],
+        ["extract", "--help"],
+        ["inspect", "--help"],
+        ["show", "--help"],
+        [],
+    ],
 )
 def test_help_imports_nothing_heavy(arguments: list[str]) -> None:
     done = subprocess.run(
@@ -83,7 +91,7 @@ def test_help_fits_80_columns(
     capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
 ) -> None:
     monkeypatch.setenv("COLUMNS", "80")
-    for arguments in ([], ["extract"], ["show"]):
+    for arguments in ([], *([command] for command in COMMANDS)):
         assert max(map(len, help_of(capsys, *arguments).splitlines())) <= 80
 
 
