@@ -162,7 +162,7 @@ class Outline:
         once = np.stack([_among(known, _keys(grid, side.middle)) for side in sides], axis=1)
         more = np.zeros_like(once)
         for k, side in enumerate(sides):
-            near = np.flatnonzero(once[:, k] & np.any(side.quarter != side.first, axis=1))
+            near = np.flatnonzero(once[:, k])
             for nodes in (side.quarter, side.three_quarters):
                 more[near, k] |= _among(known, _keys(grid, nodes[near]))
         free = np.zeros_like(once)
@@ -173,8 +173,8 @@ class Outline:
 
     def crowded(self) -> np.ndarray:
         """(n, 2): whether a leaf must be halved in u, and in s, for the points on its sides."""
-        pairs = self.once.any(axis=1)[:, None] & (self.once | self.free)
-        low, high = pairs[:, [BOTTOM, LEFT]], pairs[:, [TOP, RIGHT]]
+        taken = self.once | self.free
+        low, high = taken[:, [BOTTOM, LEFT]], taken[:, [TOP, RIGHT]]
         some = self.once[:, [BOTTOM, LEFT]] | self.once[:, [TOP, RIGHT]]
         more = self.more[:, [BOTTOM, LEFT]] | self.more[:, [TOP, RIGHT]]
         return (low & high & some) | more
