@@ -68,9 +68,10 @@ def _read(sections: dict[str, bytes], form: MshFormat) -> Any:
             with _silent():
                 return meshio.gmsh.read(bare)
         except Exception as problem:
-            reason = " ".join(str(problem).split()) or "it does not follow the format"
+            said = " ".join(str(problem).split()) if isinstance(problem, meshio.ReadError) else ""
+            reason = said or "its nodes or elements are damaged"
             raise InputError(
-                f"cannot be read as MSH {form.version} ({reason}); export it again"
+                f"cannot be read as MSH {form.version}: {reason}; export it again"
             ) from None
 
 

@@ -116,8 +116,8 @@ def groups_of_surfaces(section: bytes, form: MshFormat) -> dict[int, list[int]]:
         for dimension in range(SURFACE + 1):
             found = [_entity(numbers, dimension) for _ in range(counts[dimension])]
             groups = dict(found)
-    except ValueError as problem:
-        raise InputError(f"has a damaged section $Entities ({problem})") from None
+    except ValueError:
+        raise InputError("has a damaged section $Entities; export it again") from None
     return groups
 
 

@@ -59,8 +59,10 @@ def _numbers(data: bytes) -> np.ndarray:
         with warnings.catch_warnings():
             warnings.simplefilter("error")
             loaded = load_stl(io.BytesIO(data))
-    except Exception as problem:
-        raise InputError(f"cannot be read as STL ({problem}); export it again") from None
+    except Exception:
+        raise InputError(
+            "cannot be read as STL: the corners of a facet are damaged; export it again"
+        ) from None
     return np.asarray(loaded.get("vertices", ()), dtype=np.float64).reshape(-1, 3, 3)
 
 
