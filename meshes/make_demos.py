@@ -211,8 +211,8 @@ def grain_hopper(folder: Path) -> None:
     """Square hopper that tapers to its outlet; a level probe with a guard sleeve."""
     levels = [(30.0, 0.0), (120.0, 150.0), (120.0, 300.0)]
     write_stl(folder / "hopper.stl", wall([ring(half, z, 4) for half, z in levels]))
-    sleeve = wall([ring(10.0, z, 16) for z in (-70.0, -10.0)])
-    write_msh(folder / "probe.msh", {"rod": rod(5.0, -210.0, 0.0, 16), "guard sleeve": sleeve})
+    sleeve = wall([ring(10.0, z, 12) for z in (-70.0, -10.0)])
+    write_msh(folder / "probe.msh", {"rod": rod(5.0, -210.0, 0.0, 12), "guard sleeve": sleeve})
 
 
 def touch_pad(folder: Path) -> None:

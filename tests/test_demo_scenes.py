@@ -49,7 +49,8 @@ def scene_file(name: str) -> Path:
 @pytest.fixture(scope="module")
 def solved() -> dict[str, CapacitanceResult]:
     return {
-        name: bem.extract(bem.load_scene(scene_file(name)), tolerance=1e-2) for name in SIZES_MM
+        name: bem.extract(bem.load_scene(scene_file(name)), tolerance=1e-2, threads=1)
+        for name in SIZES_MM
     }
 
 
@@ -101,7 +102,7 @@ def test_the_sleeve_takes_charge_off_the_rod(solved: dict[str, CapacitanceResult
     full = solved["grain_hopper"]
     scene = bem.load_scene(scene_file("grain_hopper"))
     scene.conductors = [c for c in scene.conductors if c.name != "guard sleeve"]
-    bare = bem.extract(scene, tolerance=1e-2)
+    bare = bem.extract(scene, tolerance=1e-2, threads=1)
     rod, sleeve = full.conductors.index("probe rod"), full.conductors.index("guard sleeve")
     guarded = full.capacitance[rod, rod] + full.capacitance[rod, sleeve]
     alone = bare.capacitance[1, 1]

@@ -162,7 +162,7 @@ def test_boxes_in_a_shell_agree_with_finite_elements(by_elements: Estimate) -> N
     scene.add_conductor("wide", WIDE.surface())
     scene.add_conductor("flat", FLAT.surface())
     scene.add_conductor("shell", SHELL.surface(), body="shell")
-    result = bem.extract(scene, tolerance=3e-4)
+    result = bem.extract(scene, tolerance=3e-4, threads=1)
     unit = 4.0 * np.pi * EPS0
     apart = np.abs(result.capacitance / unit - by_elements.capacitance)
     allowed = result.error / unit + by_elements.error
