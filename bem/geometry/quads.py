@@ -38,9 +38,7 @@ def mend_quads(
     parts = _halves(faces[split], area[~fits & ~thin], split)
     changes = []
     if merged:
-        changes.append(
-            f"{counted(merged, 'quadrilateral')} with a repeated corner turned into triangles"
-        )
+        changes.append(f"{counted(merged, 'triangle')} given with four corners reduced to three")
     if len(split):
         changes.append(
             f"{counted(len(split), 'quadrilateral')} not flat or not convex split into triangles"
