@@ -114,8 +114,8 @@ def test_a_part_of_a_file_without_parts(tmp_path):
         (b"hello", "is not STL: 5 bytes and no 'solid' at the start"),
         (stl_binary(soup(cube()))[:-7], "is cut short or not STL: binary STL with this header "
          "has 684 bytes, found 677; export it again"),
-        (stl_binary(np.empty((0, 3, 3))), "holds no triangle or quadrilateral; export a surface"),
-        (b"solid a\nendsolid a\n", "holds no triangle or quadrilateral; export a surface"),
+        (stl_binary(np.empty((0, 3, 3))), "holds no triangle or quadrilateral; mesh the surface"),
+        (b"solid a\nendsolid a\n", "holds no triangle or quadrilateral; mesh the surface"),
         (stl_text({"a": soup(cube())})[:-12], "a solid has no 'endsolid' line: cut short? "
          "export it again"),
         (stl_text({"a": soup(cube())[:1]}).replace("vertex", "vertx", 1),
@@ -123,9 +123,9 @@ def test_a_part_of_a_file_without_parts(tmp_path):
         (stl_text({"a": soup(cube())[:2]}).replace("endfacet", "", 1),
          "cannot be read as STL: a solid with 2 triangles in 1 finished facet; export it again"),
         (stl_text({"a": soup(cube())}).replace("0.5", "nan", 1),
-         "1 corner not finite, the first is number 1 at (nan, -0.5, -0.5); export the file again"),
+         "1 corner not finite, the first is number 1 at (nan, -0.5, -0.5); mesh it again"),
         (stl_binary(np.full((2, 3, 3), np.inf)),
-         "6 corners not finite, the first is number 1 at (inf, inf, inf); export the file again"),
+         "6 corners not finite, the first is number 1 at (inf, inf, inf); mesh it again"),
     ],
 )  # fmt: skip
 def test_damaged_stl(tmp_path, content, message, capfd):
@@ -362,7 +362,7 @@ def cut(text: str, section: str) -> str:
         (TETRA_22.replace("10 40 30", "10 40 33"),
          "an element uses a node that $Nodes does not list; export it again"),
         (TETRA_22.replace("20 1 0 0", "20 nan 0 0"),
-         "1 corner not finite, the first is number 2 at (nan, 0.0, 0.0); export the file again"),
+         "1 corner not finite, the first is number 2 at (nan, 0.0, 0.0); mesh it again"),
         (SQUARE_41.replace("7 0 0 0 0", "7 0 0 0 999999"),
          "is cut short: section $Entities ends early; export it again"),
     ],
@@ -417,5 +417,5 @@ def test_volume_mesh_without_surface(tmp_path):
     mesh = meshio.Mesh(cube_vertices(), [("tetra", np.array([[0, 1, 2, 4]]))])
     path = write_msh(tmp_path / "solid.msh", mesh, "2.2", False)
     assert refused(path) == (
-        "holds no triangle or quadrilateral; 1 volume cell left out; export a surface"
+        "holds no triangle or quadrilateral; 1 volume cell left out; mesh the surface"
     )

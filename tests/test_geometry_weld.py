@@ -178,9 +178,9 @@ def refused(surface: Surface) -> str:
 
 def test_nothing_left():
     flat = sheet([[0, 1, 1], [0, 4, 1]], POINTS)
-    assert refused(flat) == "no face with an area is left of 2 faces; export the body again"
+    assert refused(flat) == "no face with an area is left of 2 faces; mesh it again"
     point = Surface(np.zeros((3, 3)), np.array([[0, 1, 2, -1]]))
-    assert refused(point) == "no face with an area is left of 1 face; export the body again"
+    assert refused(point) == "no face with an area is left of 1 face; mesh it again"
 
 
 def test_a_stray_vertex_far_away():

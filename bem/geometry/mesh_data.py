@@ -57,16 +57,18 @@ class MeshData:
         """
         if len(self.faces) == 0:
             raise InputError(
-                "; ".join(["holds no triangle or quadrilateral", *self.changes, "export a surface"])
+                "; ".join(["holds no triangle or quadrilateral", *self.changes, "mesh the surface"])
             )
         corners = self.faces[self.faces != -1]
-        if len(corners) and not 0 <= corners.min() <= corners.max() < len(self.vertices):
-            raise InputError("a face uses a corner that is not in the file; export it again")
+        if corners.min() < 0 or corners.max() >= len(self.vertices):
+            raise InputError(
+                f"a face uses a corner beyond the {len(self.vertices):,} listed; mesh it again"
+            )
         finite = np.isfinite(self.vertices).all(axis=1)
         bad = np.unique(corners[~finite[corners]])
         if len(bad):
             raise InputError(
                 f"{counted(len(bad), 'corner')} not finite, the first is number {bad[0] + 1} at "
-                f"{tuple(self.vertices[bad[0]].tolist())}; export the file again"
+                f"{tuple(self.vertices[bad[0]].tolist())}; mesh it again"
             )
         return self

@@ -48,7 +48,7 @@ def weld(surface: Surface, relative: float = WELD) -> tuple[Surface, list[str]]:
     if len(faces) == 0:
         raise InputError(
             f"no face with an area is left of {counted(len(surface.faces), 'face')}; "
-            "export the body again"
+            "mesh it again"
         )
     return _compact(replace(joined, faces=faces)), changes
 
