@@ -285,7 +285,8 @@ def fill(
         Number of pairs that were sampled against an exact potential.
     """
     sampled = 0
-    for i in prange(panels.area.size):
+    for k in prange(panels.area.size):
+        i = np.int64(k)  # the loop's own type would have every callee compiled a second time
         if origin[i] >= 0:
             _copy_row(i, origin, old, new)
         sampled += _fill_row(i, panels, targets, reach, origin, new)

@@ -73,16 +73,20 @@ def _cuts(start, step, line, cuts):
         reach = dx * line[2] + dy * line[3]
         n = _add_cut(-reach / along, cuts, n)
         n = _add_cut((line[4] - reach) / along, cuts, n)
-    cuts[:n].sort()
     return n
 
 
 @njit(cache=True, error_model="numpy")
 def _add_cut(s, cuts, n):
-    if 1e-9 < s < 1.0 - 1e-9:
-        cuts[n] = s
-        return n + 1
-    return n
+    """Insert s in order between the ends 0 and 1."""
+    if not 1e-9 < s < 1.0 - 1e-9:
+        return n
+    k = n
+    while cuts[k - 1] > s:
+        cuts[k] = cuts[k - 1]
+        k -= 1
+    cuts[k] = s
+    return n + 1
 
 
 @njit(cache=True, error_model="numpy")
