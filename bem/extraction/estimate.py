@@ -19,9 +19,9 @@ import numpy as np
 from bem.extraction.solution import Sums
 
 KAPPA_USUAL = 1.05
-KAPPA_DRAW = 0.3
+KAPPA_DRAW = 2.0
 KAPPA_LOW, KAPPA_HIGH = 0.6, 3.0
-SHARE, TREND, DOUBT = 0.25, 0.35, 0.4
+SHARE, TREND, DOUBT, FACET = 0.2, 0.35, 0.4, 0.7
 FLOOR = 1e-6
 ROUNDS = 4
 """Rounds before a bar is believed."""
@@ -52,7 +52,7 @@ def facet_doubt(faceting: np.ndarray, value: np.ndarray) -> float:
     The effect is of second order in that turn and what it leaves out is of third.
     """
     part = np.abs(np.diagonal(faceting)) / np.diagonal(value)
-    return float(min(np.sqrt(part.max()), 1.0))
+    return float(min(FACET * np.sqrt(part.max()), 1.0))
 
 
 def _slope(steps: list[tuple[float, float]], anchor: float) -> float:
