@@ -164,8 +164,8 @@ def _reason(pair: PairReport, unit: str) -> str:
             "move them apart, or make them one conductor"
         )
     return (
-        f'"{pair.first}" and "{pair.second}" touch near {place}: their gap of '
-        f"{metre_text(pair.gap)} is below {CONTACT:g} of the smaller body; "
+        f'"{pair.first}" and "{pair.second}" touch or overlap near {place}: '
+        f"their gap of {metre_text(pair.gap)} is within {CONTACT:g} of the smaller body; "
         "move them apart, or make them one conductor"
     )
 
