@@ -65,7 +65,8 @@ def extract(
     inspection = check_scene(scene)
     checked = time.perf_counter()
     scaled = ScaledScene.of(scene)
-    mesh = Mesh.start(scaled.surfaces)
+    hollow = [k for k, c in enumerate(scene.conductors) if c.body == "shell"]
+    mesh = Mesh.start(scaled.surfaces, hollow)
     plan = MemoryPlan.of(memory)
     plan.check_start(len(mesh.conductor))
     run = Run(len(scene.conductors), goal, Limits(max_panels, plan), report, started=started)

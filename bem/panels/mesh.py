@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -25,14 +26,16 @@ class Mesh:
     Args:
         families: flat panels of the whole scene, then one family per curved body.
         owners: per family, the conductor (n_family,) of each panel.
+        hollow: conductors whose closed surface is a skin, with field on both sides.
     """
 
     families: tuple[Family, ...]
     owners: tuple[np.ndarray, ...]
+    hollow: frozenset[int] = frozenset()
 
     @classmethod
-    def start(cls, surfaces: list[Surface]) -> Mesh:
-        """Starting mesh of one surface per conductor."""
+    def start(cls, surfaces: list[Surface], hollow: Iterable[int] = ()) -> Mesh:
+        """Return the starting mesh of one surface per conductor."""
         patches = []
         curved: list[tuple[int, CurvedFamily]] = []
         for k, surface in enumerate(surfaces):
@@ -51,7 +54,7 @@ class Mesh:
         for k, family in curved:
             families.append(family)
             owners.append(np.full(len(family.corners), k))
-        return cls(tuple(families), tuple(owners))
+        return cls(tuple(families), tuple(owners), frozenset(hollow))
 
     @property
     def corners(self) -> np.ndarray:
@@ -65,7 +68,10 @@ class Mesh:
 
     def faceting(self) -> Faceting:
         """How far the panels are from the true surface."""
-        parts = [_faceting(f) for f in self.families]
+        parts = [
+            _faceting(family, int(owner[0]) in self.hollow)
+            for family, owner in zip(self.families, self.owners, strict=True)
+        ]
         return Faceting(*(np.concatenate(column) for column in zip(*parts, strict=True)))
 
     def refine(self, marked: np.ndarray, across: np.ndarray) -> tuple[Mesh, np.ndarray]:
@@ -83,9 +89,10 @@ class Mesh:
             fresh[: len(kept)] = start + kept
             families.append(finer)
             origin.append(fresh)
-            owners.append(finer.conductor if isinstance(finer, FlatFamily) else np.full(len(fresh), owner[0]))
+            flat = isinstance(finer, FlatFamily)
+            owners.append(finer.conductor if flat else np.full(len(fresh), owner[0]))
             start += len(owner)
-        return Mesh(tuple(families), tuple(owners)), np.concatenate(origin)
+        return Mesh(tuple(families), tuple(owners), self.hollow), np.concatenate(origin)
 
 
 @dataclass(frozen=True)
@@ -96,7 +103,7 @@ class Faceting:
         offset: (n,) mean outward distance of the true surface from the panel.
         rim_offset: (n,) part of the panel's area that is missing at a curved free rim.
         rim_width: (n,) width of such a panel across the rim, 0 for all others.
-        sheet: (n,) bool, panels of open surfaces, with field on both sides.
+        sheet: (n,) bool, panels of open or hollow surfaces, with field on both sides.
     """
 
     offset: np.ndarray
@@ -110,10 +117,10 @@ class Faceting:
         return not (self.offset.any() or self.rim_offset.any())
 
 
-def _faceting(family: Family) -> tuple[np.ndarray, ...]:
+def _faceting(family: Family, hollow: bool) -> tuple[np.ndarray, ...]:
     count = len(family.corners)
     if isinstance(family, FlatFamily):
         zero = np.zeros(count)
         return zero, zero, zero, zero.astype(bool)
-    sheet = np.full(count, any(family.grid.surface.free_rims))
+    sheet = np.full(count, hollow or any(family.grid.surface.free_rims))
     return family.offset, family.rim_offset, family.rim_width, sheet
