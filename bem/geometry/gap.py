@@ -10,8 +10,8 @@ import math
 from typing import NamedTuple
 
 import numpy as np
-from numba import njit
 
+from bem.geometry.compiled import njit
 from bem.geometry.distance import Triangle, nearest_points, piercing
 from bem.geometry.tree import Tree, box_gap, triangle
 from bem.geometry.vectors import Vector, dot, minus, row
@@ -49,9 +49,9 @@ def _over_plane(t: Triangle, other: Triangle, n: Vector) -> float:
 @njit(cache=True)
 def _leaf_gap(a: Tree, i: int, b: Tree, j: int, best: Gap) -> Gap:
     """Improve ``best`` by the triangles of two leaves."""
-    for k in range(a.first[i], a.first[i] + a.count[i]):
+    for k in range(a.first[i], a.first[i] + a.number[i]):
         one = triangle(a, k)
-        for m in range(b.first[j], b.first[j] + b.count[j]):
+        for m in range(b.first[j], b.first[j] + b.number[j]):
             two = triangle(b, m)
             if _over_plane(one, two, row(a.normals, k)) >= best.distance:
                 continue
@@ -137,8 +137,8 @@ def smallest_gap(a: Tree, b: Tree, limit: float = math.inf, enough: float = 0.0)
 
 @njit(cache=True)
 def _leaf_depth(a: Tree, i: int, b: Tree, j: int, best: tuple[float, Vector]):
-    for k in range(a.first[i], a.first[i] + a.count[i]):
-        for m in range(b.first[j], b.first[j] + b.count[j]):
+    for k in range(a.first[i], a.first[i] + a.number[i]):
+        for m in range(b.first[j], b.first[j] + b.number[j]):
             depth, place = piercing(triangle(a, k), triangle(b, m))
             if depth > best[0]:
                 best = (depth, place)

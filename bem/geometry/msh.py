@@ -91,7 +91,8 @@ def _kind(cell: str) -> str | None:
 
 
 def _faces(block: Any) -> np.ndarray:
-    corners = np.asarray(block.data, dtype=np.int64)[:, : _CORNERS[_kind(block.type)]]
+    kind = _kind(block.type)
+    corners = np.asarray(block.data, dtype=np.int64)[:, : _CORNERS[kind] if kind else 0]
     if corners.size and corners.min() < 0:
         raise InputError("an element uses a node that $Nodes does not list; export it again")
     faces = np.full((len(corners), 4), NO_CORNER)

@@ -78,18 +78,19 @@ class _Numbers:
     """Numbers of a section, one after the other, text or binary."""
 
     def __init__(self, section: bytes, form: MshFormat) -> None:
-        self._data = section if form.binary else np.array(section.split(), dtype="S")
-        self._binary = form.binary
+        self._bytes = section
+        self._words = None if form.binary else np.array(section.split(), dtype="S")
         self._size = f"<u{form.integer}"
         self._place = 0
 
     def _take(self, count: int, kind: str) -> np.ndarray:
-        step = count * np.dtype(kind).itemsize if self._binary else count
-        piece = self._data[self._place : self._place + step]
-        if len(piece) < step:
+        step = count * (np.dtype(kind).itemsize if self._words is None else 1)
+        start, self._place = self._place, self._place + step
+        if self._place > len(self._bytes if self._words is None else self._words):
             raise InputError("is cut short: section $Entities ends early; export it again")
-        self._place += step
-        return np.frombuffer(piece, kind) if self._binary else piece.astype(kind)
+        if self._words is None:
+            return np.frombuffer(self._bytes[start : self._place], kind)
+        return self._words[start : self._place].astype(kind)
 
     def ints(self, count: int) -> list[int]:
         return self._take(count, "<i4").tolist()

@@ -9,8 +9,8 @@ from __future__ import annotations
 import math
 
 import numpy as np
-from numba import njit
 
+from bem.geometry.compiled import njit
 from bem.geometry.tree import Tree, triangle
 from bem.geometry.vectors import Vector, corner, cross, dot, minus, norm, row
 
@@ -71,7 +71,7 @@ def _crosses(t: tuple[Vector, Vector, Vector], origin: Vector, d: Vector) -> int
 @njit(cache=True)
 def _leaf_crossings(tree: Tree, node: int, counted: np.ndarray, origin: Vector, d: Vector) -> int:
     total = 0
-    for k in range(tree.first[node], tree.first[node] + tree.count[node]):
+    for k in range(tree.first[node], tree.first[node] + tree.number[node]):
         if counted[tree.order[k]]:
             hit = _crosses(triangle(tree, k), origin, d)
             if hit == UNSURE:

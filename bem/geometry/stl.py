@@ -6,7 +6,6 @@ import io
 import re
 import warnings
 from collections.abc import Iterator
-from itertools import pairwise
 from pathlib import Path
 
 import numpy as np
@@ -69,7 +68,7 @@ def _numbers(data: bytes) -> np.ndarray:
 def _read_text(data: bytes) -> MeshData:
     names, corners = [], []
     lines = list(_BOUNDARY.finditer(data))
-    for line, following in pairwise([*lines, None]):
+    for line, following in zip(lines, [*lines[1:], None], strict=True):
         if line.group(1):
             continue
         if following is None or not following.group(1):

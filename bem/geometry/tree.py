@@ -11,8 +11,8 @@ import math
 from typing import NamedTuple
 
 import numpy as np
-from numba import njit
 
+from bem.geometry.compiled import njit
 from bem.geometry.vectors import Vector, corner, cross, dot, minus, norm, row, unit
 
 LEAF = 4
@@ -31,7 +31,7 @@ class Tree(NamedTuple):
         half: (k, 3) their half lengths.
         size: (k,) half the diagonals.
         first: (k,) first triangle of the node.
-        count: (k,) number of triangles of the node.
+        number: (k,) number of triangles of the node.
         child: (k,) first child (the other is next to it), -1 for a leaf.
     """
 
@@ -43,7 +43,7 @@ class Tree(NamedTuple):
     half: np.ndarray
     size: np.ndarray
     first: np.ndarray
-    count: np.ndarray
+    number: np.ndarray
     child: np.ndarray
 
 
@@ -147,7 +147,7 @@ def _largest(area: np.ndarray, first: int, count: int) -> int:
 def _range_along(tree: Tree, node: int, axis: Vector) -> tuple[float, float]:
     """Lowest and highest coordinate of a node's corners along ``axis``."""
     low, high = np.inf, -np.inf
-    for i in range(tree.first[node], tree.first[node] + tree.count[node]):
+    for i in range(tree.first[node], tree.first[node] + tree.number[node]):
         for k in range(3):
             x = dot(corner(tree.corners, i, k), axis)
             low, high = min(low, x), max(high, x)
@@ -157,7 +157,7 @@ def _range_along(tree: Tree, node: int, axis: Vector) -> tuple[float, float]:
 @njit(cache=True)
 def _fit(tree: Tree, node: int, area: np.ndarray) -> None:
     """Set the box of ``node``."""
-    frame = _frame(tree.corners, _largest(area, tree.first[node], tree.count[node]))
+    frame = _frame(tree.corners, _largest(area, tree.first[node], tree.number[node]))
     for k in range(3):
         low, high = _range_along(tree, node, frame[k])
         tree.half[node, k] = 0.5 * (high - low)
@@ -197,7 +197,7 @@ def build_tree(corners: np.ndarray) -> Tree:
         half=np.empty((used, 3)),
         size=np.empty(used),
         first=first,
-        count=count,
+        number=count,
         child=child,
     )
     _fit_all(tree, size)

@@ -5,7 +5,8 @@ from __future__ import annotations
 import math
 
 import numpy as np
-from numba import njit
+
+from bem.geometry.compiled import njit
 
 Vector = tuple[float, float, float]
 

@@ -26,6 +26,8 @@ class PanelArrays(NamedTuple):
         area: (n,).
         radius: (n,) largest distance of a corner from the centroid.
         moment: (n, 6) mean of (x - c)(x - c)^T: xx, yy, zz, xy, xz, yz.
+        higher: (n, 9) mean third and fourth powers of the in-plane position about the centroid:
+            xxx, xxy, xyy, yyy, xxxx, xxxy, xxyy, xyyy, yyyy.
         half: (n, 2) half the side lengths of a rectangle, zero for other panels.
     """
 
@@ -36,7 +38,35 @@ class PanelArrays(NamedTuple):
     area: np.ndarray
     radius: np.ndarray
     moment: np.ndarray
+    higher: np.ndarray
     half: np.ndarray
+
+
+def bilinear(corners: np.ndarray, xi: np.ndarray, eta: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Images (n, k, 2) and Jacobians (n, k) of points of the square, corners (n, 4, 2)."""
+    shape = 0.25 * np.array(
+        [(1 - xi) * (1 - eta), (1 + xi) * (1 - eta), (1 + xi) * (1 + eta), (1 - xi) * (1 + eta)]
+    )
+    d_xi = 0.25 * np.array([-(1 - eta), 1 - eta, 1 + eta, -(1 + eta)])
+    d_eta = 0.25 * np.array([-(1 - xi), -(1 + xi), 1 + xi, 1 - xi])
+    at, a, b = (np.einsum("sk,nsc->nkc", m, corners) for m in (shape, d_xi, d_eta))
+    return at, a[..., 0] * b[..., 1] - a[..., 1] * b[..., 0]
+
+
+def gauss_square(points: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Product Gauss rule on the square: xi, eta and weights, (points^2,) each."""
+    x, w = np.polynomial.legendre.leggauss(points)
+    return np.repeat(x, points), np.tile(x, points), np.outer(w, w).ravel()
+
+
+def _higher_moments(xy: np.ndarray, area: np.ndarray) -> np.ndarray:
+    """(n, 9) mean third and fourth powers; the rule integrates them exactly."""
+    xi, eta, weight = gauss_square(4)
+    at, jacobian = bilinear(xy, xi, eta)
+    mean = jacobian * weight / area[:, None]
+    x, y = at[..., 0], at[..., 1]
+    powers = [x**3, x**2 * y, x * y**2, y**3, x**4, x**3 * y, x**2 * y**2, x * y**3, y**4]
+    return np.stack([(mean * p).sum(axis=1) for p in powers], axis=1)
 
 
 def _unit(v: np.ndarray) -> np.ndarray:
@@ -110,5 +140,6 @@ def panel_arrays(corners: np.ndarray) -> PanelArrays:
         area=area,
         radius=radius,
         moment=np.stack([full[:, a, b] for a, b in ((0, 0), (1, 1), (2, 2), (0, 1), (0, 2), (1, 2))], axis=1),
+        higher=_higher_moments(xy, area),
         half=_half_sides(xy, radius),
     )

@@ -12,14 +12,11 @@ from typing import NamedTuple
 
 import numpy as np
 
-from bem.kernels.arrays import PanelArrays
+from bem.kernels.arrays import PanelArrays, bilinear, gauss_square
 
 GAUSS_POINTS = 4
 TESTS = 4
-_X, _W = np.polynomial.legendre.leggauss(GAUSS_POINTS)
-XI = np.repeat(_X, GAUSS_POINTS)
-ETA = np.tile(_X, GAUSS_POINTS)
-_WEIGHT = np.outer(_W, _W).ravel()
+XI, ETA, _WEIGHT = gauss_square(GAUSS_POINTS)
 
 
 class Targets(NamedTuple):
@@ -40,17 +37,6 @@ class Targets(NamedTuple):
     first: np.ndarray
     second: np.ndarray
     square: np.ndarray
-
-
-def bilinear(corners: np.ndarray, xi: np.ndarray, eta: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Images (n, k, 2) and Jacobians (n, k) of points of the square, corners (n, 4, 2)."""
-    shape = 0.25 * np.array(
-        [(1 - xi) * (1 - eta), (1 + xi) * (1 - eta), (1 + xi) * (1 + eta), (1 - xi) * (1 + eta)]
-    )
-    d_xi = 0.25 * np.array([-(1 - eta), 1 - eta, 1 + eta, -(1 + eta)])
-    d_eta = 0.25 * np.array([-(1 - xi), -(1 + xi), 1 + xi, 1 - xi])
-    at, a, b = (np.einsum("sk,nsc->nkc", m, corners) for m in (shape, d_xi, d_eta))
-    return at, a[..., 0] * b[..., 1] - a[..., 1] * b[..., 0]
 
 
 def make_targets(panels: PanelArrays) -> Targets:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 from dataclasses import dataclass
 
@@ -53,7 +54,7 @@ def all_pairs(bodies: list[Body]) -> list[PairReport]:
     """
     gaps = _every_gap(bodies) if len(bodies) <= ALL_PAIRS else _neighbour_gaps(bodies)
     boxes = _box_gaps(bodies)
-    for i, j in zip(*np.triu_indices(len(bodies), 1), strict=True):
+    for i, j in itertools.combinations(range(len(bodies)), 2):
         if boxes[i, j] == 0.0 and (i, j) not in gaps and _inner(bodies[i], bodies[j]):
             gaps[i, j] = smallest_gap(bodies[i].tree, bodies[j].tree)
     reports = [_report(bodies[i], bodies[j], gap) for (i, j), gap in sorted(gaps.items())]
@@ -63,8 +64,7 @@ def all_pairs(bodies: list[Body]) -> list[PairReport]:
 def _every_gap(bodies: list[Body]) -> dict[tuple[int, int], Gap]:
     return {
         (i, j): _gap(bodies[i], bodies[j], math.inf)
-        for i in range(len(bodies))
-        for j in range(i + 1, len(bodies))
+        for i, j in itertools.combinations(range(len(bodies)), 2)
     }
 
 

@@ -6,6 +6,8 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
+import numpy as np
+
 from bem.errors import BemError, InputError
 from bem.geometry.surface import Surface
 from bem.scene import checks
@@ -119,8 +121,7 @@ class Scene:
         except BemError as problem:
             raise type(problem)(f"{entry}: {problem}") from None
         if where != Place():
-            shift = [metres_per(self.unit) * x for x in where.shift]
-            surface = surface.placed(where.matrix, shift)
+            surface = surface.placed(where.matrix, metres_per(self.unit) * np.array(where.shift))
         self.conductors.append(Conductor(name, surface, body, source))
         return self
 

@@ -156,7 +156,7 @@ def _add(scene: Scene, number: int, entry: Any) -> None:
 
 def _place(where: str, value: Any) -> Place:
     entries = checks.table(where, value, ("shift", "turn", "scale"))
-    given = {key: entries[key] for key in ("shift", "scale") if key in entries}
+    given: dict[str, Any] = {key: entries[key] for key in ("shift", "scale") if key in entries}
     if "turn" in entries:
         turn = checks.table(f"{where}.turn", entries["turn"], ("axis", "degrees"))
         for key in ("axis", "degrees"):
