@@ -203,10 +203,10 @@ def test_tree_holds_every_triangle_in_its_boxes(body):
     assert np.array_equal(np.sort(tree.order), np.arange(len(corners)))
     assert np.array_equal(tree.corners, corners[tree.order])
     leaves = np.flatnonzero(tree.child < 0)
-    assert tree.count[leaves].max() <= LEAF
-    assert tree.count[leaves].sum() == len(corners)
+    assert tree.number[leaves].max() <= LEAF
+    assert tree.number[leaves].sum() == len(corners)
     for node in range(len(tree.first)):
-        own = tree.corners[tree.first[node] : tree.first[node] + tree.count[node]]
+        own = tree.corners[tree.first[node] : tree.first[node] + tree.number[node]]
         off = np.abs((own.reshape(-1, 3) - tree.center[node]) @ tree.axes[node].T)
         assert np.all(off <= tree.half[node] + 1e-12)
         assert tree.size[node] == pytest.approx(np.linalg.norm(tree.half[node]))

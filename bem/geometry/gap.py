@@ -136,7 +136,9 @@ def smallest_gap(a: Tree, b: Tree, limit: float = math.inf, enough: float = 0.0)
 
 
 @njit(cache=True)
-def _leaf_depth(a: Tree, i: int, b: Tree, j: int, best: tuple[float, Vector]):
+def _leaf_depth(
+    a: Tree, i: int, b: Tree, j: int, best: tuple[float, Vector]
+) -> tuple[float, Vector]:
     for k in range(a.first[i], a.first[i] + a.number[i]):
         for m in range(b.first[j], b.first[j] + b.number[j]):
             depth, place = piercing(triangle(a, k), triangle(b, m))

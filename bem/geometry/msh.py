@@ -6,6 +6,7 @@ import contextlib
 import io
 import tempfile
 import warnings
+from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
@@ -76,7 +77,7 @@ def _read(sections: dict[str, bytes], form: MshFormat) -> Any:
 
 
 @contextlib.contextmanager
-def _silent():
+def _silent() -> Iterator[None]:
     """Keep a library from printing, and turn its warnings into errors."""
     sink = io.StringIO()
     with warnings.catch_warnings(), np.errstate(all="ignore"):

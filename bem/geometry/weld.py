@@ -47,8 +47,7 @@ def weld(surface: Surface, relative: float = WELD) -> tuple[Surface, list[str]]:
     changes += mended
     if len(faces) == 0:
         raise InputError(
-            f"no face with an area is left of {counted(len(surface.faces), 'face')}; "
-            "mesh it again"
+            f"no face with an area is left of {counted(len(surface.faces), 'face')}; mesh it again"
         )
     return _compact(replace(joined, faces=faces)), changes
 
