@@ -45,7 +45,7 @@ def extract(
         pairs: relative accuracy wanted for single couplings, by their two names.
         max_panels: the extraction stops, unconverged, before it needs more.
         memory: limit in bytes for its matrices; by default 80 % of what is free.
-        threads: of the compiled integrals and the linear algebra; by default all cores.
+        threads: of the compiled integrals; by default all cores.
         progress: called with a Progress at every step.
 
     Returns:
