@@ -282,6 +282,28 @@ def test_curved_shapes_count_as_faceted():
     assert inspect(scene).pairs[0].gap == pytest.approx(1e-3, rel=1e-2)
 
 
+def curved_pair(first: Surface, second: Surface, degrees: float, second_scale: float = 1.0):
+    """Inspect a hollow curved body and another one, turned about the common axis."""
+    scene = Scene("mm").add_conductor("outer", first, body="shell")
+    place = Place(turn_degrees=degrees, scale=second_scale)
+    found = inspect(scene.add_conductor("inner", second, place=place))
+    return found, found.pairs[0]
+
+
+@pytest.mark.parametrize("shape", [bem.cylinder(1.0, 1.0), bem.sphere(1.0)])
+def test_narrow_gaps_between_curved_bodies_are_no_contact(shape):
+    """The ordinary facets cross here, since one body is turned by half a facet."""
+    found, pair = curved_pair(shape, shape, 3.75, 0.999)
+    assert (pair.relation, pair.inner, found.fatal) == ("inside", "inner", [])
+    expected = 0.5e-6 if shape.curve.pieces > 2 else 1e-6
+    assert pair.gap == pytest.approx(expected, rel=0.04)
+
+
+def test_curved_bodies_that_cross_are_found():
+    found, pair = curved_pair(bem.cylinder(1.0, 1.0), bem.cylinder(0.999, 1.1), 3.75)
+    assert (pair.relation, len(found.fatal)) == ("cross", 1)
+
+
 # many bodies, and the check
 
 

@@ -7,6 +7,7 @@ from functools import cached_property
 
 import numpy as np
 
+from bem.geometry.fine import fine_facets
 from bem.geometry.rays import points_inside, ray_directions
 from bem.geometry.surface import Surface
 from bem.geometry.topology import Edges, edges_of, open_edges, orient, pieces_of
@@ -29,6 +30,12 @@ class Body:
 
     conductor: Conductor
     surface: Surface
+
+    @cached_property
+    def finer(self) -> Body:
+        """The body itself, or with fine facets if it is curved."""
+        curve = self.surface.curve
+        return self if curve is None else Body(self.conductor, fine_facets(curve))
 
     @cached_property
     def triangles(self) -> np.ndarray:

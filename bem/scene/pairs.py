@@ -50,7 +50,8 @@ def all_pairs(bodies: list[Body]) -> list[PairReport]:
 
     Contact and containment are looked for in every pair. With more than ``ALL_PAIRS``
     bodies, gaps are found as far as the nearest neighbour of each body needs; pairs
-    farther apart are left out.
+    farther apart are left out. Where facets of curved bodies seem to touch, finer ones
+    decide.
     """
     gaps = _every_gap(bodies) if len(bodies) <= ALL_PAIRS else _neighbour_gaps(bodies)
     boxes = _box_gaps(bodies)
@@ -115,6 +116,9 @@ def _inner(a: Body, b: Body) -> Body | None:
 def _report(a: Body, b: Body, gap: Gap) -> PairReport:
     names = a.conductor.name, b.conductor.name
     tolerance = contact_tolerance(a, b)
+    if gap.distance <= tolerance and (a.finer is not a or b.finer is not b):
+        a, b = a.finer, b.finer
+        gap = _gap(a, b, math.inf)
     if gap.distance <= tolerance:
         depth, where = deepest_crossing(a.tree, b.tree, tolerance)
         if depth > tolerance:
