@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 
 import numpy as np
-from made_bodies import faces_of, soup, stl_binary
+from made_bodies import faces_of
 from reference_values import Body, Reference
 
 import bem
