@@ -84,8 +84,8 @@ def _add_effort_options(parser: argparse.ArgumentParser) -> None:
         "--max-panels",
         metavar="N",
         type=values.count("--max-panels"),
-        default=20000,
-        help="stop before more panels than this (default 20000)",
+        default=10000,
+        help="stop before more panels than this (default 10000)",
     )
     group.add_argument(
         "--memory",

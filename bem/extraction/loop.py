@@ -14,7 +14,7 @@ from bem.extraction.marking import Goal, indicator, mark
 from bem.extraction.memory import MemoryPlan
 from bem.extraction.progress import Progress
 from bem.extraction.solution import Solution, Sums, solve_round, sums
-from bem.operators.dense import Reuse
+from bem.operators.dense import INNER, Reuse
 from bem.panels.mesh import Mesh
 
 MOST_ROUNDS = 60
@@ -96,13 +96,12 @@ class Run:
         reuse = Reuse(self.rounds[-1].solution.operator, origin) if origin is not None else None
         solution = solve_round(mesh, self.count, self.goal.tolerance, reuse)
         self._keep(solution)
-        self.tell("refining", panels)
         return self._refine(mesh, solution)
 
     def _keep(self, solution: Solution) -> None:
         """Estimate the round, and let go of the matrices of the one before."""
         here = sums(solution)
-        found = estimate([r.sums for r in self.rounds] + [here])
+        found = estimate([r.sums for r in self.rounds] + [here], INNER * self.goal.tolerance)
         worst = float(self.goal.worst(found).max())
         if len(self.rounds) + 1 < ROUNDS:
             worst = max(worst, 1.0 + 1e-9)

@@ -23,7 +23,7 @@ from numba import njit, prange
 
 from bem.kernels.arrays import PanelArrays
 from bem.kernels.polygons import coplanar_pair
-from bem.kernels.potential import potential
+from bem.kernels.potential import ROWS, potential
 from bem.kernels.rectangles import parallel_pair, perpendicular_pair
 from bem.kernels.targets import Targets
 
@@ -131,24 +131,29 @@ def _far_pair(i, j, panels, targets, out):
 
 
 @njit(cache=True, error_model="numpy", fastmath={"contract", "reassoc", "nsz"})
-def _sampled_pair(i, j, panels, targets, scratch, out):
-    """Samples of i against the exact potential of j; out as in ``_far_pair``."""
-    potential(j, panels, targets.points[i], scratch[0], scratch[1])
-    for k in range(5):
-        out[k] = 0.0
-    for q in range(targets.weights.shape[1]):
-        u = scratch[1, 0, q]
-        out[0] += targets.weights[i, q] * u
-        for k in range(4):
-            out[k + 1] += targets.tests[i, k, q] * u
+def _collect(i, targets, work, out):
+    """Sum the samples of i, left by ``potential``, as ``_far_pair`` does.
+
+    It does not call ``potential`` itself: compiled into one, the loops there stay scalar.
+    """
+    weights, tests = targets.weights, targets.tests
+    a0, a1, a2, a3, a4 = 0.0, 0.0, 0.0, 0.0, 0.0
+    for q in range(work.shape[1]):
+        u = work[3, q]
+        a0 += weights[i, q] * u
+        a1 += tests[i, 0, q] * u
+        a2 += tests[i, 1, q] * u
+        a3 += tests[i, 2, q] * u
+        a4 += tests[i, 3, q] * u
+    out[0], out[1], out[2], out[3], out[4] = a0, a1, a2, a3, a4
 
 
 @njit(cache=True, error_model="numpy")
 def _clustered_points(i, panels, nodes_u, nodes_v):
-    """Points (3, k) of panel i at the product of two sets of (node, weight); and weights (k,)."""
+    """Points (1, 3, k) of panel i at the product of two sets of (node, weight); and weights (k,)."""
     corners, axes, center = panels.corners[i], panels.axes[i], panels.center[i]
     n = nodes_u[0].size * nodes_v[0].size
-    points, weights = np.empty((3, n)), np.empty(n)
+    points, weights = np.empty((1, 3, n)), np.empty(n)
     k = 0
     for p in range(nodes_u[0].size):
         s = nodes_u[0][p]
@@ -160,7 +165,7 @@ def _clustered_points(i, panels, nodes_u, nodes_v):
             du = (1 - t) * (corners[1] - corners[0]) + (1 + t) * (corners[2] - corners[3])
             dv = (1 - s) * (corners[3] - corners[0]) + (1 + s) * (corners[2] - corners[1])
             for c in range(3):
-                points[c, k] = center[c] + u[0] * axes[0, c] + u[1] * axes[1, c]
+                points[0, c, k] = center[c] + u[0] * axes[0, c] + u[1] * axes[1, c]
             weights[k] = nodes_u[1][p] * nodes_v[1][q] * (du[0] * dv[1] - du[1] * dv[0]) / 16.0
             k += 1
     return points, weights
@@ -175,9 +180,9 @@ def clustered_pair(i: int, j: int, panels: PanelArrays) -> float:
     nodes_u = long if wide > 6.0 * tall else short
     nodes_v = long if tall > 6.0 * wide else short
     points, weights = _clustered_points(i, panels, nodes_u, nodes_v)
-    work = np.empty(points.shape)
-    potential(j, panels, points, np.empty(points.shape), work)
-    return np.dot(weights, work[0])
+    work = np.empty((ROWS, weights.size))
+    potential(j, panels, points, 0, work)
+    return np.sum(weights * work[3])
 
 
 @njit(cache=True, error_model="numpy")
@@ -270,7 +275,7 @@ def _copy_row(i, origin, old, new):
 
 @njit(cache=True, error_model="numpy")
 def _fill_row(i, panels, targets, reach, origin, new):
-    scratch = np.empty((2, 3, targets.weights.shape[1]))
+    work = np.empty((ROWS, targets.weights.shape[1]))
     out = np.empty(5)
     sampled = 0
     for j in range(panels.area.size):
@@ -281,7 +286,8 @@ def _fill_row(i, panels, targets, reach, origin, new):
         if distance > reach[1]:
             _far_pair(i, j, panels, targets, out)
         else:
-            _sampled_pair(i, j, panels, targets, scratch, out)
+            potential(j, panels, targets.points, i, work)
+            _collect(i, targets, work, out)
             sampled += 1
             if distance <= reach[0]:
                 out[0] = near_pair(i, j, panels) if j >= i else math.nan
