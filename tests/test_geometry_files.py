@@ -246,9 +246,10 @@ TETRA_22 = """$MeshFormat
 2.2 0 8
 $EndMeshFormat
 $PhysicalNames
-2
+3
 2 5 "shell's skin"
 3 5 "shell's skin"
+3 6 "metal"
 $EndPhysicalNames
 $Nodes
 4
@@ -268,7 +269,7 @@ $EndElements
 
 
 def test_groups_without_names_and_cells_without_groups(tmp_path):
-    """Node numbers may skip; a volume may share a surface's name."""
+    """Node numbers may skip; a volume may share a surface's name or number."""
     path = save(tmp_path / "tetra.msh", TETRA_22)
     surface, _ = read_surface(path, 1.0)
     assert volume(surface) == pytest.approx(1 / 6)

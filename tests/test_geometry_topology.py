@@ -64,6 +64,23 @@ def test_several_corners_on_one_edge():
     assert is_open(vertices, np.array([*rest, [0, 9, far], [9, 8, far]])) == 0
 
 
+def test_a_fin_is_open_on_all_sides():
+    """Where it stands on the body, three triangles meet, an odd number."""
+    vertices = np.concatenate([cube().vertices, [[0.0, -2.0, -2.0]]])
+    assert is_open(vertices, np.concatenate([cube().triangles, [[0, 1, 8]]])) == 3
+
+
+def test_bodies_that_share_an_edge_are_closed():
+    """Four triangles meet there, an even number."""
+    vertices = np.concatenate([cube().vertices, cube(1.0, (0.0, -1.0, -1.0)).vertices])
+    second = cube().triangles + 8
+    second = np.where(second == 14, 0, np.where(second == 15, 1, second))
+    assert np.array_equal(vertices[[14, 15]], vertices[[0, 1]])
+    both = np.concatenate([cube().triangles, second])
+    assert edges_of(both).uses.max() == 4
+    assert is_open(vertices, both) == 0
+
+
 def test_the_rim_of_a_sheet_is_open():
     vertices = np.array([[0.0, 0, 0], [1, 0, 0], [1, 1, 0], [0, 1, 0]])
     assert is_open(vertices, np.array([[0, 1, 2], [0, 2, 3]])) == 4
