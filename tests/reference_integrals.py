@@ -3,7 +3,7 @@
 The potential of a polygon is the textbook sum over its sides (Wilton, Rao, Glisson,
 Schaubert, Al-Bundak and Butler 1984), in its plain form: once with many digits, once in
 double precision. The double integral over two polygons is a tanh-sinh rule over the outer
-one, cut where the planes through the inner one's sides meet it.
+one, cut where the inner one's plane and the upright planes through its sides meet it.
 """
 
 from __future__ import annotations
@@ -98,8 +98,8 @@ def _cut(ring: np.ndarray, origin: np.ndarray, normal: np.ndarray) -> list[np.nd
 
 def _pieces(outer: np.ndarray, inner: np.ndarray) -> list[np.ndarray]:
     """Triangles (3, 3) of the outer panel within which the inner one's potential is smooth."""
-    pieces = [frame(outer)[0]]
     ring, normal = frame(inner)
+    pieces = _cut(frame(outer)[0], ring[0], normal)
     for a, b in zip(ring, np.roll(ring, -1, axis=0), strict=True):
         across = np.cross(normal, b - a)
         across /= np.linalg.norm(across)
