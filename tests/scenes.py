@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
+from pathlib import Path
 
 import numpy as np
-from made_bodies import faces_of
+from made_bodies import CUBE_QUADS, cube_vertices, faces_of, soup, stl_binary
 from reference_values import Body, Reference
 
 import bem
@@ -83,3 +84,81 @@ def in_lengths(farads: np.ndarray) -> np.ndarray:
 def moved(surface: Surface, degrees: float = 37.0, shift: tuple = SHIFT) -> Surface:
     """Turn a surface about ``AXIS`` and shift it."""
     return surface.placed(rotation(AXIS, degrees), np.array(shift))
+
+
+def _grid(n: int, jitter: float, seed: int) -> tuple[np.ndarray, np.ndarray]:
+    """Points (m, 2) and triangles (t, 3) of the unit square about the origin."""
+    level = np.linspace(-0.5, 0.5, n + 1)
+    points = np.stack(np.meshgrid(level, level, indexing="ij"), axis=-1).reshape(-1, 2)
+    inside = np.all(np.abs(points) < 0.5 - 1e-9, axis=1)
+    random = np.random.default_rng(seed)
+    points[inside] += jitter / n * random.uniform(-1.0, 1.0, (int(inside.sum()), 2))
+    i, j = np.divmod(np.arange(n * n), n)
+    a = i * (n + 1) + j
+    b, c, d = a + n + 1, a + n + 2, a + 1
+    turn = random.random(n * n) < (0.5 if jitter else 0.0)
+    first = np.where(turn[:, None], np.stack([a, b, d], 1), np.stack([a, b, c], 1))
+    second = np.where(turn[:, None], np.stack([b, c, d], 1), np.stack([a, c, d], 1))
+    return points, np.concatenate([first, second])
+
+
+def meshed_plate(n: int, jitter: float = 0.0, seed: int = 0) -> Surface:
+    """Make the unit square of 2 n^2 triangles at z = 0, inner points moved by ``jitter`` cells."""
+    points, triangles = _grid(n, jitter, seed)
+    return tidy(np.column_stack([points, np.zeros(len(points))]), triangles)
+
+
+def _box_of(points: np.ndarray, triangles: np.ndarray) -> Surface:
+    """Make the unit cube, each face meshed like the unit square, common vertices joined."""
+    sides = []
+    for axis in range(3):
+        for height in (-0.5, 0.5):
+            side = np.insert(points, axis, height, axis=1)
+            sides.append(side[triangles])
+    corners = np.concatenate(sides)
+    vertices, index = np.unique(corners.reshape(-1, 3).round(12), axis=0, return_inverse=True)
+    return tidy(vertices, index.reshape(-1, 3))
+
+
+def meshed_box(n: int, jitter: float = 0.0, seed: int = 0) -> Surface:
+    """Make the unit cube of 12 n^2 triangles."""
+    return _box_of(*_grid(n, jitter, seed))
+
+
+def _strips(n: int) -> tuple[np.ndarray, np.ndarray]:
+    """Make the unit square of n strips, cut once each: triangles of aspect n."""
+    level = np.linspace(-0.5, 0.5, n + 1)
+    points = np.array([(x, y) for x in level for y in (-0.5, 0.5)])
+    a = 2 * np.arange(n)
+    return points, np.concatenate([np.stack([a, a + 2, a + 3], 1), np.stack([a, a + 3, a + 1], 1)])
+
+
+def sliver_plate(n: int) -> Surface:
+    """Make the unit square of 2 n long triangles."""
+    points, triangles = _strips(n)
+    return tidy(np.column_stack([points, np.zeros(len(points))]), triangles)
+
+
+def slivers(n: int) -> Surface:
+    """Make the unit cube of 12 n long triangles; strips of neighbouring faces meet unmatched."""
+    return _box_of(*_strips(n))
+
+
+def one_quad_per_face() -> Surface:
+    """Make the unit cube of six quadrilaterals."""
+    return Surface(cube_vertices(), CUBE_QUADS)
+
+
+def from_stl(scene: bem.Scene, folder: Path, name: str, surface: Surface) -> None:
+    """Add a surface to a scene by way of a binary STL file."""
+    path = folder / f"{name}.stl"
+    path.write_bytes(stl_binary(soup(surface)))
+    scene.add_conductor(name, mesh=path)
+
+
+def scene_from_files(folder: Path, surfaces: Iterable[Surface]) -> bem.Scene:
+    """Scene in metres whose conductors went through STL files."""
+    scene = bem.Scene(unit="m")
+    for k, surface in enumerate(surfaces):
+        from_stl(scene, folder, f"c{k}", surface)
+    return scene
