@@ -1,8 +1,8 @@
 """Walls that a patch is divided along: its outline, and the shadows of faces close to it.
 
-Where a face of another conductor lies parallel and near, the charge changes within one gap
-of every rim, its own or the other's projected on it. Halving alone gains only gap/size of
-that charge per step, so the indicator is blind to it and the starting mesh must know.
+Where a face of another conductor lies near and about parallel, the charge changes within one
+gap of every rim, its own or the other's projected on it. Halving alone gains only gap/size
+of that charge per step, so the indicator is blind to it and the starting mesh must know.
 """
 
 from __future__ import annotations
@@ -15,6 +15,10 @@ from bem.panels.planar import Patch
 
 NEAR = 0.5
 """A face counts as facing if its distance is below this part of the smaller of both sizes."""
+LEANING = 0.94
+"""Least cosine between the normals of faces that count as facing (20 degrees)."""
+COINCIDENT, COINCIDENT_GAP = 1e-5, 0.02
+"""Walls closer than this part of the patch's size, or of the gap, count as one."""
 
 
 @dataclass(frozen=True)
@@ -34,12 +38,21 @@ class Walls:
 
 @dataclass(frozen=True)
 class _Shadow:
-    """Outline of a facing patch projected on this one."""
+    """Outline of a facing patch projected on this one.
+
+    Args:
+        edges: (e, 2, 2) in the plane of this patch.
+        gap: (e,) distance of both planes at the middle of each edge.
+        rim_gap: (r,) the same at the middle of each edge of this patch's own outline.
+        height: signed distance of the other patch's origin from this plane.
+        conductor: owner of the facing patch.
+    """
 
     edges: np.ndarray
-    gap: float
+    gap: np.ndarray
+    rim_gap: np.ndarray
+    height: float
     conductor: int
-    side: float
 
     @property
     def box(self) -> np.ndarray:
@@ -74,54 +87,79 @@ class FacingTable:
             np.array([p.size for p in patches]),
         )
 
-    def _parallel(self, k: int) -> np.ndarray:
-        """Indices of patches parallel to patch k, near it in height and not in its plane."""
+    def _facing(self, k: int) -> np.ndarray:
+        """Indices of patches about parallel to patch k, near it in height and not in its plane."""
         cosine = np.abs(self.normals @ self.normals[k])
         height = np.abs((self.origins - self.origins[k]) @ self.normals[k])
         reach = NEAR * np.minimum(self.sizes, self.sizes[k])
-        near = (cosine > 1.0 - 1e-12) & (height < reach) & (height > 1e-9 * self.sizes[k])
+        near = (cosine > LEANING) & (height < reach) & (height > 1e-9 * self.sizes[k])
         apart = np.linalg.norm(self.origins - self.origins[k], axis=1)
         near &= apart < self.sizes + self.sizes[k]
         return np.flatnonzero(near)
 
     def _shadow(self, k: int, other: int) -> _Shadow:
         patch, facing = self.patches[k], self.patches[other]
-        height = float((self.origins[other] - self.origins[k]) @ self.normals[k])
-        edges = patch.drop(facing.lift(facing.edges))
-        return _Shadow(edges, abs(height), facing.conductor, np.sign(height))
+        normal = self.normals[k]
+        rim = facing.lift(facing.edges.mean(axis=1))
+        own = patch.lift(patch.edges.mean(axis=1))
+        slope = normal @ self.normals[other]
+        rim_gap = np.abs((own - facing.origin) @ self.normals[other] / slope)
+        least = 1e-4 * min(self.sizes[k], self.sizes[other])
+        parallel = abs(slope) > 1.0 - 1e-12
+        return _Shadow(
+            edges=patch.drop(facing.lift(facing.edges)),
+            gap=np.maximum(np.abs((rim - patch.origin) @ normal), 0.0 if parallel else least),
+            rim_gap=np.maximum(rim_gap, 0.0 if parallel else least),
+            height=float((facing.origin - patch.origin) @ normal),
+            conductor=facing.conductor,
+        )
 
     def shadows(self, k: int) -> list[_Shadow]:
         """Shadows on patch k of faces that see it; what lies behind metal is left out."""
         own = self.patches[k].edges.reshape(-1, 2)
         box = np.array([own.min(axis=0), own.max(axis=0)])
-        found = [self._shadow(k, other) for other in self._parallel(k)]
-        found = sorted((s for s in found if _overlap(s.box, box)), key=lambda s: s.gap)
+        found = [self._shadow(k, other) for other in self._facing(k)]
+        found = sorted((s for s in found if _overlap(s.box, box)), key=lambda s: abs(s.height))
         seen: list[_Shadow] = []
         for shadow in found:
-            hidden = any(s.side == shadow.side and _covers(s.box, shadow.box) for s in seen)
+            hidden = any(s.height * shadow.height > 0.0 and _covers(s.box, shadow.box) for s in seen)
             if not hidden:
                 seen.append(shadow)
         return [s for s in seen if s.conductor != self.patches[k].conductor]
 
     def walls(self, k: int) -> Walls:
         """Outline and shadows of patch k."""
-        own = self.patches[k].edges
+        patch = self.patches[k]
+        ends, gap = patch.edges, np.full(len(patch.edges), np.inf)
+        outline = len(ends)
         shadows = self.shadows(k)
-        parts = [own, *(s.edges for s in shadows)]
-        outline = np.concatenate([np.full(len(p), m == 0) for m, p in enumerate(parts)])
-        gap = np.concatenate([np.full(len(own), np.inf), *(np.full(len(s.edges), s.gap) for s in shadows)])
         for shadow in shadows:
-            gap[: len(own)] = np.where(
-                _touched(own, shadow), np.minimum(gap[: len(own)], shadow.gap), gap[: len(own)]
-            )
-        return Walls(np.concatenate(parts), outline, gap)
+            gap = np.where(_touched(ends, shadow), np.minimum(gap, shadow.rim_gap), gap)
+        for shadow in shadows:
+            new = ~_coincident(shadow.edges, ends, COINCIDENT * patch.size + COINCIDENT_GAP * shadow.gap)
+            ends = np.concatenate([ends, shadow.edges[new]])
+            gap = np.concatenate([gap, shadow.gap[new]])
+        return Walls(ends, np.arange(len(ends)) < outline, gap)
+
+
+def _coincident(edges: np.ndarray, walls: np.ndarray, tolerance: np.ndarray) -> np.ndarray:
+    """Which edges (e, 2, 2) lie along one of the walls (w, 2, 2) within their tolerance (e,)."""
+    start, step = walls[:, 0], walls[:, 1] - walls[:, 0]
+    length = np.linalg.norm(step, axis=1)
+    gap = edges[:, None] - start[None, :, None]
+    along = np.einsum("ewsc,wc->ews", gap, step) / length[:, None]
+    off = np.abs(gap[..., 0] * step[:, None, 1] - gap[..., 1] * step[:, None, 0]) / length[:, None]
+    limit = tolerance[:, None]
+    inside = (along.min(axis=2) > -limit) & (along.max(axis=2) < length + limit)
+    return (inside & (off.max(axis=2) <= limit)).any(axis=1)
 
 
 def _touched(edges: np.ndarray, shadow: _Shadow) -> np.ndarray:
     """Which edges lie, at least in part, under the shadow or within two gaps of its rim."""
     t = np.linspace(0.02, 0.98, 13)[:, None]
     points = edges[:, None, 0] * (1 - t) + edges[:, None, 1] * t
-    return (_inside(points, shadow.edges) | (_distance(points, shadow.edges) < 2 * shadow.gap)).any(axis=1)
+    near = _distance(points, shadow.edges) < 2.0 * shadow.rim_gap[:, None]
+    return (_inside(points, shadow.edges) | near).any(axis=1)
 
 
 def _inside(points: np.ndarray, edges: np.ndarray) -> np.ndarray:

@@ -8,7 +8,7 @@ import numpy as np
 
 from bem.panels.arrangement import trapezoids
 from bem.panels.facing import FacingTable, Walls
-from bem.panels.planar import Patch
+from bem.panels.planar import FLATNESS, Patch
 from bem.panels.split import mean_sides, split
 
 MANY_PIECES = 400
@@ -83,7 +83,7 @@ def _pieces(patches: list[Patch]) -> Pieces:
         for piece in _patch_pieces(patch, walls):
             corners.append(patch.lift(piece))
             owner.append(patch.conductor)
-            gaps.append(_side_gaps(piece, walls, 1e-7 * patch.size))
+            gaps.append(_side_gaps(piece, walls, FLATNESS * patch.size))
     return Pieces(np.array(corners).reshape(-1, 4, 3), np.array(owner, dtype=int), np.array(gaps).reshape(-1, 4))
 
 
@@ -131,8 +131,19 @@ def _angles(walls: Walls) -> list[float]:
 def _swept(walls: Walls, angle: float, size: float) -> list[np.ndarray]:
     c, s = np.cos(angle), np.sin(angle)
     turn = np.array([[c, s], [-s, c]])
-    pieces = trapezoids(walls.ends @ turn.T, walls.outline, 1e-7 * size)
-    return [piece @ turn for piece in pieces]
+    pieces = trapezoids(walls.ends @ turn.T, walls.outline, FLATNESS * size)
+    return [_apex_last(piece, FLATNESS * size) @ turn for piece in pieces]
+
+
+def _apex_last(piece: np.ndarray, tolerance: float) -> np.ndarray:
+    """Corners in an order that ends with the repeated one, if the piece is a triangle."""
+    side = np.linalg.norm(np.roll(piece, -1, axis=0) - piece, axis=1)
+    k = int(np.argmin(side))
+    if side[k] > tolerance:
+        return piece
+    turned = np.roll(piece, 2 - k, axis=0)
+    turned[3] = turned[2]
+    return turned
 
 
 def _turn_to_needle(face: np.ndarray) -> np.ndarray:
@@ -159,7 +170,7 @@ def _side_gaps(piece: np.ndarray, walls: Walls, tolerance: float) -> np.ndarray:
         t = np.einsum("esc,ec->es", side, along)
         off = np.abs(side[..., 0] * along[:, None, 1] - side[..., 1] * along[:, None, 0]).max(axis=1)
         shared = np.minimum(t.max(axis=1), length) - np.maximum(t.min(axis=1), 0.0)
-        on = (off <= 10 * tolerance) & (shared > 1e-3 * np.ptp(t, axis=1)) & (np.ptp(t, axis=1) > tolerance)
+        on = (off <= 2.0 * tolerance) & (shared > 1e-3 * np.ptp(t, axis=1)) & (np.ptp(t, axis=1) > tolerance)
         gaps[k] = gap[on].min(initial=np.inf)
     return gaps
 
