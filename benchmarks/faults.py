@@ -1,0 +1,253 @@
+"""Deliberate faults, each a small change of one source file, and the tests that should see it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+POTENTIAL = ("test_kernels_potential.py",)
+PAIRS = ("test_kernels_pairs.py",)
+FILL = ("test_kernels_fill.py",)
+TARGETS = ("test_kernels_targets.py",)
+WHOLE = ("test_estimate*.py", "test_extract*.py", "test_published*.py", "test_exact*.py")
+
+
+@dataclass(frozen=True)
+class Fault:
+    """One change.
+
+    Args:
+        what: in words.
+        file: below bem/.
+        old: text that occurs exactly once in it.
+        new: what takes its place.
+        tests: files below tests/, or patterns of their names.
+    """
+
+    what: str
+    file: str
+    old: str
+    new: str
+    tests: tuple[str, ...]
+
+    @property
+    def compiled(self) -> bool:
+        """Whether compiled code may hold the fault, so that no older cache may be used."""
+        return self.file.startswith("kernels/")
+
+
+KERNELS = (
+    Fault(
+        "solid angle added to the potential instead of subtracted",
+        "kernels/potential.py",
+        "-= work[2, k] * angle",
+        "+= work[2, k] * angle",
+        POTENTIAL,
+    ),
+    Fault(
+        "logarithm of a side cancels for points beyond its end",
+        "kernels/potential.py",
+        "flip = t0 + t1 < 0.0",
+        "flip = t0 + t1 < -1e300",
+        POTENTIAL,
+    ),
+    Fault(
+        "parallel rectangles: sign of the height in the last term",
+        "kernels/rectangles.py",
+        "(uu + vv - 2.0 * ww) * r / 6.0",
+        "(uu + vv + 2.0 * ww) * r / 6.0",
+        PAIRS,
+    ),
+    Fault(
+        "perpendicular rectangles: sign in a logarithm's factor",
+        "kernels/rectangles.py",
+        "(uu / 2.0 - ww / 6.0) * aw",
+        "(uu / 2.0 + ww / 6.0) * aw",
+        PAIRS,
+    ),
+    Fault(
+        "parallel polygons: orientation forgotten",
+        "kernels/polygons.py",
+        "return total if handed > 0.0 else -total",
+        "return total",
+        PAIRS,
+    ),
+    Fault(
+        "far pairs: sign of the trace of the second moment",
+        "kernels/pairs.py",
+        "(3.0 * full * v2 - trace)",
+        "(3.0 * full * v2 + trace)",
+        FILL,
+    ),
+    Fault(
+        "each pair taken from the row of the larger panel",
+        "kernels/pairs.py",
+        "if radius[i] < radius[j] else",
+        "if radius[i] > radius[j] else",
+        FILL,
+    ),
+    Fault(
+        "a digit of the logarithm's series",
+        "kernels/elementary.py",
+        "0.1428571438032084",
+        "0.1428571838032084",
+        ("test_kernels_elementary.py",),
+    ),
+    Fault(
+        "second moments of a panel halved",
+        "kernels/arrays.py",
+        "outer / 12.0",
+        "outer / 24.0",
+        TARGETS,
+    ),
+    Fault(
+        "energy of a test function lacks its norm",
+        "kernels/indicator_energy.py",
+        "square[:, 0] * 3.0",
+        "square[:, 0]",
+        TARGETS,
+    ),
+)
+
+UNITS_AND_SIGNS = (
+    Fault(
+        "mil ten times too long",
+        "units.py",
+        '"mil": 2.54e-5',
+        '"mil": 2.54e-4',
+        ("test_units*.py", "test_scene*.py"),
+    ),
+    Fault(
+        "two digits of the electric constant swapped",
+        "units.py",
+        "EPS0 = 8.8541878188e-12",
+        "EPS0 = 8.8451878188e-12",
+        ("test_units*.py", "test_published*.py", "test_exact*.py", "test_finite_elements.py"),
+    ),
+    Fault(
+        "permittivity of the surroundings ignored",
+        "extraction/scaled.py",
+        "EPS0 * scene.relative_permittivity * length",
+        "EPS0 * length",
+        (*WHOLE, "test_cli_extract.py"),
+    ),
+    Fault(
+        "bodies turned the wrong way",
+        "scene/placing.py",
+        "+ sin * across",
+        "- sin * across",
+        ("test_scene*.py",),
+    ),
+    Fault(
+        "mutual capacitances with the sign of the matrix",
+        "results/result.py",
+        "0.0 - self.capacitance",
+        "0.0 + self.capacitance",
+        ("test_results.py",),
+    ),
+    Fault(
+        "allowance of an entry without the root",
+        "results/result.py",
+        "size = np.sqrt(np.abs(np.diagonal(self.capacitance)))",
+        "size = np.abs(np.diagonal(self.capacitance))",
+        ("test_results.py",),
+    ),
+)
+
+BARS = (
+    Fault(
+        "indicator of couplings summed without signs",
+        "extraction/solution.py",
+        "signed=w.T @ every",
+        "signed=np.abs(w).T @ np.abs(every)",
+        WHOLE,
+    ),
+    Fault(
+        "extrapolation in the wrong direction",
+        "extraction/estimate.py",
+        "+ _kappa(rounds)[0] * last.signed",
+        "- _kappa(rounds)[0] * last.signed",
+        WHOLE,
+    ),
+    Fault(
+        "faceting effect of curved bodies with the wrong sign",
+        "extraction/estimate.py",
+        "* last.signed + last.faceting",
+        "* last.signed - last.faceting",
+        WHOLE,
+    ),
+    Fault(
+        "bar without its parts of discretisation",
+        "extraction/estimate.py",
+        "(SHARE + DOUBT * doubt) * last.absolute",
+        "0.0 * (SHARE + DOUBT * doubt) * last.absolute",
+        WHOLE,
+    ),
+    Fault(
+        "bar without the trend of the value",
+        "extraction/estimate.py",
+        '"trend": TREND * drift',
+        '"trend": 0.0 * TREND * drift',
+        WHOLE,
+    ),
+    Fault(
+        "bar of a row sum left out",
+        "extraction/extract.py",
+        "row_sum_error=bar[:, -1]",
+        "row_sum_error=0.0 * bar[:, -1]",
+        WHOLE,
+    ),
+    Fault(
+        "panels halved in the worse direction",
+        "extraction/marking.py",
+        "(promise[1] > promise[0])",
+        "(promise[1] < promise[0])",
+        (*WHOLE, "test_marking*.py"),
+    ),
+    Fault(
+        "density keeps the scaling of the solver",
+        "solve/dense.py",
+        "density = scale[:, None] * cho_solve",
+        "density = cho_solve",
+        WHOLE,
+    ),
+)
+
+PANELS_AND_EXPORTS = (
+    Fault(
+        "a half of each cut quadrilateral lost, the other doubled",
+        "panels/flat.py",
+        "[self.corners[kept], near, rest]",
+        "[self.corners[kept], near, near]",
+        ("test_panels_flat.py",),
+    ),
+    Fault(
+        "starting mesh blind to facing conductors",
+        "panels/flat.py",
+        "GRADE_STOP = 1.5",
+        "GRADE_STOP = 1e9",
+        ("test_panels_flat.py",),
+    ),
+    Fault(
+        "cut through one corner too far",
+        "panels/split.py",
+        "np.where(first, c1, high), c2",
+        "np.where(first, c1, high), high",
+        ("test_panels_flat.py",),
+    ),
+    Fault(
+        "saved row sums without their bars",
+        "exports/record.py",
+        '"row_sum_error_F": result.row_sum_error',
+        '"row_sum_error_F": result.row_sum',
+        ("test_results.py",),
+    ),
+    Fault(
+        "columns of the CSV file exchanged",
+        "exports/csv_file.py",
+        "result.capacitance[i, j], result.error[i, j]",
+        "result.error[i, j], result.capacitance[i, j]",
+        ("test_exports_csv.py",),
+    ),
+)
+
+FAULTS: tuple[Fault, ...] = KERNELS + UNITS_AND_SIGNS + BARS + PANELS_AND_EXPORTS

@@ -1,0 +1,173 @@
+"""Whether tests and audit catch deliberate faults.
+
+    python benchmarks/seeded_faults.py             # all
+    python benchmarks/seeded_faults.py --only bar  # those with "bar" in their words
+
+Each fault goes into a copy of the package; its tests run there and, if they pass, an extraction
+whose audit may see it. Exit code 1 if a fault survives, 2 if its text is not found any more or
+the tests do not pass without it.
+"""
+
+from __future__ import annotations
+
+import argparse
+import os
+import re
+import shutil
+import subprocess
+import sys
+import tempfile
+import time
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+from faults import FAULTS, Fault
+
+ROOT = Path(__file__).resolve().parent.parent
+COPIED = ("bem", "tests", "meshes", "benchmarks")
+FAILED = re.compile(r"^(?:FAILED|ERROR) (?:tests/)?(\S+)", re.MULTILINE)
+AUDIT = """
+import bem
+
+caught = []
+lower, upper = bem.plate(1.0, 1.0), bem.plate(1.0, 1.0, (0.3, 0.2, 0.2))
+for bodies in ([bem.box(1.0, 1.0, 1.0)], [lower, upper], [bem.sphere(1.0)]):
+    scene = bem.Scene(unit="m")
+    for number, body in enumerate(bodies):
+        scene.add_conductor(f"body {number}", body)
+    try:
+        result = bem.extract(scene, 1e-3, threads=1, max_panels=1500)
+        caught += [name for name, finding in result.audit.items() if not finding["ok"]]
+        caught += [line for line in result.warnings if "energy check" in line]
+    except bem.SolutionError as problem:
+        caught.append(str(problem))
+print("; ".join(caught))
+"""
+
+
+@dataclass(frozen=True)
+class Verdict:
+    """What became of a fault: who caught it, or None, or that it could not be tried."""
+
+    fault: Fault
+    caught_by: str | None
+    trouble: str = ""
+    seconds: float = 0.0
+
+
+class Copy:
+    """A copy of the checkout in which one file at a time is changed."""
+
+    def __init__(self, folder: Path) -> None:
+        self._folder = folder
+        for name in COPIED:
+            ignored = shutil.ignore_patterns("__pycache__")
+            shutil.copytree(ROOT / name, folder / name, ignore=ignored)
+        shutil.copy(ROOT / "pyproject.toml", folder)
+
+    def tests(self, patterns: Sequence[str]) -> list[str]:
+        """Test files that exist, by patterns of their names."""
+        found = [p for pattern in patterns for p in sorted((self._folder / "tests").glob(pattern))]
+        return [str(path.relative_to(self._folder)) for path in dict.fromkeys(found)]
+
+    def change(self, fault: Fault) -> bool:
+        """Put a fault in; returns whether its text was found exactly once."""
+        text = (ROOT / "bem" / fault.file).read_text(encoding="utf-8")
+        changed = text.replace(fault.old, fault.new)
+        (self._folder / "bem" / fault.file).write_text(changed, encoding="utf-8")
+        return text.count(fault.old) == 1
+
+    def restore(self, fault: Fault) -> None:
+        """Take a fault out again, with the old date, so that older compiled code is valid."""
+        shutil.copy2(ROOT / "bem" / fault.file, self._folder / "bem" / fault.file)
+
+    def run(self, words: Sequence[str], cache: str) -> subprocess.CompletedProcess[str]:
+        """Run Python in the copy, with compiled code in its folder ``cache``."""
+        places = {"PYTHONPATH": str(self._folder), "NUMBA_CACHE_DIR": str(self._folder / cache)}
+        environment = {**os.environ, **places, "PYTHONDONTWRITEBYTECODE": "1"}
+        words = [sys.executable, *words]
+        return subprocess.run(
+            words, cwd=self._folder, env=environment, capture_output=True, text=True, check=False
+        )
+
+    def pytest(self, files: Sequence[str], cache: str) -> subprocess.CompletedProcess[str]:
+        """Run tests until the first failure."""
+        return self.run(["-m", "pytest", "-x", "-q", "-p", "no:cacheprovider", *files], cache)
+
+
+def caught_by_tests(copy: Copy, files: list[str], cache: str) -> tuple[str | None, str]:
+    """Name the test that failed, if one did, and what went wrong if pytest itself did."""
+    done = copy.pytest(files, cache)
+    if done.returncode == 0:
+        return None, ""
+    names = FAILED.findall(done.stdout)
+    if done.returncode == 1 and names:
+        return names[0], ""
+    return None, f"pytest ended with {done.returncode}: {(done.stdout + done.stderr)[-300:]}"
+
+
+def caught_by_audit(copy: Copy, cache: str) -> str | None:
+    """Tell what the audit says of extractions with the fault, if it says anything."""
+    done = copy.run(["-c", AUDIT], cache)
+    if done.returncode != 0:
+        return f"the extraction itself: {done.stderr.strip().splitlines()[-1]}"
+    return f"audit: {done.stdout.strip()[:120]}" if done.stdout.strip() else None
+
+
+def judge(copy: Copy, fault: Fault, number: int) -> Verdict:
+    """Try one fault."""
+    start = time.perf_counter()
+    if not copy.change(fault):
+        copy.restore(fault)
+        return Verdict(fault, None, f"text not found exactly once in {fault.file}: {fault.old}")
+    cache = f"cache_{number}" if fault.compiled else "cache"
+    files = copy.tests(fault.tests)
+    by, trouble = caught_by_tests(copy, files, cache) if files else (None, "")
+    if by is None and not trouble:
+        by = caught_by_audit(copy, cache)
+    copy.restore(fault)
+    return Verdict(fault, by, trouble, time.perf_counter() - start)
+
+
+def sound_without(copy: Copy, faults: Sequence[Fault]) -> bool:
+    """Whether the tests pass and the audit is silent as long as nothing is changed."""
+    files = copy.tests([pattern for fault in faults for pattern in fault.tests])
+    by, trouble = caught_by_tests(copy, files, "cache")
+    by = by or caught_by_audit(copy, "cache")
+    if by or trouble:
+        print(f"without any fault: {by or trouble}")
+    return not by and not trouble
+
+
+def report(verdict: Verdict) -> None:
+    """Print one line."""
+    if verdict.trouble:
+        outcome = f"NOT TRIED: {verdict.trouble}"
+    else:
+        outcome = verdict.caught_by or "SURVIVED"
+    print(f"{verdict.seconds:6.1f} s  {verdict.fault.what}: {outcome}", flush=True)
+
+
+def main() -> int:
+    """Try the faults one after another."""
+    parser = argparse.ArgumentParser(description="Whether deliberate faults are caught.")
+    parser.add_argument("--only", default="", help="faults whose words hold this")
+    only = parser.parse_args().only
+    chosen = [fault for fault in FAULTS if only in fault.what]
+    with tempfile.TemporaryDirectory() as folder:
+        copy = Copy(Path(folder))
+        if not sound_without(copy, chosen):
+            return 2
+        verdicts = []
+        for number, fault in enumerate(chosen):
+            verdicts.append(judge(copy, fault, number))
+            report(verdicts[-1])
+    untried = sum(bool(v.trouble) for v in verdicts)
+    survived = sum(not v.trouble and v.caught_by is None for v in verdicts)
+    print(f"{len(verdicts)} faults: {survived} survived, {untried} not tried")
+    return 2 if untried else 1 if survived else 0
+
+
+if __name__ == "__main__":
+    sys.exit(main())
