@@ -260,11 +260,11 @@ def test_the_faces_of_one_body_do_not_face_each_other() -> None:
 
 
 def test_metal_hides_what_lies_behind_it() -> None:
-    """Of three stacked plates the outer ones do not see each other."""
+    """The larger one of three stacked plates keeps the outer ones from seeing each other."""
     patches = [
         p
-        for k, z in enumerate((0.0, 0.01, 0.03))
-        for p in planar_patches(shapes.plate(1.0, 1.0, (0.0, 0.0, z)), k)
+        for k, (side, z) in enumerate(((0.8, 0.0), (1.0, 0.01), (0.6, 0.03)))
+        for p in planar_patches(shapes.plate(side, side, (0.0, 0.0, z)), k)
     ]
     table = FacingTable.of(patches)
     shadows = [table.walls(k).gap[~table.walls(k).outline] for k in range(3)]
