@@ -1,10 +1,10 @@
 """The reported value and its error bar, from the rounds so far.
 
     X   = L + kappa S + F
-    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + inner sqrt(L_ii L_jj)
+    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + inner sqrt(L_ii L_jj) + r
 
 S and Sabs are the signed and absolute summed indicator, F the faceting effect, q the
-quadrature effect. One kappa serves the whole matrix: the slope of L against S over the last
+quadrature effect, r that of rounded input. One kappa serves the whole matrix: the slope of L against S over the last
 rounds on the normalised trace, drawn toward its usual value. dX is the largest change of X
 over the last rounds, dk the distance of kappa from raw slopes. The coefficients were chosen
 on the cases of benchmarks/bench_bars.py, which also reports how well they hold.
@@ -114,6 +114,7 @@ def estimate(rounds: list[Sums], inner: float = FLOOR) -> Estimate:
         "discretisation": (SHARE + DOUBT * doubt) * last.absolute,
         "trend": TREND * drift,
         "quadrature": last.quadrature + floor,
+        "input rounding": last.rounding,
         "faceting": facets * np.abs(last.faceting),
     }
     return Estimate(value, sum(parts.values()), parts, kappa, facets)

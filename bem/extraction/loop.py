@@ -108,11 +108,23 @@ class Run:
         self.rounds = [_light(r) for r in self.rounds]
         self.rounds.append(RoundState(solution, here, found, worst, self.elapsed))
 
+    def _held_up_by_input(self, last: RoundState) -> bool:
+        """Whether bars are too large only for the rounded numbers of the input."""
+        count = self.count
+        allowed = self.goal.allowance(last.found.value[:, :count])
+        rounding = last.found.parts["input rounding"][:, :count]
+        rest = last.found.bar[:, :count] - rounding
+        return len(self.rounds) >= ROUNDS and bool(
+            (rounding > 0.9 * allowed).any() and (rest <= np.maximum(allowed, rounding)).all()
+        )
+
     def _refine(self, mesh: Mesh, solution: Solution) -> tuple[np.ndarray, Mesh]:
         last = self.rounds[-1]
         panels = len(mesh.conductor)
         if last.worst <= 1.0:
             self.stopped_by = "tolerance"
+        elif self._held_up_by_input(last):
+            self.stopped_by = "input-rounding"
         elif len(self.rounds) >= MOST_ROUNDS:
             self.stopped_by = "rounds"
         elif panels >= self.limits.max_panels:

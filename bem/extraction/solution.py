@@ -87,6 +87,7 @@ class Sums:
         absolute: summed absolute indicator.
         quadrature: effect of choosing between the two rows of each pair.
         faceting: first-order effect of the true surface lying off the panels.
+        rounding: largest effect of the rounded numbers of the input files.
     """
 
     panels: int
@@ -95,6 +96,7 @@ class Sums:
     absolute: np.ndarray
     quadrature: np.ndarray
     faceting: np.ndarray
+    rounding: np.ndarray
 
 
 def sums(solution: Solution) -> Sums:
@@ -114,6 +116,7 @@ def sums(solution: Solution) -> Sums:
         absolute=np.abs(w).T @ np.abs(every),
         quadrature=with_all(quadrature),
         faceting=faceting_effect(solution),
+        rounding=rounding_effect(solution),
     )
 
 
@@ -137,6 +140,14 @@ def faceting_effect(solution: Solution) -> np.ndarray:
     change = density.T @ (normal[:, None] * excess)
     change = 0.5 * (change + change.T) + density.T @ (rim[:, None] * density)
     return with_all(change)
+
+
+def rounding_effect(solution: Solution) -> np.ndarray:
+    """Bound (k, k + 1) on the change of L if every panel moves by its file's rounding."""
+    offset = np.asarray(solution.mesh.rounding)[solution.conductor]
+    size = np.abs(solution.density)
+    weight = 4.0 * np.pi * solution.panels.area * offset
+    return size.T @ (weight[:, None] * np.abs(with_all(solution.density)))
 
 
 def _side_difference(solution: Solution, faceting: Faceting) -> np.ndarray:

@@ -9,6 +9,7 @@ from __future__ import annotations
 import contextlib
 import hashlib
 from collections.abc import Iterator
+from dataclasses import replace
 from functools import lru_cache
 from pathlib import Path
 from typing import NamedTuple
@@ -42,7 +43,7 @@ def read_surface(
         mesh = _open(path)
         faces = mesh.faces_of(part)
         surface, changes = weld(Surface(mesh.vertices * metres_per_unit, faces))
-    return surface, [*mesh.changes, *changes]
+    return replace(surface, rounding=mesh.rounding * metres_per_unit), [*mesh.changes, *changes]
 
 
 class Bodies(NamedTuple):

@@ -20,6 +20,7 @@ class MeshData:
         parts: faces (indices) of each named portion.
         bodies: the parts that stand for a body each, where the kind of file has such.
         changes: what was left out or reduced, one line each.
+        rounding: half the spacing of the largest number the file can tell apart.
     """
 
     vertices: np.ndarray
@@ -27,6 +28,7 @@ class MeshData:
     parts: dict[str, np.ndarray] = field(default_factory=dict)
     bodies: tuple[str, ...] = ()
     changes: tuple[str, ...] = ()
+    rounding: float = 0.0
 
     def faces_of(self, part: str | None) -> np.ndarray:
         """Faces (n, 4) of a named portion, or all of them.

@@ -6,6 +6,7 @@ import io
 import re
 import warnings
 from collections.abc import Iterator
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -15,6 +16,8 @@ from bem.geometry.mesh_data import MeshData
 from bem.geometry.surface import NO_CORNER
 from bem.geometry.wording import counted
 
+HALF_SINGLE = 2.0**-24
+"""Half the relative spacing of the single-precision numbers of binary STL."""
 _HEADER = 84
 _FACET = 50
 _BLOCK = 1 << 24
@@ -32,7 +35,8 @@ def read_stl(path: Path) -> MeshData:
     """
     data = path.read_bytes()
     if _promised(data) == len(data):
-        return _mesh_data([_numbers(data)], [""])
+        mesh = _mesh_data([_numbers(data)], [""])
+        return replace(mesh, rounding=HALF_SINGLE * float(np.abs(mesh.vertices).max(initial=0.0)))
     if data.lstrip()[:5].lower() == b"solid":
         return _read_text(data.replace(b"\r\n", b"\n").replace(b"\r", b"\n"))
     if len(data) < _HEADER:

@@ -26,11 +26,14 @@ class Surface:
         vertices: (v, 3) float64, metres.
         faces: (f, 4) int64 indices into ``vertices``; a triangle has -1 last.
         curve: the true surface that the faces approximate, for shapes that have one.
+        rounding: how far a vertex may lie from where it was drawn because its file holds
+            rounded numbers, metres.
     """
 
     vertices: np.ndarray
     faces: np.ndarray
     curve: Revolution | None = None
+    rounding: float = 0.0
 
     @property
     def is_triangle(self) -> np.ndarray:
@@ -69,6 +72,7 @@ class Surface:
         """
         return replace(
             self,
+            rounding=self.rounding * float(np.cbrt(abs(np.linalg.det(matrix)))),
             vertices=self.vertices @ np.asarray(matrix).T + np.asarray(shift),
             curve=None if self.curve is None else self.curve.placed(matrix, shift),
         )

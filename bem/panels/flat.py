@@ -30,11 +30,13 @@ class Pieces:
         corners: (n, 4, 3).
         conductor: (n,).
         gap: (n, 4) gap that the charge feels at each side, infinite inside a face.
+        feature: (n,) size of the flat face that each lies on.
     """
 
     corners: np.ndarray
     conductor: np.ndarray
     gap: np.ndarray
+    feature: np.ndarray
 
 
 @dataclass(frozen=True)
@@ -44,10 +46,12 @@ class FlatFamily:
     Args:
         corners: (n, 4, 3), planar and convex; a triangle repeats its last corner.
         conductor: (n,) index of the owner.
+        feature: (n,) size of the flat face that each lies on.
     """
 
     corners: np.ndarray
     conductor: np.ndarray
+    feature: np.ndarray
 
     @classmethod
     def start(cls, patches: list[Patch]) -> FlatFamily:
@@ -58,7 +62,7 @@ class FlatFamily:
         if len(pieces.corners) <= FEW_PIECES:
             pieces = _subdivide(pieces)
         pieces = _grade(pieces)
-        return cls(pieces.corners, pieces.conductor)
+        return cls(pieces.corners, pieces.conductor, pieces.feature)
 
     def refine(self, marked: np.ndarray, across: np.ndarray) -> tuple[FlatFamily, np.ndarray]:
         """Halve marked panels, ``across`` 0 or 1 each.
@@ -68,23 +72,27 @@ class FlatFamily:
         """
         kept = np.flatnonzero(~marked)
         near, rest = split(self.corners[marked], across[marked], np.full(marked.sum(), 0.5))
-        owner = self.conductor[marked]
-        return FlatFamily(
-            np.concatenate([self.corners[kept], near, rest]),
-            np.concatenate([self.conductor[kept], owner, owner]),
-        ), kept
+        order = np.concatenate([kept, np.flatnonzero(marked), np.flatnonzero(marked)])
+        corners = np.concatenate([self.corners[kept], near, rest])
+        return FlatFamily(corners, self.conductor[order], self.feature[order]), kept
 
 
 def _pieces(patches: list[Patch]) -> Pieces:
     table = FacingTable.of(patches)
-    corners, owner, gaps = [], [], []
+    corners, owner, gaps, feature = [], [], [], []
     for k, patch in enumerate(patches):
         walls = table.walls(k)
         for piece in _patch_pieces(patch, walls):
             corners.append(patch.lift(piece))
             owner.append(patch.conductor)
             gaps.append(_side_gaps(piece, walls, FLATNESS * patch.size))
-    return Pieces(np.array(corners).reshape(-1, 4, 3), np.array(owner, dtype=int), np.array(gaps).reshape(-1, 4))
+            feature.append(patch.size)
+    return Pieces(
+        np.array(corners).reshape(-1, 4, 3),
+        np.array(owner, dtype=int),
+        np.array(gaps).reshape(-1, 4),
+        np.array(feature),
+    )
 
 
 def _patch_pieces(patch: Patch, walls: Walls) -> list[np.ndarray]:
@@ -184,7 +192,9 @@ def _three_quads(pieces: Pieces) -> Pieces:
     triangle = doubled.any(axis=1)
     height = 2.0 * _areas(c) / scale
     compact = triangle & (scale < SLENDER * height)
-    parts = [(c[~compact], pieces.conductor[~compact], pieces.gap[~compact])]
+    parts = [
+        (c[~compact], pieces.conductor[~compact], pieces.gap[~compact], pieces.feature[~compact])
+    ]
     keep = np.array([np.flatnonzero(~row) for row in doubled[compact]], dtype=int).reshape(-1, 3)
     tri = np.take_along_axis(c[compact], keep[:, :, None], axis=1)
     gap = np.take_along_axis(pieces.gap[compact], keep, axis=1)
@@ -194,7 +204,7 @@ def _three_quads(pieces: Pieces) -> Pieces:
         quad = np.stack([tri[:, k], 0.5 * (tri[:, k] + after), middle, 0.5 * (tri[:, k] + before)], axis=1)
         inner = np.full(len(tri), np.inf)
         flags = np.stack([gap[:, k], inner, inner, gap[:, (k + 2) % 3]], axis=1)
-        parts.append((quad, pieces.conductor[compact], flags))
+        parts.append((quad, pieces.conductor[compact], flags, pieces.feature[compact]))
     return Pieces(*(np.concatenate(column) for column in zip(*parts, strict=True)))
 
 
@@ -212,10 +222,12 @@ def _apply(pieces: Pieces, cut: np.ndarray, across: np.ndarray, part: np.ndarray
     gap_rest[rows, np.where(across == 0, 3, 0)] = np.inf
     stay = np.ones(len(pieces.corners), dtype=bool)
     stay[cut] = False
+    order = np.concatenate([np.flatnonzero(stay), cut, cut])
     return Pieces(
         np.concatenate([pieces.corners[stay], near, rest]),
-        np.concatenate([pieces.conductor[stay], pieces.conductor[cut], pieces.conductor[cut]]),
+        pieces.conductor[order],
         np.concatenate([pieces.gap[stay], gap_near, gap_rest]),
+        pieces.feature[order],
     )
 
 

@@ -12,11 +12,15 @@ from bem.geometry.surface import Surface
 from bem.panels.align import align_patches
 from bem.panels.flat import FlatFamily
 from bem.panels.planar import planar_patches
+from bem.panels.proximity import crowded
 
 if TYPE_CHECKING:
     from bem.panels.curved import CurvedFamily
 
     Family = FlatFamily | CurvedFamily
+
+PROXIMITY_ROOM = 1000
+"""The starting mesh may grow to twice its panels and this many for the sake of small neighbours."""
 
 
 @dataclass(frozen=True)
@@ -26,11 +30,13 @@ class Mesh:
     Args:
         families: flat panels of the whole scene, then one family per curved body.
         owners: per family, the conductor (n_family,) of each panel.
+        rounding: per conductor, how far its surface may lie from where it was drawn.
         hollow: conductors whose closed surface is a skin, with field on both sides.
     """
 
     families: tuple[Family, ...]
     owners: tuple[np.ndarray, ...]
+    rounding: tuple[float, ...]
     hollow: frozenset[int] = frozenset()
 
     @classmethod
@@ -54,7 +60,8 @@ class Mesh:
         for k, family in curved:
             families.append(family)
             owners.append(np.full(len(family.corners), k))
-        return cls(tuple(families), tuple(owners), frozenset(hollow))
+        rounding = tuple(s.rounding for s in surfaces)
+        return _resolved(cls(tuple(families), tuple(owners), rounding, frozenset(hollow)))
 
     @property
     def corners(self) -> np.ndarray:
@@ -65,6 +72,11 @@ class Mesh:
     def conductor(self) -> np.ndarray:
         """(n,) owner of each panel."""
         return np.concatenate(self.owners)
+
+    @property
+    def feature(self) -> np.ndarray:
+        """(n,) size of the flat face, or of the curved body, that each panel lies on."""
+        return np.concatenate([_feature(family) for family in self.families])
 
     def faceting(self) -> Faceting:
         """How far the panels are from the true surface."""
@@ -92,7 +104,7 @@ class Mesh:
             flat = isinstance(finer, FlatFamily)
             owners.append(finer.conductor if flat else np.full(len(fresh), owner[0]))
             start += len(owner)
-        return Mesh(tuple(families), tuple(owners), self.hollow), np.concatenate(origin)
+        return Mesh(tuple(families), tuple(owners), self.rounding, self.hollow), np.concatenate(origin)
 
 
 @dataclass(frozen=True)
@@ -124,3 +136,20 @@ def _faceting(family: Family, hollow: bool) -> tuple[np.ndarray, ...]:
         return zero, zero, zero, zero.astype(bool)
     sheet = np.full(count, hollow or any(family.grid.surface.free_rims))
     return family.offset, family.rim_offset, family.rim_width, sheet
+
+
+def _feature(family: Family) -> np.ndarray:
+    if isinstance(family, FlatFamily):
+        return family.feature
+    size = np.linalg.norm(np.ptp(family.corners.reshape(-1, 3), axis=0))
+    return np.full(len(family.corners), size)
+
+
+def _resolved(mesh: Mesh) -> Mesh:
+    """Halve panels beside much smaller ones of other conductors until they can see them."""
+    most = 2 * len(mesh.conductor) + PROXIMITY_ROOM
+    while True:
+        marked, across = crowded(mesh.corners, mesh.conductor, mesh.feature)
+        if not marked.any() or len(mesh.conductor) + marked.sum() > most:
+            return mesh
+        mesh, _ = mesh.refine(marked, across)

@@ -9,6 +9,8 @@ STOPPED_BY = {
     "rounds": "further rounds no longer shrink the bars; raise the tolerance or simplify the mesh",
     "breakdown": "the equations could not be solved on a finer mesh; raise the tolerance, or mend "
     "very thin gaps and slivers (bem inspect shows them)",
+    "input-rounding": "the numbers of the input files are rounded too coarsely for this tolerance; "
+    "export them with more digits, or nearer to the origin, or raise the tolerance",
     "interrupt": "interrupted; this is the best result so far, run again to reach the tolerance",
 }
 """Every value of ``CapacitanceResult.stopped_by``, with the remedy in words."""
