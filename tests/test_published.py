@@ -1,0 +1,266 @@
+"""Values known from outside the package, on files and shapes, with limits on the panels.
+
+Sources are named in the records of ``reference_values``; what no record holds is checked
+against bounds that are theorems and against a tighter run.
+"""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+from made_bodies import cube
+from reference_formulas import (
+    box_half_mean_width,
+    cylinder_fit,
+    cylinder_half_mean_width,
+    plate_bound,
+    volume_radius,
+)
+from reference_values import BY_NAME
+from scenes import (
+    AXIS,
+    in_lengths,
+    meshed_box,
+    meshed_plate,
+    moved,
+    one_quad_per_face,
+    scene_from_files,
+    scene_of,
+    scene_of_reference,
+    sliver_plate,
+    slivers,
+)
+
+import bem
+from bem.geometry import shapes
+from bem.geometry.surface import Surface
+from bem.scene.placing import rotation
+
+RECORDS = (
+    "unit cube, published",
+    "unit cube",
+    "unit square",
+    "rectangle 1 x 2",
+    "solid cylinder, half length 0.25",
+    "solid cylinder, half length 1",
+    "solid cylinder, half length 4",
+    "open tube, half length 1",
+    "annulus 0.5, 1",
+    "two unit plates, gap 0.01",
+    "two unit plates, gap 0.1",
+    "two unit plates, gap 1",
+    "two thick discs",
+    "guard ring",
+)
+CUBES = {
+    "12 triangles": cube(),
+    "fine": meshed_box(6),
+    "irregular": meshed_box(4, jitter=0.3, seed=1),
+    "slivers": slivers(30),
+}
+SHEETS = {
+    "2 triangles": meshed_plate(1),
+    "fine": meshed_plate(8),
+    "irregular": meshed_plate(7, jitter=0.3, seed=2),
+    "slivers": sliver_plate(30),
+}
+CUBE, SQUARE = BY_NAME["unit cube"].matrix, BY_NAME["unit square"].matrix
+
+
+def check(result: bem.CapacitanceResult, exact: np.ndarray, slack: float) -> None:
+    """Require every entry to be within its bar and the tolerance, and so the row sums."""
+    size = np.sqrt(np.diag(exact))
+    scale = np.outer(size, size)
+    apart = np.abs(in_lengths(result.capacitance) - exact)
+    assert result.converged
+    assert np.all(apart <= result.tolerance * scale + slack), apart / scale
+    assert np.all(apart <= in_lengths(result.error) + slack), apart / in_lengths(result.error)
+    row = np.abs(in_lengths(result.row_sum) - exact.sum(axis=1))
+    assert np.all(row <= in_lengths(result.row_sum_error) + len(exact) * slack)
+
+
+@pytest.mark.parametrize("name", RECORDS)
+def test_records_at_a_thousandth(name: str) -> None:
+    record = BY_NAME[name]
+    result = bem.extract(scene_of_reference(record), tolerance=1e-3, threads=1)
+    check(result, record.matrix, record.uncertainty)
+
+
+@pytest.mark.parametrize("degrees", [0.0, 37.0])
+@pytest.mark.parametrize("name", CUBES)
+def test_cube_from_a_file_at_a_thousandth(tmp_path: Path, name: str, degrees: float) -> None:
+    """However it is meshed, turned and shifted: the same value with at most 700 panels."""
+    scene = scene_from_files(tmp_path, [moved(CUBES[name], degrees)])
+    result = bem.extract(scene, tolerance=1e-3, threads=1)
+    check(result, CUBE, 0.0)
+    assert result.panels <= 700
+
+
+@pytest.mark.parametrize("name", ["12 triangles", "irregular"])
+def test_cube_from_a_file_at_a_ten_thousandth(tmp_path: Path, name: str) -> None:
+    scene = scene_from_files(tmp_path, [moved(CUBES[name], 71.0)])
+    result = bem.extract(scene, tolerance=1e-4, threads=1)
+    check(result, CUBE, 0.0)
+    assert result.panels <= 1500
+
+
+@pytest.mark.parametrize("tolerance", [1e-2, 1e-3, 1e-4])
+def test_cube_of_one_quadrilateral_per_face(tolerance: float) -> None:
+    """The coarsest mesh there is does not stall."""
+    result = bem.extract(scene_of([one_quad_per_face()]), tolerance=tolerance, threads=1)
+    check(result, CUBE, 0.0)
+
+
+@pytest.mark.parametrize("degrees", [0.0, 37.0])
+@pytest.mark.parametrize("name", SHEETS)
+def test_sheet_from_a_file_at_a_ten_thousandth(tmp_path: Path, name: str, degrees: float) -> None:
+    scene = scene_from_files(tmp_path, [moved(SHEETS[name], degrees)])
+    result = bem.extract(scene, tolerance=1e-4, threads=1)
+    check(result, SQUARE, BY_NAME["unit square"].uncertainty)
+    assert result.panels <= 1500
+
+
+def above(surface: Surface, gap: float, aside: float = 0.0, degrees: float = 0.0) -> Surface:
+    """Turn a body about z and move it up and aside."""
+    return surface.placed(rotation((0.0, 0.0, 1.0), degrees), np.array([aside, 0.0, gap]))
+
+
+def block(center: tuple[float, float, float] = (0.0, 0.0, 0.0)) -> Surface:
+    return shapes.box(1.0, 1.0, 0.1, center)
+
+
+@pytest.mark.parametrize("mesh", ["2 triangles", "irregular"])
+@pytest.mark.parametrize("gap", [0.1, 0.01])
+@pytest.mark.parametrize("degrees", [0.0, 37.0])
+def test_plates_from_files(tmp_path: Path, mesh: str, gap: float, degrees: float) -> None:
+    """Aligned plates, turned in space together, within 800 panels."""
+    record = BY_NAME[f"two unit plates, gap {gap:g}"]
+    pair = [moved(SHEETS[mesh], degrees), moved(above(SHEETS[mesh], gap), degrees)]
+    result = bem.extract(scene_from_files(tmp_path, pair), tolerance=1e-3, threads=1)
+    check(result, record.matrix, record.uncertainty)
+    assert result.panels <= 800
+
+
+@pytest.mark.parametrize("mesh", ["2 triangles", "irregular"])
+@pytest.mark.parametrize("gap", [1e-3, 1e-5])
+def test_plates_very_close(tmp_path: Path, mesh: str, gap: float) -> None:
+    """Between area / gap and that with Kirchhoff's fringe (1877) along the rim, enlarged.
+
+    Both plates together have the capacitance of one thin body, which is bounded as well.
+    """
+    pair = [SHEETS[mesh], above(SHEETS[mesh], gap)]
+    result = bem.extract(scene_from_files(tmp_path, pair), tolerance=1e-3, threads=1)
+    length, bar = in_lengths(result.capacitance), in_lengths(result.error).max()
+    between = 0.25 * (length[0, 0] + length[1, 1] - 2.0 * length[0, 1])
+    ideal = 1.0 / (4.0 * np.pi * gap)
+    fringe = 4.0 * np.log(2.0 * np.pi * np.e / gap) / (2.0 * np.pi) * gap
+    assert result.converged
+    assert ideal - bar <= between <= ideal * (1.0 + fringe) + bar
+    assert bar <= 1e-3 * length[0, 0]
+    assert result.panels <= 800
+    outside = in_lengths(result.row_sum).sum()
+    slack = in_lengths(result.row_sum_error).sum()
+    assert SQUARE[0, 0] - slack <= outside <= box_half_mean_width((1.0, 1.0, gap)) + slack
+
+
+PAIRS = {
+    "plates offset by half, gap 0.1": (shapes.plate(1.0, 1.0), 0.1, {"aside": 0.5}),
+    "plates offset by half, gap 0.01": (shapes.plate(1.0, 1.0), 0.01, {"aside": 0.5}),
+    "plates offset by half, gap 0.001": (shapes.plate(1.0, 1.0), 0.001, {"aside": 0.5}),
+    "strip over a plate, gap 0.005": (shapes.plate(0.02, 1.0), 0.005, {}),
+    "strip over a plate, gap 0.001": (shapes.plate(0.02, 1.0), 0.001, {}),
+    "irregular plates, offset": (meshed_plate(5, 0.3, 3), 0.01, {"aside": 0.5}),
+    "plates turned by 30 degrees, gap 0.1": (shapes.plate(1.0, 1.0), 0.1, {"degrees": 30.0}),
+}
+BOXES = {
+    "boxes, gap 0.01": [block(), block((0.0, 0.0, 0.11))],
+    "boxes, gap 0.001": [block(), block((0.0, 0.0, 0.101))],
+    "boxes offset by half, gap 0.01": [block(), block((0.5, 0.0, 0.11))],
+    "boxes at an edge": [block(), block((1.01, 0.0, 0.0))],
+}
+CASES = {
+    name: [shapes.plate(1.0, 1.0), above(other, gap, **how)]
+    for name, (other, gap, how) in PAIRS.items()
+} | BOXES
+
+
+def bars_meet(result: bem.CapacitanceResult, tight: bem.CapacitanceResult) -> None:
+    """Require two results to agree within both bars, in every entry and row sum."""
+    apart = np.abs(result.capacitance - tight.capacitance)
+    assert np.all(apart <= result.error + tight.error)
+    size = np.sqrt(np.diag(tight.capacitance))
+    assert np.all(apart <= (result.tolerance + tight.tolerance) * np.outer(size, size))
+    rows = np.abs(result.row_sum - tight.row_sum)
+    assert np.all(rows <= result.row_sum_error + tight.row_sum_error)
+
+
+@pytest.mark.parametrize("name", CASES)
+def test_close_pairs_agree_with_a_tighter_run(name: str) -> None:
+    """Turned in space at 1e-3 against a run with another mesh at 1e-4."""
+    scene = scene_of([moved(s) for s in CASES[name]])
+    result = bem.extract(scene, tolerance=1e-3, threads=1)
+    tight = bem.extract(scene_of(CASES[name]), tolerance=1e-4, threads=1)
+    assert result.converged and tight.converged
+    assert result.panels <= 800
+    bars_meet(result, tight)
+
+
+@pytest.mark.parametrize("half_length", [0.5, 2.0])
+def test_cylinders_agree_with_the_published_fit(half_length: float) -> None:
+    """Smythe (J. Appl. Phys. 27, 917, 1956; 33, 2966, 1962): his fit holds within 0.6 %."""
+    rod = shapes.cylinder(1.0, 2.0 * half_length)
+    result = bem.extract(scene_of([rod]), tolerance=1e-3, threads=1)
+    fit = cylinder_fit(1.0, half_length)
+    assert abs(in_lengths(result.capacitance[0, 0]) / fit - 1.0) < 6e-3 + 1e-3
+
+
+BOUNDED = {
+    "box 1 x 2 x 3": (
+        shapes.box(1.0, 2.0, 3.0),
+        volume_radius(6.0),
+        box_half_mean_width((1, 2, 3)),
+    ),
+    "slab": (shapes.box(1.0, 1.0, 0.05), plate_bound(1.0), box_half_mean_width((1, 1, 0.05))),
+    "rectangle": (shapes.plate(1.0, 3.0), plate_bound(3.0), box_half_mean_width((1, 3, 0))),
+    "cylinder": (
+        shapes.cylinder(1.0, 3.0),
+        volume_radius(3.0 * np.pi),
+        cylinder_half_mean_width(1.0, 1.5),
+    ),
+}
+
+
+@pytest.mark.parametrize("name", BOUNDED)
+def test_isoperimetric_bounds(name: str) -> None:
+    """Polya and Szego (1951): above the ball or disc of its size, below half the mean width."""
+    surface, low, high = BOUNDED[name]
+    result = bem.extract(scene_of([surface]), tolerance=1e-3, threads=1)
+    assert low < in_lengths(result.capacitance[0, 0]) < high
+
+
+AWKWARD = {
+    "strip of 1000 : 1": [shapes.plate(1000.0, 1.0)],
+    "rod of 100 : 1": [shapes.box(100.0, 1.0, 1.0)],
+    "needle triangles": [sliver_plate(500)],
+    "sizes of 1 to 10000": [shapes.box(1.0, 1.0, 1.0), shapes.box(1e-4, 1e-4, 1e-4, (0, 0, 0.51))],
+}
+
+
+@pytest.mark.parametrize("name", AWKWARD)
+def test_awkward_bodies_converge(name: str) -> None:
+    result = bem.extract(scene_of([moved(s) for s in AWKWARD[name]]), tolerance=1e-3, threads=1)
+    tight = bem.extract(scene_of(AWKWARD[name]), tolerance=1e-4, threads=1)
+    assert result.converged
+    assert np.linalg.eigvalsh(result.capacitance)[0] > 0.0
+    bars_meet(result, tight)
+
+
+def test_plate_with_a_corner_just_off_its_edge() -> None:
+    """A point 1e-9 beside an edge of the file changes nothing."""
+    points = [(0, 0, 0), (1, 0, 0), (1, 1, 0), (0, 1, 0), (0.5, 1e-9, 0)]
+    faces = [(0, 4, 3, -1), (4, 2, 3, -1), (4, 1, 2, -1)]
+    nicked = Surface(np.array(points, dtype=float), np.array(faces))
+    nicked = nicked.placed(rotation(AXIS, 11.0), np.zeros(3))
+    check(bem.extract(scene_of([nicked]), tolerance=1e-3, threads=1), SQUARE, 2e-7)
