@@ -23,6 +23,7 @@ class Entry:
         bar: its error bar.
         truth: what it should be.
         slack: what is not known of the truth.
+        size: what the tolerance is relative to: sqrt(L_ii L_jj), L_ii for a row sum.
     """
 
     case: str
@@ -35,6 +36,7 @@ class Entry:
     bar: float
     truth: float
     slack: float
+    size: float
 
     @property
     def error(self) -> float:
@@ -74,7 +76,7 @@ class _Row:
     def text(self) -> str:
         o, e = self.outcome, self.worst
         mark = "inside" if e.inside else "OUTSIDE"
-        share = f"{e.error / abs(e.truth):9.1e} {e.bar / abs(e.truth):9.1e}"
+        share = f"{e.error / e.size:9.1e} {e.bar / e.size:9.1e}"
         stop = "" if o.stopped_by == "tolerance" else o.stopped_by
         return (
             f"{o.tolerance:6.0e} {o.panels:6d} {o.seconds:6.2f} s {share} {e.ratio:9.2f} "
@@ -121,7 +123,8 @@ def _groups(entries: list[Entry]) -> Iterable[tuple[str, list[Entry]]]:
 
 def print_report(entries: list[Entry], outcomes: list[Outcome], left_out: dict[str, str]) -> None:
     """Print extractions from the worst bar to the best, what is left out, and the totals."""
-    print("per extraction, its entry with the smallest bar over error; error and bar relative")
+    print("per extraction, its entry with the smallest bar over error; error and bar over what")
+    print("the tolerance is relative to")
     print("     t panels  seconds     error       bar bar/error")
     for row in _rows(entries, outcomes):
         print(row.text)

@@ -105,13 +105,15 @@ def compare(session: Session, solved: Solved, truth: Truth, extra: float) -> Non
     """Note every entry of a result once; ``extra`` is relative slack of each."""
     n = len(solved.value)
     slack = truth.slack + extra * np.abs(truth.columns)
+    root = np.sqrt(np.diagonal(truth.columns))
+    size = columns(np.outer(root, root), root**2)
     for i in range(n):
         for j in range(i, n + (n > 1)):
             kind = "diagonal" if i == j else "row sum" if j == n else "off-diagonal"
             entry = Entry(
                 solved.outcome.case, solved.outcome.tolerance, kind, truth.published, i, j,
                 float(solved.value[i, j]), float(solved.bar[i, j]),
-                float(truth.columns[i, j]), float(slack[i, j]),
+                float(truth.columns[i, j]), float(slack[i, j]), float(size[i, j]),
             )  # fmt: skip
             _note(session, entry)
 
@@ -156,7 +158,9 @@ def run_slope(session: Session, slope: Slope, tolerance: float) -> None:
     session.outcomes.extend(solved.outcome for solved in two)
     _note(
         session,
-        Entry(slope.name, tolerance, "slope", True, 0, 0, value, bar, slope.exact, 1e-6),
+        Entry(
+            slope.name, tolerance, "slope", True, 0, 0, value, bar, slope.exact, 1e-6, slope.exact
+        ),
     )
 
 
@@ -198,9 +202,9 @@ def main() -> None:
     options = parser.parse_args()
     session = Session()
     run_all(session, options.tolerance or list(TOLERANCES), options.only)
-    print_report(session.entries, session.outcomes, session.left_out)
     if options.out:
         save(session, options.out)
+    print_report(session.entries, session.outcomes, session.left_out)
 
 
 if __name__ == "__main__":
