@@ -20,6 +20,8 @@ POINTS = 200
 WILD = 0.05
 """A mean residual above this says that the solution is not one."""
 ASYMMETRY = 1e-3
+WRONG_SIGN = 0.01
+"""Up to this part of the largest entry a wrong sign widens the bar; beyond, it is no solution."""
 
 
 @dataclass(frozen=True)
@@ -29,11 +31,13 @@ class Audit:
     Args:
         findings: {check: {"value", "limit", "ok"}}.
         extra: relative bar that the energy check adds to every entry.
+        signs: (k, k + 1) what the bars need to reach zero where an entry has the wrong sign.
         wild: lines that make the result an error; empty if it is sound.
     """
 
     findings: dict[str, dict[str, Any]]
     extra: float
+    signs: np.ndarray
     wild: tuple[str, ...]
 
 
@@ -84,20 +88,26 @@ def _finding(value: float, limit: float) -> dict[str, Any]:
     return {"value": float(value), "limit": float(limit), "ok": bool(value <= limit)}
 
 
+def _wrong_signs(found: Estimate) -> np.ndarray:
+    """(k, k + 1) how far entries and row sums lie beyond their bars on the forbidden side."""
+    beyond = found.value - found.bar
+    np.fill_diagonal(beyond, 0.0)
+    beyond[:, -1] = -found.value[:, -1] - found.bar[:, -1]
+    return np.maximum(beyond, 0.0)
+
+
 def audit(solution: Solution, found: Estimate) -> Audit:
     """Check a solution and its matrix."""
     count = len(found.value)
-    square, bar = found.value[:, :count], found.bar[:, :count]
     mean, error, rms = _energy_check(solution)
-    off = ~np.eye(count, dtype=bool)
-    positive = float((square - bar)[off].max(initial=0.0) / np.diagonal(square).max())
-    negative = float((-found.value[:, -1] - found.bar[:, -1]).max(initial=0.0) / np.diagonal(square).max())
+    signs = _wrong_signs(found)
+    largest = np.diagonal(found.value).max()
     findings = {
         "mean_residual": _finding(mean, max(WILD, 5.0 * error)),
         "rms_residual": _finding(rms, 0.5),
         "asymmetry_before_averaging": _finding(_raw_asymmetry(solution), ASYMMETRY),
-        "positive_coupling": _finding(positive, 0.0),
-        "negative_row_sum": _finding(negative, 0.0),
+        "positive_coupling": _finding(signs[:, :count].max() / largest, WRONG_SIGN),
+        "negative_row_sum": _finding(signs[:, -1].max() / largest, WRONG_SIGN),
     }
     wild = tuple(
         f"{name.replace('_', ' ')} is {f['value']:.2g}, the limit is {f['limit']:.2g}"
@@ -105,4 +115,4 @@ def audit(solution: Solution, found: Estimate) -> Audit:
         if not f["ok"]
     )
     extra = max(mean - 4.0 * error, 0.0)
-    return Audit(findings, extra, wild)
+    return Audit(findings, extra, signs, wild)

@@ -152,10 +152,12 @@ def _result(
     seconds, settings, notes = context
     last, farad, count = run.rounds[-1], scaled.farad, run.count
     value = farad * last.found.value
-    bar = farad * last.found.bar + findings.extra * np.abs(value)
+    bar = farad * (last.found.bar + findings.signs) + findings.extra * np.abs(value)
     warnings = list(notes)
     if findings.extra > 0.0:
         warnings.append(f"the energy check adds {findings.extra:.1e} of each entry to its bar")
+    if findings.signs.any():
+        warnings.append("an entry had the wrong sign by more than its bar, which now reaches zero")
     converged = run.stopped_by == "tolerance" and findings.extra == 0.0
     budget = {name: farad * part[:, :count] for name, part in last.found.parts.items()}
     return CapacitanceResult(
