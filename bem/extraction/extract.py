@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import math
 import time
 from collections.abc import Callable
 from dataclasses import asdict
+from numbers import Integral, Real
 from typing import Any
 
 import numpy as np
@@ -96,27 +98,29 @@ def extract(
 def _goal(scene: Scene, tolerance: float, pairs: dict[tuple[str, str], float]) -> Goal:
     if not scene.conductors:
         raise UsageError("the scene has no conductors: add at least one")
-    if not (isinstance(tolerance, (int, float)) and TIGHTEST <= tolerance <= 0.5):
+    if not (isinstance(tolerance, Real) and TIGHTEST <= tolerance <= 0.5):
         raise UsageError(f"tolerance: found {tolerance!r}, allowed is {TIGHTEST:g} to 0.5")
     names = [c.name for c in scene.conductors]
     wanted = []
     for pair, accuracy in pairs.items():
+        if not (isinstance(pair, tuple) and len(pair) == 2):
+            raise UsageError(f"pair: found {pair!r}, needs a tuple of two names of conductors")
         for name in pair:
             if name not in names:
                 raise UsageError(f"pair: no conductor is named {name!r}; there are {', '.join(names)}")
         if pair[0] == pair[1]:
             raise UsageError(f"pair: found {pair[0]!r} twice, needs two different conductors")
-        if not TIGHTEST <= accuracy <= 1.0:
+        if not (isinstance(accuracy, Real) and TIGHTEST <= accuracy <= 1.0):
             raise UsageError(f"pair: found accuracy {accuracy!r}, allowed is {TIGHTEST:g} to 1")
         wanted.append((names.index(pair[0]), names.index(pair[1]), float(accuracy)))
     return Goal(float(tolerance), tuple(wanted))
 
 
 def _check_counts(max_panels: int, memory: int | None) -> None:
-    if max_panels < 1:
-        raise UsageError(f"max_panels: found {max_panels}, needs at least 1")
-    if memory is not None and memory < 1:
-        raise UsageError(f"memory: found {memory} bytes, needs at least 1")
+    if not (isinstance(max_panels, Integral) and max_panels >= 1):
+        raise UsageError(f"max_panels: found {max_panels!r}, needs a whole number of at least 1")
+    if memory is not None and not (isinstance(memory, Real) and 1 <= memory < math.inf):
+        raise UsageError(f"memory: found {memory!r} bytes, needs a number of at least 1")
 
 
 def _must_compile() -> bool:

@@ -9,6 +9,7 @@ from __future__ import annotations
 import os
 from collections.abc import Iterator
 from contextlib import contextmanager
+from numbers import Integral
 
 import numba
 from threadpoolctl import threadpool_limits
@@ -31,8 +32,8 @@ def use_threads(asked: int | None) -> Iterator[int]:
         UsageError: less than one thread, or more than the compiled code was started with.
     """
     most = int(numba.config.NUMBA_NUM_THREADS)
-    if asked is not None and not 1 <= asked <= most:
-        raise UsageError(f"threads: found {asked}, allowed is 1 to {most} on this machine")
+    if asked is not None and not (isinstance(asked, Integral) and 1 <= asked <= most):
+        raise UsageError(f"threads: found {asked!r}, allowed is 1 to {most} on this machine")
     count = asked if asked is not None else min(most, usable_cores())
     before = numba.get_num_threads()
     numba.set_num_threads(count)
