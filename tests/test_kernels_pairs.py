@@ -64,13 +64,13 @@ SPANS = {
 
 
 @pytest.mark.parametrize("height", [1e-3, 0.1, 1.0])
-@pytest.mark.parametrize(("u", "v"), itertools.combinations_with_replacement(SPANS, 2))
+@pytest.mark.parametrize(("u", "v"), list(itertools.combinations_with_replacement(SPANS, 2)))
 def test_parallel_rectangles(u: str, v: str, height: float) -> None:
     """All relative positions in projection, at three distances of the planes."""
     assert off_by(near_pair, SQUARE, rectangle(SPANS[u], SPANS[v], height)) < CLOSED
 
 
-@pytest.mark.parametrize(("u", "v"), itertools.product(("apart", "touching"), SPANS))
+@pytest.mark.parametrize(("u", "v"), list(itertools.product(("apart", "touching"), SPANS)))
 def test_rectangles_in_one_plane(u: str, v: str) -> None:
     """Side by side, sharing a side or a part of one or a corner, and apart."""
     assert off_by(near_pair, SQUARE, rectangle(SPANS[u], SPANS[v])) < CLOSED
