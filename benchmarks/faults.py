@@ -8,7 +8,7 @@ POTENTIAL = ("test_kernels_potential.py",)
 PAIRS = ("test_kernels_pairs.py",)
 FILL = ("test_kernels_fill.py",)
 TARGETS = ("test_kernels_targets.py",)
-WHOLE = ("test_exact*.py", "test_published*.py", "test_invariants*.py")
+WHOLE = ("test_extraction*.py", "test_exact*.py", "test_published*.py", "test_invariants*.py")
 
 
 @dataclass(frozen=True)
