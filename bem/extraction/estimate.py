@@ -1,7 +1,7 @@
 """The reported value and its error bar, from the rounds so far.
 
     X   = L + kappa S + F
-    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + inner sqrt(L_ii L_jj) + r
+    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + FLOOR sqrt(L_ii L_jj) + r
 
 S and Sabs are the signed and absolute summed indicator, F the faceting effect, q the
 quadrature effect, r that of rounded input. One kappa serves the whole matrix: the slope of L against S over the last
@@ -95,20 +95,15 @@ def _extrapolated(rounds: list[Sums]) -> np.ndarray:
     return last.value + _kappa(rounds)[0] * last.signed + last.faceting
 
 
-def estimate(rounds: list[Sums], inner: float = FLOOR) -> Estimate:
-    """Value and bar after the last of ``rounds``.
-
-    Args:
-        rounds: what every round so far says.
-        inner: relative error that the operator's integrals were allowed.
-    """
+def estimate(rounds: list[Sums]) -> Estimate:
+    """Value and bar after the last of ``rounds``."""
     last = rounds[-1]
     value = _extrapolated(rounds)
     kappa, doubt = _kappa(rounds)
     earlier = [_extrapolated(rounds[:n]) for n in range(max(1, len(rounds) - 2), len(rounds))]
     drift = np.max([np.abs(value - x) for x in earlier], axis=0) if earlier else np.abs(value)
     root = np.sqrt(np.diagonal(last.value))
-    floor = max(inner, FLOOR) * root[:, None] * np.append(root, np.sqrt(max(last.value[:, -1].sum(), 0.0)))
+    floor = FLOOR * root[:, None] * np.append(root, np.sqrt(max(last.value[:, -1].sum(), 0.0)))
     facets = facet_doubt(last.faceting, last.value)
     parts = {
         "discretisation": (SHARE + DOUBT * doubt) * last.absolute,

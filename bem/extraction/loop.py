@@ -14,7 +14,7 @@ from bem.extraction.marking import Goal, indicator, mark
 from bem.extraction.memory import MemoryPlan
 from bem.extraction.progress import Progress
 from bem.extraction.solution import Solution, Sums, solve_round, sums
-from bem.operators.dense import INNER, Reuse
+from bem.operators.dense import Reuse, far_reach
 from bem.panels.mesh import Mesh
 
 MOST_ROUNDS = 60
@@ -93,15 +93,26 @@ class Run:
     def _round(self, mesh: Mesh, origin: np.ndarray | None) -> tuple[np.ndarray, Mesh]:
         panels = len(mesh.conductor)
         self.tell("solving", panels)
-        reuse = Reuse(self.rounds[-1].solution.operator, origin) if origin is not None else None
-        solution = solve_round(mesh, self.count, self.goal.tolerance, reuse)
+        solution = solve_round(mesh, self.count, self._far(), self._reuse(origin))
         self._keep(solution)
         return self._refine(mesh, solution)
+
+    def _far(self) -> float:
+        """Where expansions begin; the first round shows how much they must be trusted with."""
+        cancellation = self.rounds[0].sums.cancellation if self.rounds else 1.0
+        return far_reach(self.goal.tolerance, cancellation)
+
+    def _reuse(self, origin: np.ndarray | None) -> Reuse | None:
+        """What the round before can give, if it is as accurate as this one must be."""
+        if origin is None:
+            return None
+        earlier = self.rounds[-1].solution.operator
+        return Reuse(earlier, origin) if earlier.far == self._far() else None
 
     def _keep(self, solution: Solution) -> None:
         """Estimate the round, and let go of the matrices of the one before."""
         here = sums(solution)
-        found = estimate([r.sums for r in self.rounds] + [here], INNER * self.goal.tolerance)
+        found = estimate([r.sums for r in self.rounds] + [here])
         worst = float(self.goal.worst(found).max())
         if len(self.rounds) + 1 < ROUNDS:
             worst = max(worst, 1.0 + 1e-9)

@@ -64,11 +64,11 @@ def with_all(columns: np.ndarray) -> np.ndarray:
     return np.concatenate([columns, columns.sum(axis=-1, keepdims=True)], axis=-1)
 
 
-def solve_round(mesh: Mesh, count: int, tolerance: float, reuse: Reuse | None) -> Solution:
+def solve_round(mesh: Mesh, count: int, far: float, reuse: Reuse | None) -> Solution:
     """Assemble, solve and test the residual on a mesh of ``count`` conductors."""
     panels = panel_arrays(mesh.corners)
     targets = make_targets(panels)
-    operator = DenseOperator(panels, targets, tolerance, reuse)
+    operator = DenseOperator(panels, targets, far, reuse)
     right = panels.area[:, None] * incidence(mesh.conductor, count)
     density = solve_dense(operator, right)
     energy = indicator_energies(panels, targets)
@@ -85,7 +85,8 @@ class Sums:
         value: L from the density.
         signed: summed indicator.
         absolute: summed absolute indicator.
-        quadrature: effect of choosing between the two rows of each pair.
+        quadrature: effect of choosing between the two rows of each pair, and of expansions.
+        cancellation: energy of charges of one sign over that of the true ones, the largest.
         faceting: first-order effect of the true surface lying off the panels.
         rounding: largest effect of the rounded numbers of the input files.
     """
@@ -95,6 +96,7 @@ class Sums:
     signed: np.ndarray
     absolute: np.ndarray
     quadrature: np.ndarray
+    cancellation: float
     faceting: np.ndarray
     rounding: np.ndarray
 
@@ -108,13 +110,16 @@ def sums(solution: Solution) -> Sums:
     value = 0.5 * (value + value.T)
     w = solution.residual.reshape(-1, count)
     every = with_all(w)
-    quadrature = np.abs(solution.operator.asymmetry(density))
+    operator = solution.operator
+    magnitude = operator.magnitude(density, with_all(density))
+    rows = with_all(np.abs(operator.asymmetry(density)))
     return Sums(
         panels=len(area),
         value=with_all(value),
         signed=w.T @ every,
         absolute=np.abs(w).T @ np.abs(every),
-        quadrature=with_all(quadrature),
+        quadrature=rows + 2.0 * operator.far_error * magnitude,
+        cancellation=float((np.diagonal(magnitude) / np.diagonal(value)).max()),
         faceting=faceting_effect(solution),
         rounding=rounding_effect(solution),
     )

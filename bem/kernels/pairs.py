@@ -31,8 +31,11 @@ ALIGNED = 1e-7
 """Directions closer than this (sine or cosine) count as parallel or perpendicular."""
 CLOSED_LOSS = 1e8
 """Closed forms lose about extent^4/(area * area) in relative accuracy; beyond this they are not used."""
-SIDES_LOSS = 1e4
-"""The same for the side-pair integrals, which lose extent^2 * length * length/(area * area)."""
+SIDES_LOSS, CROSSING_LOSS = 1e4, 1e9
+"""The same for the side-pair integrals, which lose extent^2 * length * length/(area * area);
+and where thin panels cross at a small distance, which samples would miss."""
+KINKS = 1.0
+"""Parallel panels nearer than this times the smaller radius shadow each other's samples."""
 
 
 def _clustered(n: int, wide: bool) -> tuple[np.ndarray, np.ndarray]:
@@ -240,9 +243,13 @@ def near_pair(i: int, j: int, panels: PanelArrays) -> float:
     boxes = half[i, 0] > 0.0 and half[j, 0] > 0.0 and extent**4 < CLOSED_LOSS * areas
     if boxes and _sides_aligned(i, j, axes):
         return _parallel(i, j, panels, gap) if facing > 0.5 else _perpendicular(i, j, panels, gap)
-    reach = extent**2 * 4.0 * panels.radius[i] * panels.radius[j]
-    if facing > 1.0 - ALIGNED**2 * 50.0 and reach < SIDES_LOSS * areas:
-        return coplanar_pair(i, j, panels)
+    if facing > 1.0 - ALIGNED**2 * 50.0:
+        reach = extent**2 * 4.0 * panels.radius[i] * panels.radius[j]
+        height = abs(_dot(gap, axes[j, 2]))
+        shorter = min(panels.radius[i], panels.radius[j])
+        kinks = 1e-9 * shorter < height < KINKS * shorter
+        if reach < (CROSSING_LOSS if kinks else SIDES_LOSS) * areas:
+            return coplanar_pair(i, j, panels)
     if panels.radius[i] <= panels.radius[j]:
         return clustered_pair(i, j, panels)
     return clustered_pair(j, i, panels)

@@ -14,11 +14,14 @@ BYTES_PER_ENTRY = 8 + 16
 """A in double, four tests in single precision."""
 NEAR = 1.5
 """Pairs nearer than this times the sum of both radii are integrated exactly."""
-FAR_AT_MILLI = 2.5
-"""Expansions begin at this times both radii for a tolerance of 1e-3. They then move C by at
-most 1e-5 of itself (measured on six scenes), less with about the eighth power of the distance."""
-INNER = 1e-2
-"""Part of the tolerance that the operator's own error may take."""
+LEAST_FAR = 2.5
+"""Expansions never begin nearer than this times both radii."""
+FAR_ERROR, FAR_ORDER = 1e-7, 6
+"""Error of the energy from expansions at LEAST_FAR, over the energy without cancellation
+(measured on facing plates turned against each other), and the power of the distance with
+which it falls."""
+INNER = 2e-2
+"""Part of the tolerance that the expansions may take."""
 
 
 @dataclass(frozen=True)
@@ -34,9 +37,17 @@ class Reuse:
     origin: np.ndarray
 
 
-def far_reach(tolerance: float) -> float:
-    """Distance over the sum of radii beyond which expansions serve a tolerance."""
-    return float(np.clip(FAR_AT_MILLI * (1e-3 / tolerance) ** 0.125, 2.2, 8.0))
+def far_reach(tolerance: float, cancellation: float = 1.0) -> float:
+    """Distance over the sum of radii beyond which expansions serve a tolerance.
+
+    Args:
+        tolerance: of the final value.
+        cancellation: energy that charges of one sign would have over that of the true ones;
+            large where opposite charges face each other across a thin gap.
+    """
+    plain = LEAST_FAR * (1e-3 / tolerance) ** 0.125
+    needed = LEAST_FAR * (FAR_ERROR * cancellation / (INNER * tolerance)) ** (1.0 / FAR_ORDER)
+    return float(np.clip(max(plain, needed), LEAST_FAR, 12.0))
 
 
 def _empty(n: int) -> pairs.Matrices:
@@ -49,19 +60,20 @@ class DenseOperator:
     Args:
         panels: geometry, n panels.
         targets: samples and tests of the same panels.
-        tolerance: of the final value; sets where expansions begin.
-        reuse: an earlier operator made with the same tolerance.
+        far: distance over the sum of radii where expansions begin.
+        reuse: an earlier operator, made with the same ``far``.
     """
 
     def __init__(
-        self, panels: PanelArrays, targets: Targets, tolerance: float, reuse: Reuse | None = None
+        self, panels: PanelArrays, targets: Targets, far: float, reuse: Reuse | None = None
     ) -> None:
         n = len(panels.area)
         self.radius = panels.radius
         self.matrices = _empty(n)
         known = reuse.operator.matrices if reuse is not None else _empty(0)
         origin = reuse.origin if reuse is not None else np.full(n, -1)
-        reach = np.array([NEAR, far_reach(tolerance)])
+        self.far = far
+        reach = np.array([NEAR, far])
         self.sampled_pairs = int(pairs.fill(panels, targets, reach, origin, known, self.matrices))
 
     @property
@@ -91,3 +103,12 @@ class DenseOperator:
     def asymmetry(self, density: np.ndarray) -> np.ndarray:
         """(k, k) energy that the choice between both rows of each pair decides."""
         return pairs.asymmetry(self.matrices.single, self.radius, np.ascontiguousarray(density))
+
+    @property
+    def far_error(self) -> float:
+        """Relative error of the energy of charges of one sign that expansions may cause."""
+        return FAR_ERROR * (LEAST_FAR / self.far) ** FAR_ORDER
+
+    def magnitude(self, left: np.ndarray, right: np.ndarray) -> np.ndarray:
+        """(k, m) energies |left|^T A |right| without cancellation, from (n, k) and (n, m)."""
+        return np.abs(left).T @ (self.matrices.single @ np.abs(right))

@@ -23,5 +23,12 @@ class Operator(Protocol):
     def near_rows(self, rows: np.ndarray) -> np.ndarray:
         """Rows (r, n) of the operator, for preconditioners and checks."""
 
+    @property
+    def far_error(self) -> float:
+        """Relative error of the energy of charges of one sign that approximations may cause."""
+
+    def magnitude(self, left: np.ndarray, right: np.ndarray) -> np.ndarray:
+        """(k, m) energies without cancellation, |left|^T A |right|."""
+
     def asymmetry(self, density: np.ndarray) -> np.ndarray:
         """(k, k) energy that the choice between both rows of each pair decides."""
