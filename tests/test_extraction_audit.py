@@ -149,8 +149,11 @@ def doctor_the_solver(monkeypatch: pytest.MonkeyPatch, factor: float) -> None:
     monkeypatch.setattr(loop, "solve_round", solve)
 
 
+@pytest.mark.filterwarnings("ignore:invalid value encountered in sqrt")
 @pytest.mark.parametrize("factor", [-1.0, 0.8, 1.2, 4.0 * np.pi])
-def test_an_extraction_with_a_wrong_solver_ends_in_words(monkeypatch, factor: float) -> None:
+def test_an_extraction_with_a_wrong_solver_ends_in_words(
+    monkeypatch: pytest.MonkeyPatch, factor: float
+) -> None:
     doctor_the_solver(monkeypatch, factor)
     with pytest.raises(bem.SolutionError) as failure:
         bem.extract(scene_of(BODIES), tolerance=1e-2, threads=1)

@@ -140,7 +140,9 @@ def test_goal_compares_bars_with_what_is_allowed() -> None:
     st.integers(1, 50),
 )
 @settings(max_examples=60, deadline=None, derandomize=True)
-def test_marking_takes_the_fewest_panels_that_hold_the_bulk(pairs, bulk, room) -> None:
+def test_marking_takes_the_fewest_panels_that_hold_the_bulk(
+    pairs: list[tuple[float, float]], bulk: float, room: int
+) -> None:
     promise = np.array(pairs).T + 1e-9
     marked, across = mark(promise, bulk, room)
     total = promise.sum(axis=0)

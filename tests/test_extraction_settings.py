@@ -228,7 +228,9 @@ def broken_at(number: int, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(loop, "solve_round", solve)
 
 
-def test_a_breakdown_late_keeps_the_result_and_early_does_not(monkeypatch) -> None:
+def test_a_breakdown_late_keeps_the_result_and_early_does_not(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
     """After enough rounds for a bar the last good one is returned, marked."""
     broken_at(5, monkeypatch)
     result = bem.extract(cube_scene(), tolerance=1e-5, threads=1)

@@ -9,6 +9,7 @@ from panel_shapes import SKEW, SQUARE, TRIANGLE, turned
 from reference_integrals import pair_integral, potential
 
 from bem.geometry import shapes
+from bem.geometry.surface import Surface
 from bem.kernels import pairs
 from bem.kernels.arrays import panel_arrays
 from bem.kernels.targets import make_targets
@@ -174,7 +175,7 @@ def test_operator_applies_its_matrix_and_gives_its_rows() -> None:
 
 
 @pytest.mark.parametrize("surface", [shapes.box(1.0, 0.5, 0.25), shapes.sphere(1.0)])
-def test_reuse_gives_the_very_entries_of_a_fresh_fill(surface) -> None:
+def test_reuse_gives_the_very_entries_of_a_fresh_fill(surface: Surface) -> None:
     """Two refinements on: every entry bit for bit, and fewer pairs computed."""
     mesh = Mesh.start([surface])
     panels = panel_arrays(mesh.corners)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import itertools
 import math
+from collections.abc import Callable
 
 import mpmath as mp
 import numpy as np
@@ -25,11 +26,13 @@ from panel_shapes import (
 )
 from reference_integrals import pair_integral
 
-from bem.kernels.arrays import panel_arrays
+from bem.kernels.arrays import PanelArrays, panel_arrays
 from bem.kernels.pairs import clustered_pair, near_pair
 from bem.kernels.polygons import coplanar_pair, line_integral
 from bem.kernels.rectangles import parallel_pair, perpendicular_pair
 from bem.scene.placing import rotation
+
+Rule = Callable[[int, int, PanelArrays], float]
 
 CLOSED = 1e-11
 SIDES = 2e-8
@@ -38,7 +41,7 @@ SAMPLED = 1e-4
 """Samples clustered at the rim, for panels that are not in parallel planes."""
 
 
-def off_by(rule, first: np.ndarray, second: np.ndarray) -> float:
+def off_by(rule: Rule, first: np.ndarray, second: np.ndarray) -> float:
     """Larger relative error of a rule in either order of the panels."""
     panels = panel_arrays(np.array([first, second]))
     exact = pair_integral(first, second)
@@ -123,7 +126,9 @@ def test_needle_of_aspect_ten_thousand() -> None:
     st.one_of(st.just(0.0), st.floats(1e-6, 2.0)),
 )
 @settings(max_examples=60, deadline=None, derandomize=True)
-def test_parallel_form_is_the_quadrature_anywhere(low, size, height) -> None:
+def test_parallel_form_is_the_quadrature_anywhere(
+    low: tuple[float, float], size: tuple[float, float], height: float
+) -> None:
     """Even where rectangles of one plane overlap, the closed form is the integral."""
     u, v = ((low[k], low[k] + size[k]) for k in range(2))
     ends = [np.array([[0.0 - s[0], 0.0 - s[1]], [1.0 - s[0], 1.0 - s[1]]]) for s in (u, v)]
@@ -138,7 +143,9 @@ def test_parallel_form_is_the_quadrature_anywhere(low, size, height) -> None:
     st.floats(0.0, 1.0),
 )
 @settings(max_examples=40, deadline=None, derandomize=True)
-def test_perpendicular_form_is_the_quadrature_anywhere(low, size, aside, lift) -> None:
+def test_perpendicular_form_is_the_quadrature_anywhere(
+    low: float, size: float, aside: float, lift: float
+) -> None:
     ends = np.array([[0.0 - low, 0.0 - low - size], [1.0 - low, 1.0 - low - size]])
     v, w = np.array([0.0, 1.0]) + aside, np.array([lift, lift + 0.7])
     exact = pair_integral(SQUARE, upright((low, low + size), (lift, lift + 0.7), -aside))
