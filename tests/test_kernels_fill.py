@@ -21,23 +21,18 @@ SINGLE = 2e-6
 """Tests are kept in single precision."""
 
 
-def operator_of(corners: np.ndarray, tolerance: float = 1e-3) -> DenseOperator:
+FAR = far_reach(1e-3)
+
+
+def operator_of(corners: np.ndarray, far: float = FAR) -> DenseOperator:
     panels = panel_arrays(corners)
-    return DenseOperator(panels, make_targets(panels), tolerance)
+    return DenseOperator(panels, make_targets(panels), far)
 
 
 @pytest.fixture
-def only_far(monkeypatch: pytest.MonkeyPatch) -> None:
-    """All pairs of different panels by expansion."""
+def no_near(monkeypatch: pytest.MonkeyPatch) -> None:
+    """No pair of different panels is near: what is not expanded is sampled."""
     monkeypatch.setattr(dense, "NEAR", -1.0)
-    monkeypatch.setattr(dense, "far_reach", lambda tolerance: 0.0)
-
-
-@pytest.fixture
-def only_sampled(monkeypatch: pytest.MonkeyPatch) -> None:
-    """All pairs from the samples of the outer panel."""
-    monkeypatch.setattr(dense, "NEAR", -1.0)
-    monkeypatch.setattr(dense, "far_reach", lambda tolerance: np.inf)
 
 
 def cloud(count: int, seed: int, spread: float = 6.0) -> np.ndarray:
@@ -62,12 +57,12 @@ def distant_pair(distance: float, seed: int) -> np.ndarray:
 def far_error(distance: float, seed: int) -> float:
     """Relative error of the expansion."""
     pair = distant_pair(distance, seed)
-    found = operator_of(pair).matrices.single
+    found = operator_of(pair, 0.0).matrices.single
     return float(np.abs(found[[0, 1], [1, 0]] / pair_integral(*pair) - 1.0).max())
 
 
 @pytest.mark.parametrize("seed", range(6))
-def test_far_expansion_falls_at_least_with_the_fourth_power(only_far: None, seed: int) -> None:
+def test_far_expansion_falls_at_least_with_the_fourth_power(no_near: None, seed: int) -> None:
     """Per doubling of the distance the error falls sixteenfold, or (odd terms) eightfold once."""
     errors = np.array([far_error(d, seed) for d in (2.0, 4.0, 8.0)])
     assert np.all(errors[1:] < errors[:-1] / 7.0)
@@ -75,17 +70,24 @@ def test_far_expansion_falls_at_least_with_the_fourth_power(only_far: None, seed
 
 
 @pytest.mark.parametrize("tolerance", [1e-2, 1e-3, 1e-4])
-def test_expansions_begin_where_they_serve_the_tolerance(only_far: None, tolerance: float) -> None:
+def test_expansions_begin_where_they_serve_the_tolerance(no_near: None, tolerance: float) -> None:
     """At the switch distance a single pair is wrong by less than the tolerance over five."""
     worst = max(far_error(far_reach(tolerance), seed) for seed in range(8))
     assert worst < 0.2 * tolerance
 
 
-def test_middle_pairs_are_the_samples_against_the_exact_potential(only_sampled: None) -> None:
+def test_expansions_begin_farther_out_where_charges_cancel() -> None:
+    """Never nearer for a tighter tolerance or for more cancellation, nor for less than none."""
+    reach = [[far_reach(t, c) for c in (-1.0, 1.0, 1e3, 1e6)] for t in (1e-2, 1e-4, 1e-6)]
+    assert np.all(np.diff(reach, axis=0) >= 0.0) and np.all(np.diff(reach, axis=1) >= 0.0)
+    assert reach[2][3] > reach[0][0] == reach[0][1] >= 2.0
+
+
+def test_middle_pairs_are_the_samples_against_the_exact_potential(no_near: None) -> None:
     """Both rows of every pair, and the tests, from a plain loop with a plain potential."""
     corners = cloud(12, 1)
     targets = make_targets(panel_arrays(corners))
-    found = operator_of(corners).matrices
+    found = operator_of(corners, np.inf).matrices
     for j, panel in enumerate(corners):
         for i in range(len(corners)):
             if i == j:
@@ -96,14 +98,11 @@ def test_middle_pairs_are_the_samples_against_the_exact_potential(only_sampled: 
             assert np.all(np.abs(found.tests[:, i, j] - targets.tests[i] @ u) < SINGLE * size)
 
 
-def test_tests_of_far_pairs_agree_with_samples(monkeypatch: pytest.MonkeyPatch) -> None:
+def test_tests_of_far_pairs_agree_with_samples(no_near: None) -> None:
     """Expanded and sampled tests differ by little of what the pair contributes."""
     pair = np.concatenate([distant_pair(4.0, 3), distant_pair(4.0, 5) + 40.0])
-    monkeypatch.setattr(dense, "far_reach", lambda tolerance: 0.0)
-    monkeypatch.setattr(dense, "NEAR", -1.0)
-    expanded = operator_of(pair).matrices.tests.astype(float)
-    monkeypatch.setattr(dense, "far_reach", lambda tolerance: np.inf)
-    sampled = operator_of(pair).matrices
+    expanded = operator_of(pair, 0.0).matrices.tests.astype(float)
+    sampled = operator_of(pair, np.inf).matrices
     size = np.abs(sampled.single)
     off = ~np.eye(4, dtype=bool)
     assert np.all(np.abs(expanded - sampled.tests)[:, off] < 3e-4 * size[off])
@@ -125,7 +124,7 @@ def test_near_pairs_are_the_near_rule_on_both_sides_of_the_diagonal() -> None:
 def test_every_entry_is_right_whatever_its_tier() -> None:
     """Near, middle and far pairs of a cloud against the quadrature."""
     corners = cloud(10, 7, spread=3.0)
-    found = operator_of(corners, 1e-4).matrix()
+    found = operator_of(corners, far_reach(1e-4)).matrix()
     exact = np.array([[pair_integral(a, b) for b in corners] for a in corners])
     assert found == pytest.approx(exact, rel=1e-4)
 
@@ -179,15 +178,15 @@ def test_reuse_gives_the_very_entries_of_a_fresh_fill(surface: Surface) -> None:
     """Two refinements on: every entry bit for bit, and fewer pairs computed."""
     mesh = Mesh.start([surface])
     panels = panel_arrays(mesh.corners)
-    operator = DenseOperator(panels, make_targets(panels), 1e-3)
+    operator = DenseOperator(panels, make_targets(panels), FAR)
     for seed in range(2):
         random = np.random.default_rng(seed)
         count = len(mesh.conductor)
         mesh, origin = mesh.refine(random.random(count) < 0.3, random.integers(0, 2, count))
         panels = panel_arrays(mesh.corners)
         targets = make_targets(panels)
-        fresh = DenseOperator(panels, targets, 1e-3)
-        operator = DenseOperator(panels, targets, 1e-3, Reuse(operator, origin))
+        fresh = DenseOperator(panels, targets, FAR)
+        operator = DenseOperator(panels, targets, FAR, Reuse(operator, origin))
         assert np.array_equal(operator.matrices.single, fresh.matrices.single)
         assert np.array_equal(operator.matrices.tests, fresh.matrices.tests)
         assert operator.sampled_pairs < fresh.sampled_pairs
