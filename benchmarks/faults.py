@@ -114,7 +114,7 @@ UNITS_AND_SIGNS = (
         "units.py",
         '"mil": 2.54e-5',
         '"mil": 2.54e-4',
-        ("test_units*.py", "test_scene*.py"),
+        ("test_units*.py", "test_invariants*.py"),
     ),
     Fault(
         "two digits of the electric constant swapped",
