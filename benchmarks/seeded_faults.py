@@ -76,9 +76,13 @@ class Copy:
         shutil.copy(ROOT / "pyproject.toml", folder)
 
     def tests(self, patterns: Sequence[str]) -> list[str]:
-        """Test files that exist, by patterns of their names."""
-        found = [p for pattern in patterns for p in sorted((self._folder / "tests").glob(pattern))]
-        return [str(path.relative_to(self._folder)) for path in dict.fromkeys(found)]
+        """Test files that exist, by patterns of their names; "file::test" names a single test."""
+        found = []
+        for pattern in patterns:
+            file, colons, test = pattern.partition("::")
+            for path in sorted((self._folder / "tests").glob(file)):
+                found.append(f"{path.relative_to(self._folder)}{colons}{test}")
+        return list(dict.fromkeys(found))
 
     def change(self, fault: Fault) -> bool:
         """Put a fault in; returns whether its text was found exactly once."""
