@@ -24,6 +24,7 @@ from cases import FARAD  # noqa: E402
 from peer_finite_elements import EXACT, TARGETS, TUNED, cube_capacitance, time_to_error  # noqa: E402
 
 import bem  # noqa: E402
+from bem.extraction.progress import Progress  # noqa: E402
 from bem.geometry.shapes import box  # noqa: E402
 
 TOLERANCES = (1e-2, 1e-3, 1e-4, 1e-5)
@@ -32,15 +33,14 @@ COMMAND_REPEATS = 5
 
 @dataclass
 class Clock:
-    """Receives progress and keeps the CPU time at which each round was solved."""
+    """Receives progress and keeps the CPU time at which each round began."""
 
     start: float = field(default_factory=time.process_time)
-    solved: list[float] = field(default_factory=list)
+    began: dict[int, float] = field(default_factory=dict)
 
-    def __call__(self, progress: bem.extraction.progress.Progress) -> None:
-        """Note the end of a solve."""
-        if progress.phase == "refining":
-            self.solved.append(time.process_time() - self.start)
+    def __call__(self, progress: Progress) -> None:
+        """Note the first sign of life of a round."""
+        self.began.setdefault(progress.round, time.process_time() - self.start)
 
 
 @dataclass(frozen=True)
@@ -49,7 +49,7 @@ class Timing:
 
     Args:
         bar: until the extraction returns.
-        error: until the first round from which on the true error stays below.
+        error: until after the first round from which on the true error stays below.
         panels: of the last round.
         error_panels: of that earlier round.
         reached: true relative error of the result.
@@ -72,9 +72,8 @@ def extract_cube(tolerance: float) -> Timing:
     first = len(errors) - 1
     while first > 0 and errors[first - 1] <= tolerance:
         first -= 1
-    return Timing(
-        seconds, clock.solved[first], result.panels, result.rounds[first].panels, errors[-1]
-    )
+    known = clock.began.get(first + 2, seconds)
+    return Timing(seconds, known, result.panels, result.rounds[first].panels, errors[-1])
 
 
 def fastest(tolerance: float) -> Timing:
