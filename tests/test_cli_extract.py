@@ -103,7 +103,7 @@ def test_defaults_and_options_reach_the_extraction(run: Any, stage: Stage) -> No
     assert stage.calls["load"] == "probe.toml"
     assert stage.calls["scene"].relative_permittivity == 7.0
     chosen = ("tolerance", "pairs", "max_panels", "memory", "threads")
-    assert [stage.calls[key] for key in chosen] == [1e-3, {}, 20000, None, None]
+    assert [stage.calls[key] for key in chosen] == [1e-3, {}, 10000, None, None]
     run(
         *("a.stl", "b.msh", "--unit", "mm", "--tolerance", "0.01%", "--threads", "3"),
         *("--pair", "wall,probe rod=2%", "--max-panels", "500", "--memory", "2GiB"),

@@ -104,7 +104,9 @@ def test_parts_follow_their_formulas() -> None:
     """Discretisation: a share of the absolute indicator; trend: of the last change of value."""
     found = estimate(rounds_of(module.KAPPA_USUAL))
     last = rounds_of(module.KAPPA_USUAL)[-1]
-    assert found.parts["discretisation"] == pytest.approx(module.SHARE * last.absolute, rel=1e-3)
+    share = np.full(last.absolute.shape, module.SHARE)
+    share[:, -1] = module.ROW_SHARE
+    assert found.parts["discretisation"] == pytest.approx(share * last.absolute, rel=1e-3)
     moved = rounds_of(module.KAPPA_USUAL)
     moved[-1] = replace(moved[-1], value=moved[-1].value + 0.01)
     assert np.all(estimate(moved).parts["trend"] >= 0.9 * module.TREND * 0.01)

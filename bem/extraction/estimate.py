@@ -22,6 +22,8 @@ KAPPA_USUAL = 1.05
 KAPPA_DRAW = 2.0
 KAPPA_LOW, KAPPA_HIGH = 0.6, 3.0
 SHARE, TREND, DOUBT, FACET = 0.2, 0.35, 0.4, 0.7
+ROW_SHARE = 0.5
+"""The same as SHARE for row sums: they are differences, and nearly vanish behind a shield."""
 FLOOR = 1e-6
 ROUNDS = 4
 """Rounds before a bar is believed."""
@@ -105,8 +107,10 @@ def estimate(rounds: list[Sums]) -> Estimate:
     root = np.sqrt(np.diagonal(last.value))
     floor = FLOOR * root[:, None] * np.append(root, np.sqrt(max(last.value[:, -1].sum(), 0.0)))
     facets = facet_doubt(last.faceting, last.value)
+    share = np.full(last.absolute.shape, SHARE)
+    share[:, -1] = ROW_SHARE
     parts = {
-        "discretisation": (SHARE + DOUBT * doubt) * last.absolute,
+        "discretisation": (share + DOUBT * doubt) * last.absolute,
         "trend": TREND * drift,
         "quadrature": last.quadrature + floor,
         "input rounding": last.rounding,

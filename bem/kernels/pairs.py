@@ -31,7 +31,7 @@ ALIGNED = 1e-7
 """Directions closer than this (sine or cosine) count as parallel or perpendicular."""
 CLOSED_LOSS = 1e8
 """Closed forms lose about extent^4/(area * area) in relative accuracy; beyond this they are not used."""
-SIDES_LOSS, CROSSING_LOSS = 1e4, 1e9
+SIDES_LOSS, CROSSING_LOSS = 1e7, 1e9
 """The same for the side-pair integrals, which lose extent^2 * length * length/(area * area);
 and where thin panels cross at a small distance, which samples would miss."""
 KINKS = 1.0
