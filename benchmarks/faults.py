@@ -201,7 +201,7 @@ BARS = (
         "extraction/marking.py",
         "(promise[1] > promise[0])",
         "(promise[1] < promise[0])",
-        ("test_published*.py::test_cube_from_a_file_at_a_thousandth",),
+        ("test_extraction_estimate.py",),
     ),
     Fault(
         "density keeps the scaling of the solver",
