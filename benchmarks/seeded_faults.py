@@ -85,16 +85,22 @@ class Copy:
                 found.append(f"{path.relative_to(self._folder)}{colons}{test}")
         return list(dict.fromkeys(found))
 
-    def change(self, fault: Fault) -> bool:
-        """Put a fault in; returns whether its text was found exactly once."""
-        text = (ROOT / "bem" / fault.file).read_text(encoding="utf-8")
+    def change(self, fault: Fault) -> Path | None:
+        """Put a fault in; returns the file below bem/, or None if its text is not there once."""
+        found = []
+        for path in sorted((ROOT / "bem").glob(fault.file)):
+            text = path.read_text(encoding="utf-8")
+            found += [(path.relative_to(ROOT / "bem"), text)] * text.count(fault.old)
+        if len(found) != 1:
+            return None
+        file, text = found[0]
         changed = text.replace(fault.old, fault.new)
-        (self._folder / "bem" / fault.file).write_text(changed, encoding="utf-8")
-        return text.count(fault.old) == 1
+        (self._folder / "bem" / file).write_text(changed, encoding="utf-8")
+        return file
 
-    def restore(self, fault: Fault) -> None:
+    def restore(self, file: Path) -> None:
         """Take a fault out again, with the old date, so that older compiled code is valid."""
-        shutil.copy2(ROOT / "bem" / fault.file, self._folder / "bem" / fault.file)
+        shutil.copy2(ROOT / "bem" / file, self._folder / "bem" / file)
 
     def run(self, words: Sequence[str], cache: str) -> subprocess.CompletedProcess[str]:
         """Run Python in the copy, with compiled code in its folder ``cache``."""
@@ -135,15 +141,15 @@ def caught_by_audit(copy: Copy, cache: str) -> str | None:
 def judge(copy: Copy, fault: Fault, number: int) -> Verdict:
     """Try one fault."""
     start = time.perf_counter()
-    if not copy.change(fault):
-        copy.restore(fault)
+    file = copy.change(fault)
+    if file is None:
         return Verdict(fault, None, f"text not found exactly once in {fault.file}: {fault.old}")
     cache = f"cache_{number}" if fault.compiled else "cache"
     files = copy.tests(fault.tests)
     by, trouble = caught_by_tests(copy, files, cache) if files else (None, "")
     if by is None and not trouble:
         by = caught_by_audit(copy, cache)
-    copy.restore(fault)
+    copy.restore(file)
     return Verdict(fault, by, trouble, time.perf_counter() - start)
 
 
