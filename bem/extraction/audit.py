@@ -41,7 +41,9 @@ class Audit:
     wild: tuple[str, ...]
 
 
-def _random_points(solution: Solution, column: int, rng: np.random.Generator) -> tuple[np.ndarray, np.ndarray]:
+def _random_points(
+    solution: Solution, column: int, rng: np.random.Generator
+) -> tuple[np.ndarray, np.ndarray]:
     """Points (m, 3) drawn by |charge| of one column, and their panels (m,)."""
     charge = np.abs(solution.density[:, column]) * solution.panels.area
     chosen = rng.choice(len(charge), POINTS, p=charge / charge.sum())
@@ -53,7 +55,9 @@ def _random_points(solution: Solution, column: int, rng: np.random.Generator) ->
     tri = np.where(second[:, None, None], corners[:, [0, 2, 3]], corners[:, [0, 1, 2]])
     a, b = rng.random((2, POINTS))
     a, b = np.where(a + b > 1, 1 - a, a), np.where(a + b > 1, 1 - b, b)
-    return tri[:, 0] + a[:, None] * (tri[:, 1] - tri[:, 0]) + b[:, None] * (tri[:, 2] - tri[:, 0]), chosen
+    return tri[:, 0] + a[:, None] * (tri[:, 1] - tri[:, 0]) + b[:, None] * (
+        tri[:, 2] - tri[:, 0]
+    ), chosen
 
 
 def _energy_check(solution: Solution) -> tuple[float, float, float]:
@@ -64,7 +68,9 @@ def _energy_check(solution: Solution) -> tuple[float, float, float]:
     for column in columns:
         points, chosen = _random_points(solution, column, rng)
         found = potential_of_panels(
-            solution.panels, np.ascontiguousarray(points.T), np.ascontiguousarray(solution.density[:, column])
+            solution.panels,
+            np.ascontiguousarray(points.T),
+            np.ascontiguousarray(solution.density[:, column]),
         )
         want = (solution.conductor[chosen] == column).astype(float)
         sign = np.sign(solution.density[chosen, column])
@@ -76,9 +82,11 @@ def _energy_check(solution: Solution) -> tuple[float, float, float]:
 
 
 def _raw_asymmetry(solution: Solution) -> float:
-    """Largest difference between both rows of a pair, over the geometric mean of their diagonals."""
+    """Largest difference between both rows of a pair, over the mean of their diagonals."""
     rng = np.random.default_rng(21)
-    rows = np.sort(rng.choice(solution.operator.size, min(64, solution.operator.size), replace=False))
+    rows = np.sort(
+        rng.choice(solution.operator.size, min(64, solution.operator.size), replace=False)
+    )
     block = solution.operator.near_rows(rows)[:, rows]
     root = np.sqrt(np.abs(np.diagonal(block)))
     return float((np.abs(block - block.T) / (root[:, None] * root)).max())

@@ -4,10 +4,10 @@
     bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + FLOOR sqrt(L_ii L_jj) + r
 
 S and Sabs are the signed and absolute summed indicator, F the faceting effect, q the
-quadrature effect, r that of rounded input. One kappa serves the whole matrix: the slope of L against S over the last
-rounds on the normalised trace, drawn toward its usual value. dX is the largest change of X
-over the last rounds, dk the distance of kappa from raw slopes. The coefficients were chosen
-on the cases of benchmarks/bench_bars.py, which also reports how well they hold.
+quadrature effect, r that of rounded input. One kappa serves the whole matrix: the slope of L
+against S over the last rounds on the normalised trace, drawn toward its usual value. dX is
+the largest change of X over the last rounds, dk the distance of kappa from raw slopes. The
+coefficients were chosen on forty scenes; benchmarks/bench_bars.py reports how well they hold.
 """
 
 from __future__ import annotations

@@ -90,8 +90,13 @@ def extract(
         "audit": ended - solved,
         "total": ended - started,
     }
-    settings = {"max_panels": max_panels, "memory_bytes": plan.limit, "threads": used,
-                "relative_permittivity": scene.relative_permittivity, "operator": "dense"}  # fmt: skip
+    settings = {
+        "max_panels": max_panels,
+        "memory_bytes": plan.limit,
+        "threads": used,
+        "relative_permittivity": scene.relative_permittivity,
+        "operator": "dense",
+    }
     return _result(scene, scaled, run, findings, (seconds, settings, tuple(inspection.notes)))
 
 
@@ -107,7 +112,9 @@ def _goal(scene: Scene, tolerance: float, pairs: dict[tuple[str, str], float]) -
             raise UsageError(f"pair: found {pair!r}, needs a tuple of two names of conductors")
         for name in pair:
             if name not in names:
-                raise UsageError(f"pair: no conductor is named {name!r}; there are {', '.join(names)}")
+                raise UsageError(
+                    f"pair: no conductor is named {name!r}; there are {', '.join(names)}"
+                )
         if pair[0] == pair[1]:
             raise UsageError(f"pair: found {pair[0]!r} twice, needs two different conductors")
         if not (isinstance(accuracy, Real) and TIGHTEST <= accuracy <= 1.0):
@@ -125,14 +132,12 @@ def _check_counts(max_panels: int, memory: int | None) -> None:
 
 def _must_compile() -> bool:
     """Whether the largest kernel is in no cache yet."""
-    from pathlib import Path
-
+    from bem.compiled import FOLDER
     from bem.kernels.pairs import fill
 
     if fill.signatures:
         return False
-    folder = Path(fill.stats.cache_path)
-    return not any(folder.glob("pairs.fill-*.nbi"))
+    return not any(FOLDER.rglob("pairs.fill-*.nbi"))
 
 
 def _record(state: RoundState, farad: float) -> Round:
@@ -174,7 +179,9 @@ def _result(
         converged=converged,
         stopped_by=run.stopped_by,
         rounds=tuple(_record(state, farad) for state in run.rounds),
-        pairs={(scene.conductors[i].name, scene.conductors[j].name): a for i, j, a in run.goal.pairs},
+        pairs={
+            (scene.conductors[i].name, scene.conductors[j].name): a for i, j, a in run.goal.pairs
+        },
         budget=budget,
         audit=findings.findings,
         warnings=tuple(warnings),

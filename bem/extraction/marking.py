@@ -51,7 +51,9 @@ def indicator(solution: Solution, goal: Goal, found: Estimate) -> np.ndarray:
     energy = np.einsum("tnk,k->tn", solution.residual**2, weight)
     for i, j, _ in goal.pairs:
         if excess[i, j] > 1.0:
-            energy += np.abs(solution.residual[:, :, i] * solution.residual[:, :, j]) / allowed[i, j]
+            energy += (
+                np.abs(solution.residual[:, :, i] * solution.residual[:, :, j]) / allowed[i, j]
+            )
     facet = _facet_indicator(solution, weight, found.facet_doubt / SHARE)
     return np.stack([energy[0] + energy[2] + facet[0], energy[1] + energy[3] + facet[1]])
 

@@ -1,4 +1,4 @@
-"""The scene in lengths of its own size: coordinates near 1, so that no power of them under- or overflows."""
+"""The scene in lengths of its own size, so that no power of a coordinate under- or overflows."""
 
 from __future__ import annotations
 

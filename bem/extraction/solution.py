@@ -149,7 +149,7 @@ def faceting_effect(solution: Solution) -> np.ndarray:
 
 def rounding_effect(solution: Solution) -> np.ndarray:
     """Bound (k, k + 1) on the change of L if every panel moves by its file's rounding."""
-    offset = np.asarray(solution.mesh.rounding)[solution.conductor]
+    offset = np.array([b.rounding for b in solution.mesh.bodies])[solution.conductor]
     size = np.abs(solution.density)
     weight = 4.0 * np.pi * solution.panels.area * offset
     return size.T @ (weight[:, None] * np.abs(with_all(solution.density)))
@@ -168,9 +168,13 @@ def _side_difference(solution: Solution, faceting: Faceting) -> np.ndarray:
     panels = solution.panels
     step = SIDE_STEP * panels.radius[rows, None]
     normal = panels.axes[rows, 2]
-    points = np.concatenate([panels.center[rows] + step * normal, panels.center[rows] - step * normal])
+    points = np.concatenate(
+        [panels.center[rows] + step * normal, panels.center[rows] - step * normal]
+    )
     for column, density in enumerate(solution.density.T):
-        u = potential_of_panels(panels, np.ascontiguousarray(points.T), np.ascontiguousarray(density))
+        u = potential_of_panels(
+            panels, np.ascontiguousarray(points.T), np.ascontiguousarray(density)
+        )
         slope = (u[: len(rows)] - u[len(rows) :]) / (2.0 * step[:, 0])
         difference[rows, column] = -slope / (2.0 * np.pi)
     return difference

@@ -31,7 +31,7 @@ def use_threads(asked: int | None) -> Iterator[int]:
     Raises:
         UsageError: less than one thread, or more than the compiled code was started with.
     """
-    most = int(numba.config.NUMBA_NUM_THREADS)
+    most = int(getattr(numba.config, "NUMBA_NUM_THREADS", 1))
     if asked is not None and not (isinstance(asked, Integral) and 1 <= asked <= most):
         raise UsageError(f"threads: found {asked!r}, allowed is 1 to {most} on this machine")
     count = asked if asked is not None else min(most, usable_cores())

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import math
 
-from bem.geometry.compiled import njit
+from bem.compiled import njit
 from bem.geometry.vectors import Vector, along, cross, dot, minus, norm, unit
 
 Triangle = tuple[Vector, Vector, Vector]

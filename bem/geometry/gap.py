@@ -11,7 +11,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from bem.geometry.compiled import njit
+from bem.compiled import njit
 from bem.geometry.distance import Triangle, nearest_points, piercing
 from bem.geometry.tree import Tree, box_gap, triangle
 from bem.geometry.vectors import Vector, dot, minus, row

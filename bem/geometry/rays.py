@@ -10,7 +10,7 @@ import math
 
 import numpy as np
 
-from bem.geometry.compiled import njit
+from bem.compiled import njit
 from bem.geometry.tree import Tree, triangle
 from bem.geometry.vectors import Vector, corner, cross, dot, minus, norm, row
 

@@ -12,7 +12,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from bem.geometry.compiled import njit
+from bem.compiled import njit
 from bem.geometry.vectors import Vector, corner, cross, dot, minus, norm, row, unit
 
 LEAF = 4

@@ -6,7 +6,7 @@ import math
 
 import numpy as np
 
-from bem.geometry.compiled import njit
+from bem.compiled import njit
 
 Vector = tuple[float, float, float]
 

@@ -83,7 +83,7 @@ def _frames(corners: np.ndarray) -> np.ndarray:
 
 
 def _planar_moments(xy: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Area (n,), centroid (n, 2) and mean second moment (n, 2, 2) about it of polygons (n, 4, 2)."""
+    """Area (n,), centroid (n, 2), mean second moment (n, 2, 2) about it of polygons (n, 4, 2)."""
     a = xy - xy[:, :1]
     area = np.zeros(len(xy))
     first = np.zeros((len(xy), 2))
@@ -139,7 +139,9 @@ def panel_arrays(corners: np.ndarray) -> PanelArrays:
         sides=np.concatenate([direction, length[:, :, None]], axis=2),
         area=area,
         radius=radius,
-        moment=np.stack([full[:, a, b] for a, b in ((0, 0), (1, 1), (2, 2), (0, 1), (0, 2), (1, 2))], axis=1),
+        moment=np.stack(
+            [full[:, a, b] for a, b in ((0, 0), (1, 1), (2, 2), (0, 1), (0, 2), (1, 2))], axis=1
+        ),
         higher=_higher_moments(xy, area),
         half=_half_sides(xy, radius),
     )

@@ -9,8 +9,10 @@ from __future__ import annotations
 import math
 
 from llvmlite import ir
-from numba import njit, types
+from numba import types
 from numba.extending import intrinsic
+
+from bem.compiled import njit
 
 _SQRT_HALF_BITS = 0x3FE6A09E667F3BCD
 _TAN_PI_8 = math.sqrt(2.0) - 1.0
@@ -38,7 +40,7 @@ def _from_bits(typingctx, bits):
 @njit(inline="always", error_model="numpy")
 def log(x: float) -> float:
     """Natural logarithm of a positive, normal number."""
-    exponent = (_bits_of(x) - _SQRT_HALF_BITS) >> 52
+    exponent = (_bits_of(x) - _SQRT_HALF_BITS) >> 52  # type: ignore[call-arg]
     m = _from_bits(_bits_of(x) - (exponent << 52))
     f = (m - 1.0) / (m + 1.0)
     s = f * f

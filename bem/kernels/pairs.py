@@ -19,9 +19,11 @@ import math
 from typing import NamedTuple
 
 import numpy as np
-from numba import njit, prange
+from numba import prange
 
+from bem.compiled import njit
 from bem.kernels.arrays import PanelArrays
+from bem.kernels.expansion import dot, far_pair
 from bem.kernels.polygons import coplanar_pair
 from bem.kernels.potential import ROWS, potential
 from bem.kernels.rectangles import parallel_pair, perpendicular_pair
@@ -30,7 +32,7 @@ from bem.kernels.targets import Targets
 ALIGNED = 1e-7
 """Directions closer than this (sine or cosine) count as parallel or perpendicular."""
 CLOSED_LOSS = 1e8
-"""Closed forms lose about extent^4/(area * area) in relative accuracy; beyond this they are not used."""
+"""Closed forms lose about extent^4/(area * area) in relative accuracy; not used beyond."""
 SIDES_LOSS, CROSSING_LOSS = 1e7, 1e9
 """The same for the side-pair integrals, which lose extent^2 * length * length/(area * area);
 and where thin panels cross at a small distance, which samples would miss."""
@@ -50,92 +52,9 @@ _SHORT, _SHORT_W = _clustered(6, False)
 _LONG, _LONG_W = _clustered(10, True)
 
 
-@njit(inline="always")
-def _dot(a, b):
-    return a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
-
-
-@njit(inline="always", error_model="numpy")
-def _own_moments(h, x, y, v2):
-    """Third and fourth order terms of one panel's moments ``h`` toward (x, y), over R^-1.
-
-    With T the moment tensor, the derivatives of 1/R give (15/6) T3[xxx] and (9/6) tr T3[x],
-    (105/24) T4[xxxx], (90/24) tr T4[xx] and (9/24) tr tr T4, with powers of v2 = 1/R^2.
-    """
-    xx, xy, yy = x * x, x * y, y * y
-    cube = h[0] * x * xx + 3.0 * h[1] * xx * y + 3.0 * h[2] * x * yy + h[3] * y * yy
-    slope = (h[0] + h[2]) * x + (h[1] + h[3]) * y
-    fourth = h[4] * xx * xx + 4.0 * h[5] * xx * xy + 6.0 * h[6] * xx * yy
-    fourth += 4.0 * h[7] * xy * yy + h[8] * yy * yy
-    bend = (h[4] + h[6]) * xx + 2.0 * (h[5] + h[7]) * xy + (h[6] + h[8]) * yy
-    trace = h[4] + 2.0 * h[6] + h[8]
-    odd = v2 * v2 * (1.5 * slope - 2.5 * v2 * cube)
-    even = v2 * v2 * (0.375 * trace - v2 * (3.75 * bend - 4.375 * v2 * fourth))
-    return odd, even
-
-
-@njit(inline="always", error_model="numpy")
-def _times(m, x, y, z):
-    """Product of a symmetric tensor (xx, yy, zz, xy, xz, yz) with a vector."""
-    return (
-        m[0] * x + m[3] * y + m[4] * z,
-        m[3] * x + m[1] * y + m[5] * z,
-        m[4] * x + m[5] * y + m[2] * z,
-    )
-
-
-@njit(inline="always", error_model="numpy")
-def _mixed_moments(a, b, ax, bx, x, v2):
-    """Fourth order term of the second moments a and b of both panels, over R^-1."""
-    full_a, full_b, both = _dot(x, ax), _dot(x, bx), _dot(ax, bx)
-    trace_a, trace_b = a[0] + a[1] + a[2], b[0] + b[1] + b[2]
-    product = a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
-    product += 2.0 * (a[3] * b[3] + a[4] * b[4] + a[5] * b[5])
-    bend = trace_a * full_b + trace_b * full_a + 4.0 * both
-    trace = 2.0 * trace_a * trace_b + 4.0 * product
-    return v2 * v2 * (0.375 * trace - v2 * (3.75 * bend - 26.25 * v2 * full_a * full_b))
-
-
-@njit(cache=True, error_model="numpy", fastmath={"contract", "reassoc", "nsz"})
-def _far_pair(i, j, panels, targets, out):
-    """Expansion about both centroids; out[0] is A_ij, out[1:] the tests on i.
-
-    A goes to the fourth order of the panels' sizes over their distance, the tests to the
-    second order beyond their own.
-    """
-    c, axes = panels.center, panels.axes
-    x = (c[i, 0] - c[j, 0], c[i, 1] - c[j, 1], c[i, 2] - c[j, 2])
-    r2 = _dot(x, x)
-    v1 = 1.0 / math.sqrt(r2)
-    v2 = 1.0 / r2
-    v3 = v1 * v2
-    v5 = v3 * v2
-    a, b = panels.moment[i], panels.moment[j]
-    ax, bx = _times(a, x[0], x[1], x[2]), _times(b, x[0], x[1], x[2])
-    m = (ax[0] + bx[0], ax[1] + bx[1], ax[2] + bx[2])
-    trace = a[0] + a[1] + a[2] + b[0] + b[1] + b[2]
-    full = _dot(x, m)
-    x1, x2 = _dot(x, axes[i, 0]), _dot(x, axes[i, 1])
-    odd_i, even_i = _own_moments(panels.higher[i], x1, x2, v2)
-    odd_j, even_j = _own_moments(panels.higher[j], _dot(x, axes[j, 0]), _dot(x, axes[j, 1]), v2)
-    series = 1.0 + 0.5 * v2 * (3.0 * full * v2 - trace) + odd_i - odd_j + even_i + even_j
-    series += _mixed_moments(a, b, ax, bx, x, v2)
-    area = panels.area[j]
-    out[0] = panels.area[i] * area * v1 * series
-    radial = -v3 + 1.5 * v5 * (trace - 5.0 * full * v2)
-    g1 = radial * x1 + 3.0 * v5 * _dot(m, axes[i, 0])
-    g2 = radial * x2 + 3.0 * v5 * _dot(m, axes[i, 1])
-    h11, h22, h12 = 3.0 * x1 * x1 * v5 - v3, 3.0 * x2 * x2 * v5 - v3, 3.0 * x1 * x2 * v5
-    first, second = targets.first, targets.second
-    for k in range(4):
-        slope = first[i, k, 0] * g1 + first[i, k, 1] * g2
-        bend = second[i, k, 0] * h11 + second[i, k, 1] * h22 + 2.0 * second[i, k, 2] * h12
-        out[k + 1] = area * (slope + 0.5 * bend)
-
-
 @njit(cache=True, error_model="numpy", fastmath={"contract", "reassoc", "nsz"})
 def _collect(i, targets, work, out):
-    """Sum the samples of i, left by ``potential``, as ``_far_pair`` does.
+    """Sum the samples of i, left by ``potential``, as ``far_pair`` does.
 
     It does not call ``potential`` itself: compiled into one, the loops there stay scalar.
     """
@@ -153,7 +72,7 @@ def _collect(i, targets, work, out):
 
 @njit(cache=True, error_model="numpy")
 def _clustered_points(i, panels, nodes_u, nodes_v):
-    """Points (1, 3, k) of panel i at the product of two sets of (node, weight); and weights (k,)."""
+    """Points (1, 3, k) of panel i at products of two sets of (node, weight); weights (k,)."""
     corners, axes, center = panels.corners[i], panels.axes[i], panels.center[i]
     n = nodes_u[0].size * nodes_v[0].size
     points, weights = np.empty((1, 3, n)), np.empty(n)
@@ -191,7 +110,7 @@ def clustered_pair(i: int, j: int, panels: PanelArrays) -> float:
 @njit(cache=True, error_model="numpy")
 def _ends(gap, axis, half_i, half_j, sign, diff):
     """Corner differences (2, 2) along one direction; ``gap`` is center i minus center j."""
-    at = _dot(gap, axis)
+    at = dot(gap, axis)
     for a in range(2):
         for b in range(2):
             diff[a, b] = at + (2 * a - 1) * half_i - sign * (2 * b - 1) * half_j
@@ -200,21 +119,21 @@ def _ends(gap, axis, half_i, half_j, sign, diff):
 @njit(cache=True, error_model="numpy")
 def _parallel(i, j, panels, gap):
     axes, half = panels.axes, panels.half
-    swap = abs(_dot(axes[i, 0], axes[j, 0])) < 0.5
+    swap = abs(dot(axes[i, 0], axes[j, 0])) < 0.5
     u, v = np.empty((2, 2)), np.empty((2, 2))
     _ends(gap, axes[i, 0], half[i, 0], half[j, 1 if swap else 0], 1.0, u)
     _ends(gap, axes[i, 1], half[i, 1], half[j, 0 if swap else 1], 1.0, v)
-    return parallel_pair(u, v, abs(_dot(gap, axes[j, 2])))
+    return parallel_pair(u, v, abs(dot(gap, axes[j, 2])))
 
 
 @njit(cache=True, error_model="numpy")
 def _perpendicular(i, j, panels, gap):
     axes, half = panels.axes, panels.half
-    a = 0 if abs(_dot(axes[i, 0], axes[j, 2])) < 0.5 else 1
-    b = 0 if abs(_dot(axes[j, 0], axes[i, 2])) < 0.5 else 1
+    a = 0 if abs(dot(axes[i, 0], axes[j, 2])) < 0.5 else 1
+    b = 0 if abs(dot(axes[j, 0], axes[i, 2])) < 0.5 else 1
     u, v, w = np.empty((2, 2)), np.empty(2), np.empty(2)
     _ends(gap, axes[i, a], half[i, a], half[j, b], 1.0, u)
-    across_i, across_j = _dot(gap, axes[j, 2]), -_dot(gap, axes[i, 2])
+    across_i, across_j = dot(gap, axes[j, 2]), -dot(gap, axes[i, 2])
     for k in range(2):
         v[k] = across_i + (2 * k - 1) * half[i, 1 - a]
         w[k] = across_j + (2 * k - 1) * half[j, 1 - b]
@@ -226,7 +145,7 @@ def _sides_aligned(i, j, axes):
     """Whether every axis of one frame is parallel or perpendicular to every axis of the other."""
     for a in range(3):
         for b in range(3):
-            c = abs(_dot(axes[i, a], axes[j, b]))
+            c = abs(dot(axes[i, a], axes[j, b]))
             if ALIGNED < c < 1.0 - ALIGNED:
                 return False
     return True
@@ -237,15 +156,15 @@ def near_pair(i: int, j: int, panels: PanelArrays) -> float:
     """Double integral over two near panels, or one and the same, by the best rule there is."""
     axes, half = panels.axes, panels.half
     gap = panels.center[i] - panels.center[j]
-    extent = math.sqrt(_dot(gap, gap)) + panels.radius[i] + panels.radius[j]
+    extent = math.sqrt(dot(gap, gap)) + panels.radius[i] + panels.radius[j]
     areas = panels.area[i] * panels.area[j]
-    facing = abs(_dot(axes[i, 2], axes[j, 2]))
+    facing = abs(dot(axes[i, 2], axes[j, 2]))
     boxes = half[i, 0] > 0.0 and half[j, 0] > 0.0 and extent**4 < CLOSED_LOSS * areas
     if boxes and _sides_aligned(i, j, axes):
         return _parallel(i, j, panels, gap) if facing > 0.5 else _perpendicular(i, j, panels, gap)
     if facing > 1.0 - ALIGNED**2 * 50.0:
         reach = extent**2 * 4.0 * panels.radius[i] * panels.radius[j]
-        height = abs(_dot(gap, axes[j, 2]))
+        height = abs(dot(gap, axes[j, 2]))
         shorter = min(panels.radius[i], panels.radius[j])
         kinks = 1e-9 * shorter < height < KINKS * shorter
         if reach < (CROSSING_LOSS if kinks else SIDES_LOSS) * areas:
@@ -289,9 +208,9 @@ def _fill_row(i, panels, targets, reach, origin, new):
         if origin[i] >= 0 and origin[j] >= 0:
             continue
         dx = panels.center[i] - panels.center[j]
-        distance = math.sqrt(_dot(dx, dx)) / (panels.radius[i] + panels.radius[j])
+        distance = math.sqrt(dot(dx, dx)) / (panels.radius[i] + panels.radius[j])
         if distance > reach[1]:
-            _far_pair(i, j, panels, targets, out)
+            far_pair(i, j, panels, targets, out)
         else:
             potential(j, panels, targets.points, i, work)
             _collect(i, targets, work, out)
@@ -354,7 +273,6 @@ def fill(
         sampled += _fill_row(i, panels, targets, reach, origin, new)
     mirror(new.single)
     return sampled
-
 
 
 @njit(cache=True, error_model="numpy")

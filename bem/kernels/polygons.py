@@ -14,8 +14,8 @@ from __future__ import annotations
 import math
 
 import numpy as np
-from numba import njit
 
+from bem.compiled import njit
 from bem.kernels.arrays import PanelArrays
 from bem.kernels.elementary import atan2, log
 from bem.kernels.potential import TINY, side_log

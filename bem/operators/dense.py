@@ -46,7 +46,9 @@ def far_reach(tolerance: float, cancellation: float = 1.0) -> float:
             large where opposite charges face each other across a thin gap.
     """
     plain = LEAST_FAR * (1e-3 / tolerance) ** 0.125
-    needed = LEAST_FAR * (FAR_ERROR * max(cancellation, 1.0) / (INNER * tolerance)) ** (1.0 / FAR_ORDER)
+    needed = LEAST_FAR * (FAR_ERROR * max(cancellation, 1.0) / (INNER * tolerance)) ** (
+        1.0 / FAR_ORDER
+    )
     return float(np.clip(max(plain, needed), LEAST_FAR, 12.0))
 
 

@@ -64,13 +64,13 @@ def _slab(walls: np.ndarray, outline: np.ndarray, low: float, high: float) -> li
     middle = 0.5 * (low + high)
     bottom, top = walls[:, :, 1].min(axis=1), walls[:, :, 1].max(axis=1)
     active = np.flatnonzero((bottom < middle) & (top > middle))
-    at = np.array([_reach(walls, k, middle) for k in active])
+    at = np.array([_reach(walls, k, middle) for k in active.tolist()])
     order = active[np.lexsort((outline[active], at))]
     pairs, inside = [], False
-    for left, right in zip(order[:-1], order[1:], strict=True):
+    for left, right in zip(order[:-1].tolist(), order[1:].tolist(), strict=True):
         inside ^= bool(outline[left])
         if inside:
-            pairs.append((int(left), int(right)))
+            pairs.append((left, right))
     return pairs
 
 

@@ -122,7 +122,9 @@ class FacingTable:
         found = sorted((s for s in found if _overlap(s.box, box)), key=lambda s: abs(s.height))
         seen: list[_Shadow] = []
         for shadow in found:
-            hidden = any(s.height * shadow.height > 0.0 and _covers(s.box, shadow.box) for s in seen)
+            hidden = any(
+                s.height * shadow.height > 0.0 and _covers(s.box, shadow.box) for s in seen
+            )
             if not hidden:
                 seen.append(shadow)
         return [s for s in seen if s.conductor != self.patches[k].conductor]
@@ -136,7 +138,9 @@ class FacingTable:
         for shadow in shadows:
             gap = np.where(_touched(ends, shadow), np.minimum(gap, shadow.rim_gap), gap)
         for shadow in shadows:
-            new = ~_coincident(shadow.edges, ends, COINCIDENT * patch.size + COINCIDENT_GAP * shadow.gap)
+            new = ~_coincident(
+                shadow.edges, ends, COINCIDENT * patch.size + COINCIDENT_GAP * shadow.gap
+            )
             ends = np.concatenate([ends, shadow.edges[new]])
             gap = np.concatenate([gap, shadow.gap[new]])
         return Walls(ends, np.arange(len(ends)) < outline, gap)
@@ -151,7 +155,7 @@ def _coincident(edges: np.ndarray, walls: np.ndarray, tolerance: np.ndarray) -> 
     off = np.abs(gap[..., 0] * step[:, None, 1] - gap[..., 1] * step[:, None, 0]) / length[:, None]
     limit = tolerance[:, None]
     inside = (along.min(axis=2) > -limit) & (along.max(axis=2) < length + limit)
-    return (inside & (off.max(axis=2) <= limit)).any(axis=1)
+    return np.any(inside & (off.max(axis=2) <= limit), axis=1)
 
 
 def _touched(edges: np.ndarray, shadow: _Shadow) -> np.ndarray:
@@ -159,7 +163,7 @@ def _touched(edges: np.ndarray, shadow: _Shadow) -> np.ndarray:
     t = np.linspace(0.02, 0.98, 13)[:, None]
     points = edges[:, None, 0] * (1 - t) + edges[:, None, 1] * t
     near = _distance(points, shadow.edges) < 2.0 * shadow.rim_gap[:, None]
-    return (_inside(points, shadow.edges) | near).any(axis=1)
+    return np.any(_inside(points, shadow.edges) | near, axis=1)
 
 
 def _inside(points: np.ndarray, edges: np.ndarray) -> np.ndarray:

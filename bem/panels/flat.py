@@ -176,9 +176,15 @@ def _side_gaps(piece: np.ndarray, walls: Walls, tolerance: float) -> np.ndarray:
     for k in range(4):
         side = piece[[k, (k + 1) % 4]] - ends[:, None, 0]
         t = np.einsum("esc,ec->es", side, along)
-        off = np.abs(side[..., 0] * along[:, None, 1] - side[..., 1] * along[:, None, 0]).max(axis=1)
+        off = np.abs(side[..., 0] * along[:, None, 1] - side[..., 1] * along[:, None, 0]).max(
+            axis=1
+        )
         shared = np.minimum(t.max(axis=1), length) - np.maximum(t.min(axis=1), 0.0)
-        on = (off <= 2.0 * tolerance) & (shared > 1e-3 * np.ptp(t, axis=1)) & (np.ptp(t, axis=1) > tolerance)
+        on = (
+            (off <= 2.0 * tolerance)
+            & (shared > 1e-3 * np.ptp(t, axis=1))
+            & (np.ptp(t, axis=1) > tolerance)
+        )
         gaps[k] = gap[on].min(initial=np.inf)
     return gaps
 
@@ -201,7 +207,9 @@ def _three_quads(pieces: Pieces) -> Pieces:
     middle = tri.mean(axis=1)
     for k in range(3):
         after, before = tri[:, (k + 1) % 3], tri[:, (k + 2) % 3]
-        quad = np.stack([tri[:, k], 0.5 * (tri[:, k] + after), middle, 0.5 * (tri[:, k] + before)], axis=1)
+        quad = np.stack(
+            [tri[:, k], 0.5 * (tri[:, k] + after), middle, 0.5 * (tri[:, k] + before)], axis=1
+        )
         inner = np.full(len(tri), np.inf)
         flags = np.stack([gap[:, k], inner, inner, gap[:, (k + 2) % 3]], axis=1)
         parts.append((quad, pieces.conductor[compact], flags, pieces.feature[compact]))

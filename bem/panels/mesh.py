@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from bem.geometry.surface import Surface
+from bem.geometry.topology import edges_of
 from bem.panels.align import align_patches
 from bem.panels.flat import FlatFamily
 from bem.panels.planar import planar_patches
@@ -23,6 +24,32 @@ PROXIMITY_ROOM = 1000
 """The starting mesh may grow to twice its panels and this many for the sake of small neighbours."""
 
 
+SURROUNDINGS = 0
+"""Number of the outer medium among the regions; conductor k is region -(k + 1)."""
+
+
+@dataclass(frozen=True)
+class Body:
+    """What a conductor is to its panels.
+
+    Args:
+        solid: its closed surface bounds metal; otherwise there is field on both sides.
+        rounding: how far its surface may lie from where it was drawn.
+    """
+
+    solid: bool
+    rounding: float
+
+    @classmethod
+    def of(cls, surface: Surface, hollow: bool) -> Body:
+        """Tell what a surface bounds; a hollow one is a skin even where it is closed."""
+        if surface.curve is not None:
+            closed = not any(surface.curve.free_rims)
+        else:
+            closed = bool((edges_of(surface.triangles).uses == 2).all())
+        return cls(closed and not hollow, surface.rounding)
+
+
 @dataclass(frozen=True)
 class Mesh:
     """Panels of all conductors, family after family.
@@ -30,14 +57,12 @@ class Mesh:
     Args:
         families: flat panels of the whole scene, then one family per curved body.
         owners: per family, the conductor (n_family,) of each panel.
-        rounding: per conductor, how far its surface may lie from where it was drawn.
-        hollow: conductors whose closed surface is a skin, with field on both sides.
+        bodies: what each conductor is.
     """
 
     families: tuple[Family, ...]
     owners: tuple[np.ndarray, ...]
-    rounding: tuple[float, ...]
-    hollow: frozenset[int] = frozenset()
+    bodies: tuple[Body, ...]
 
     @classmethod
     def start(cls, surfaces: list[Surface], hollow: Iterable[int] = ()) -> Mesh:
@@ -56,12 +81,12 @@ class Mesh:
         if patches:
             flat = FlatFamily.start(align_patches(patches, max(s.extent for s in surfaces)))
             families.append(flat)
-            owners.append(flat.conductor)
+            owners.append(_owners(flat, 0))
         for k, family in curved:
             families.append(family)
-            owners.append(np.full(len(family.corners), k))
-        rounding = tuple(s.rounding for s in surfaces)
-        return _resolved(cls(tuple(families), tuple(owners), rounding, frozenset(hollow)))
+            owners.append(_owners(family, k))
+        bodies = tuple(Body.of(s, k in set(hollow)) for k, s in enumerate(surfaces))
+        return _resolved(cls(tuple(families), tuple(owners), bodies))
 
     @property
     def corners(self) -> np.ndarray:
@@ -74,6 +99,17 @@ class Mesh:
         return np.concatenate(self.owners)
 
     @property
+    def regions(self) -> np.ndarray:
+        """(n, 2) region behind and in front of each panel.
+
+        A solid's metal counts as behind whichever way the panel is turned; both sides of a
+        sheet lie in the surroundings, and the sheet itself is told by ``conductor``.
+        """
+        solid = np.array([body.solid for body in self.bodies])[self.conductor]
+        behind = np.where(solid, -(self.conductor + 1), SURROUNDINGS)
+        return np.stack([behind, np.full(len(behind), SURROUNDINGS)], axis=1)
+
+    @property
     def feature(self) -> np.ndarray:
         """(n,) size of the flat face, or of the curved body, that each panel lies on."""
         return np.concatenate([_feature(family) for family in self.families])
@@ -81,7 +117,7 @@ class Mesh:
     def faceting(self) -> Faceting:
         """How far the panels are from the true surface."""
         parts = [
-            _faceting(family, int(owner[0]) in self.hollow)
+            _faceting(family, not self.bodies[owner[0]].solid)
             for family, owner in zip(self.families, self.owners, strict=True)
         ]
         return Faceting(*(np.concatenate(column) for column in zip(*parts, strict=True)))
@@ -101,10 +137,9 @@ class Mesh:
             fresh[: len(kept)] = start + kept
             families.append(finer)
             origin.append(fresh)
-            flat = isinstance(finer, FlatFamily)
-            owners.append(finer.conductor if flat else np.full(len(fresh), owner[0]))
+            owners.append(_owners(finer, int(owner[0])))
             start += len(owner)
-        return Mesh(tuple(families), tuple(owners), self.rounding, self.hollow), np.concatenate(origin)
+        return Mesh(tuple(families), tuple(owners), self.bodies), np.concatenate(origin)
 
 
 @dataclass(frozen=True)
@@ -129,13 +164,18 @@ class Faceting:
         return not (self.offset.any() or self.rim_offset.any())
 
 
-def _faceting(family: Family, hollow: bool) -> tuple[np.ndarray, ...]:
+def _faceting(family: Family, sheet: bool) -> tuple[np.ndarray, ...]:
     count = len(family.corners)
     if isinstance(family, FlatFamily):
         zero = np.zeros(count)
         return zero, zero, zero, zero.astype(bool)
-    sheet = np.full(count, hollow or any(family.grid.surface.free_rims))
-    return family.offset, family.rim_offset, family.rim_width, sheet
+    return family.offset, family.rim_offset, family.rim_width, np.full(count, sheet)
+
+
+def _owners(family: Family, conductor: int) -> np.ndarray:
+    if isinstance(family, FlatFamily):
+        return family.conductor
+    return np.full(len(family.corners), conductor)
 
 
 def _feature(family: Family) -> np.ndarray:

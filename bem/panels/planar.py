@@ -197,7 +197,9 @@ def planar_patches(surface: Surface, conductor: int) -> list[Patch]:
     patches = []
     for g in range(count):
         members = corners[order[starts[g] : starts[g + 1]]]
-        patches.append(_make_patch(surface.vertices, members, conductor, origin[g], normal[g], limit))
+        patches.append(
+            _make_patch(surface.vertices, members, conductor, origin[g], normal[g], limit)
+        )
     return patches
 
 

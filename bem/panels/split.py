@@ -5,7 +5,9 @@ from __future__ import annotations
 import numpy as np
 
 
-def split(corners: np.ndarray, across: np.ndarray, part: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+def split(
+    corners: np.ndarray, across: np.ndarray, part: np.ndarray
+) -> tuple[np.ndarray, np.ndarray]:
     """Cut each quadrilateral in two.
 
     Args:
