@@ -1,4 +1,4 @@
-"""Deliberate faults, each a small change of one line of source, and the tests that should see it."""
+"""Deliberate faults, each a change of one line of source, and the tests that should see it."""
 
 from __future__ import annotations
 
