@@ -26,7 +26,7 @@ from pathlib import Path
 from faults import FAULTS, Fault
 
 ROOT = Path(__file__).resolve().parent.parent
-COPIED = ("bem", "tests", "meshes", "benchmarks")
+COPIED = ("bem", "tests", "meshes", "benchmarks", ".ci")
 FAILED = re.compile(r"^(?:FAILED|ERROR) (?:tests/)?(.+?)(?: - .*)?$", re.MULTILINE)
 AUDIT = """
 import bem
@@ -74,7 +74,8 @@ class Copy:
         for name in COPIED:
             ignored = shutil.ignore_patterns("__pycache__")
             shutil.copytree(ROOT / name, folder / name, ignore=ignored)
-        shutil.copy(ROOT / "pyproject.toml", folder)
+        for path in filter(Path.is_file, ROOT.iterdir()):
+            shutil.copy(path, folder)
 
     def tests(self, patterns: Sequence[str]) -> list[str]:
         """Test files that exist, by patterns of their names; "file::test" names a single test."""
