@@ -47,7 +47,7 @@ def bodies(seed: int, count: int) -> list[Surface]:
 
 def close_to(values: np.ndarray) -> object:
     """Equal up to rounding."""
-    return pytest.approx(values, rel=1e-9)
+    return pytest.approx(values, rel=1e-9, abs=0.0)
 
 
 def same(first: np.ndarray, second: np.ndarray, bars: np.ndarray) -> bool:

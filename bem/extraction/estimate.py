@@ -26,7 +26,7 @@ ROW_SHARE = 0.5
 """The same as SHARE for row sums: they are differences, and nearly vanish behind a shield."""
 FLOOR = 1e-6
 ROUNDS = 4
-"""Rounds before a bar is believed."""
+"""Rounds before the trend is believed; until then the whole indicator stands for it."""
 
 
 @dataclass(frozen=True)
@@ -103,7 +103,10 @@ def estimate(rounds: list[Sums]) -> Estimate:
     value = _extrapolated(rounds)
     kappa, doubt = _kappa(rounds)
     earlier = [_extrapolated(rounds[:n]) for n in range(max(1, len(rounds) - 2), len(rounds))]
-    drift = np.max([np.abs(value - x) for x in earlier], axis=0) if earlier else np.abs(value)
+    drift = np.max([np.abs(value - x) for x in earlier], axis=0, initial=0.0)
+    trend = TREND * drift
+    if len(rounds) < ROUNDS:
+        trend = np.maximum(trend, last.absolute)
     root = np.sqrt(np.diagonal(last.value))
     floor = FLOOR * root[:, None] * np.append(root, np.sqrt(max(last.value[:, -1].sum(), 0.0)))
     facets = facet_doubt(last.faceting, last.value)
@@ -111,7 +114,7 @@ def estimate(rounds: list[Sums]) -> Estimate:
     share[:, -1] = ROW_SHARE
     parts = {
         "discretisation": (share + DOUBT * doubt) * last.absolute,
-        "trend": TREND * drift,
+        "trend": trend,
         "quadrature": last.quadrature + floor,
         "input rounding": last.rounding,
         "faceting": facets * np.abs(last.faceting),

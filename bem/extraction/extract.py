@@ -57,6 +57,7 @@ def extract(
         UsageError: a setting is out of range or names no conductor.
         GeometryError: conductors touch, cross, or lie inside solid metal.
         MemoryRefused: the starting mesh alone exceeds the limit.
+        InputError: the starting mesh alone exceeds ``max_panels``.
         SolutionError: the audit found the result unusable.
     """
     started = time.perf_counter()
@@ -68,10 +69,9 @@ def extract(
     checked = time.perf_counter()
     scaled = ScaledScene.of(scene)
     hollow = [k for k, c in enumerate(scene.conductors) if c.body == "shell"]
-    mesh = Mesh.start(scaled.surfaces, hollow)
-    plan = MemoryPlan.of(memory)
-    plan.check_start(len(mesh.conductor))
-    run = Run(len(scene.conductors), goal, Limits(max_panels, plan), report, started=started)
+    limits = Limits(max_panels, MemoryPlan.of(memory))
+    mesh = Mesh.start(scaled.surfaces, hollow, limits.check_start)
+    run = Run(len(scene.conductors), goal, limits, report, started=started)
     with use_threads(threads) as used:
         if _must_compile():
             report(Progress("compiling kernels, first run only", 0, 0, float("nan"), run.elapsed))
@@ -92,7 +92,7 @@ def extract(
     }
     settings = {
         "max_panels": max_panels,
-        "memory_bytes": plan.limit,
+        "memory_bytes": limits.memory.limit,
         "threads": used,
         "relative_permittivity": scene.relative_permittivity,
         "operator": "dense",

@@ -8,16 +8,18 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from bem.errors import SolutionError
+from bem.errors import InputError, SolutionError
 from bem.extraction.estimate import ROUNDS, Estimate, estimate
 from bem.extraction.marking import Goal, indicator, mark
-from bem.extraction.memory import MemoryPlan
+from bem.extraction.memory import MemoryPlan, readable
 from bem.extraction.progress import Progress
 from bem.extraction.solution import Solution, Sums, solve_round, sums
 from bem.operators.dense import Reuse, far_reach
 from bem.panels.mesh import Mesh
 
 MOST_ROUNDS = 60
+FINE_START, EARLY = 1000, 0.3
+"""A mesh of so many panels may do at once, if its bar is below this part of what is allowed."""
 BULK_FAR, BULK_NEAR = 0.85, 0.7
 """Part of the promise that is refined in one round, far from the goal and near it."""
 FAR_FROM_GOAL = 4.0
@@ -29,6 +31,21 @@ class Limits:
 
     max_panels: int
     memory: MemoryPlan
+
+    def check_start(self, panels: int) -> None:
+        """Refuse a starting mesh that a limit leaves no room for.
+
+        Raises:
+            MemoryRefused: its matrices exceed the memory limit.
+            InputError: it has more panels than are allowed in all.
+        """
+        self.memory.check_start(panels)
+        if panels > self.max_panels:
+            raise InputError(
+                f"the geometry needs at least {panels:,} panels to start with, the limit is "
+                f"{self.max_panels:,}: raise max-panels (memory for these: "
+                f"{readable(self.memory.need(panels))}), or use coarser facets on curved faces"
+            )
 
 
 @dataclass(frozen=True)
@@ -114,7 +131,8 @@ class Run:
         here = sums(solution)
         found = estimate([r.sums for r in self.rounds] + [here])
         worst = float(self.goal.worst(found).max())
-        if len(self.rounds) + 1 < ROUNDS:
+        fine = here.panels >= FINE_START and worst <= EARLY
+        if len(self.rounds) + 1 < ROUNDS and not fine:
             worst = max(worst, 1.0 + 1e-9)
         self.rounds = [_light(r) for r in self.rounds]
         self.rounds.append(RoundState(solution, here, found, worst, self.elapsed))

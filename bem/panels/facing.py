@@ -17,6 +17,8 @@ NEAR = 0.5
 """A face counts as facing if its distance is below this part of the smaller of both sizes."""
 LEANING = 0.94
 """Least cosine between the normals of faces that count as facing (20 degrees)."""
+MOST_FACING = 2000
+"""Only so many of the largest patches are divided by what faces them: facets need it least."""
 COINCIDENT, COINCIDENT_GAP = 1e-5, 0.02
 """Walls closer than this part of the patch's size, or of the gap, count as one."""
 
@@ -70,25 +72,38 @@ def _covers(a: np.ndarray, b: np.ndarray) -> bool:
 
 @dataclass(frozen=True)
 class FacingTable:
-    """All patches, with what is needed to find the parallel ones quickly."""
+    """All patches, with what is needed to find the parallel ones quickly.
+
+    Args:
+        patches: of all conductors.
+        normals: (n, 3).
+        origins: (n, 3).
+        sizes: (n,).
+        least: smaller patches are not looked at.
+    """
 
     patches: list[Patch]
     normals: np.ndarray
     origins: np.ndarray
     sizes: np.ndarray
+    least: float
 
     @classmethod
     def of(cls, patches: list[Patch]) -> FacingTable:
         """Table of the patches of all conductors."""
+        sizes = np.array([p.size for p in patches])
         return cls(
             patches,
             np.array([p.axes[2] for p in patches]),
             np.array([p.origin for p in patches]),
-            np.array([p.size for p in patches]),
+            sizes,
+            float(np.sort(sizes)[-MOST_FACING]) if len(sizes) > MOST_FACING else 0.0,
         )
 
     def _facing(self, k: int) -> np.ndarray:
         """Indices of patches about parallel to patch k, near it in height and not in its plane."""
+        if self.sizes[k] < self.least:
+            return np.empty(0, dtype=int)
         cosine = np.abs(self.normals @ self.normals[k])
         height = np.abs((self.origins - self.origins[k]) @ self.normals[k])
         reach = NEAR * np.minimum(self.sizes, self.sizes[k])

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -12,10 +12,11 @@ from bem.geometry.surface import Surface
 from bem.geometry.topology import edges_of
 from bem.panels.align import align_patches
 from bem.panels.flat import FlatFamily
-from bem.panels.planar import planar_patches
+from bem.panels.planar import FlatFaces
 from bem.panels.proximity import crowded
 
 if TYPE_CHECKING:
+    from bem.geometry.revolved import Revolution
     from bem.panels.curved import CurvedFamily
 
     Family = FlatFamily | CurvedFamily
@@ -65,26 +66,34 @@ class Mesh:
     bodies: tuple[Body, ...]
 
     @classmethod
-    def start(cls, surfaces: list[Surface], hollow: Iterable[int] = ()) -> Mesh:
-        """Return the starting mesh of one surface per conductor."""
-        patches = []
-        curved: list[tuple[int, CurvedFamily]] = []
-        for k, surface in enumerate(surfaces):
-            if surface.curve is None:
-                patches += planar_patches(surface, k)
-            else:
-                from bem.panels.curved import CurvedFamily
+    def start(
+        cls,
+        surfaces: list[Surface],
+        hollow: Iterable[int] = (),
+        accept: Callable[[int], None] = lambda _: None,
+    ) -> Mesh:
+        """Return the starting mesh of one surface per conductor.
 
-                curved.append((k, CurvedFamily.start(surface.curve)))
+        Args:
+            surfaces: of all conductors.
+            hollow: conductors whose closed surface is a skin, with field on both sides.
+            accept: called early with a number of panels that the mesh will at least have,
+                and with that of the finished mesh; it may raise.
+        """
+        flat = {k: FlatFaces.of(s) for k, s in enumerate(surfaces) if s.curve is None}
+        accept(sum(faces.count for faces in flat.values()))
+        patches = [patch for k, faces in flat.items() for patch in faces.patches(k)]
         families: list[Family] = []
         owners = []
         if patches:
-            flat = FlatFamily.start(align_patches(patches, max(s.extent for s in surfaces)))
-            families.append(flat)
-            owners.append(_owners(flat, 0))
-        for k, family in curved:
+            family = FlatFamily.start(align_patches(patches, max(s.extent for s in surfaces)))
             families.append(family)
-            owners.append(_owners(family, k))
+            owners.append(_owners(family, 0))
+        for k, surface in enumerate(surfaces):
+            if surface.curve is not None:
+                families.append(_curved(surface.curve))
+                owners.append(_owners(families[-1], k))
+        accept(sum(len(owner) for owner in owners))
         bodies = tuple(Body.of(s, k in set(hollow)) for k, s in enumerate(surfaces))
         return _resolved(cls(tuple(families), tuple(owners), bodies))
 
@@ -170,6 +179,12 @@ def _faceting(family: Family, sheet: bool) -> tuple[np.ndarray, ...]:
         zero = np.zeros(count)
         return zero, zero, zero, zero.astype(bool)
     return family.offset, family.rim_offset, family.rim_width, np.full(count, sheet)
+
+
+def _curved(surface: Revolution) -> CurvedFamily:
+    from bem.panels.curved import CurvedFamily
+
+    return CurvedFamily.start(surface)
 
 
 def _owners(family: Family, conductor: int) -> np.ndarray:

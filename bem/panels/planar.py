@@ -184,31 +184,61 @@ def _is_between(x: np.ndarray, a: np.ndarray, b: np.ndarray, limit: float) -> bo
     return 0.0 < t < 1.0 and float(np.linalg.norm(x - a - t * step)) <= limit
 
 
+@dataclass(frozen=True)
+class FlatFaces:
+    """The faces of one body, grouped by the flat face that they belong to.
+
+    Args:
+        vertices: (v, 3).
+        corners: (f, 4) vertices of each face, a triangle repeating its last.
+        label: (f,) number of the flat face.
+        count: number of flat faces.
+        limit: distance below which faces count as coplanar.
+    """
+
+    vertices: np.ndarray
+    corners: np.ndarray
+    label: np.ndarray
+    count: int
+    limit: float
+
+    @classmethod
+    def of(cls, surface: Surface) -> FlatFaces:
+        """Join coplanar neighbours."""
+        limit = FLATNESS * surface.extent
+        corners = _split_bent_quads(surface, limit)
+        label = _group_faces(surface.vertices[corners], corners, limit)
+        return cls(surface.vertices, corners, label, int(label.max()) + 1, limit)
+
+    def patches(self, conductor: int) -> list[Patch]:
+        """The flat faces with their outlines."""
+        points = self.vertices[self.corners]
+        origin, normal = _group_planes(points, _area_vectors(points), self.label, self.count)
+        order = np.argsort(self.label, kind="stable")
+        starts = np.searchsorted(self.label[order], np.arange(self.count + 1))
+        return [
+            _make_patch(
+                self.vertices,
+                self.corners[order[starts[g] : starts[g + 1]]],
+                conductor,
+                (origin[g], normal[g], self.limit),
+            )
+            for g in range(self.count)
+        ]
+
+
 def planar_patches(surface: Surface, conductor: int) -> list[Patch]:
     """The flat faces of a body, coplanar neighbours joined."""
-    limit = FLATNESS * surface.extent
-    corners = _split_bent_quads(surface, limit)
-    points = surface.vertices[corners]
-    label = _group_faces(points, corners, limit)
-    count = label.max() + 1
-    origin, normal = _group_planes(points, _area_vectors(points), label, count)
-    order = np.argsort(label, kind="stable")
-    starts = np.searchsorted(label[order], np.arange(count + 1))
-    patches = []
-    for g in range(count):
-        members = corners[order[starts[g] : starts[g + 1]]]
-        patches.append(
-            _make_patch(surface.vertices, members, conductor, origin[g], normal[g], limit)
-        )
-    return patches
+    return FlatFaces.of(surface).patches(conductor)
 
 
-def _make_patch(vertices, corners, conductor, origin, normal, limit) -> Patch:
+def _make_patch(vertices, corners, conductor, plane) -> Patch:
+    origin, normal, limit = plane
     edges = _sides(corners)
     rim = np.unique(edges.pairs[edges.count[edges.group] == 1], axis=0)
     if len(corners) > 1:
         rim = _join_collinear(rim, vertices, 0.1 * limit)
     axes = _in_plane_axes(vertices[rim], normal)
-    plane = axes[:2].T
-    flat = (vertices[corners] - origin) @ plane
-    return Patch(conductor, origin, axes, (vertices[rim] - origin) @ plane, flat)
+    down = axes[:2].T
+    flat = (vertices[corners] - origin) @ down
+    return Patch(conductor, origin, axes, (vertices[rim] - origin) @ down, flat)
