@@ -106,6 +106,14 @@ def test_cube_from_a_file_at_a_ten_thousandth(tmp_path: Path, name: str) -> None
     assert result.panels <= 1500
 
 
+def test_cube_at_a_hundred_thousandth() -> None:
+    """Against the ten digits of Helsing and Perfekt (from memory), with at most 6000 panels."""
+    scene = scene_of([shapes.box(1.0, 1.0, 1.0)])
+    result = bem.extract(scene, tolerance=1e-5, threads=1)
+    check(result, CUBE, 0.0)
+    assert result.panels <= 6000
+
+
 @pytest.mark.parametrize("tolerance", [1e-2, 1e-3, 1e-4])
 def test_cube_of_one_quadrilateral_per_face(tolerance: float) -> None:
     """The coarsest mesh there is does not stall."""
