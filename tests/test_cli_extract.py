@@ -91,9 +91,7 @@ def test_done_prints_the_table_and_progress_and_writes_both_files(run: Any, stag
     done = run("probe.toml", "--json", "r.json", "--csv", "r.csv")
     assert done.code == 0
     assert "12.3457 ± 0.0012" in done.out
-    assert (
-        done.err == "0.1 s: round 1, 96 panels, largest bar / target 2.4, target 0.001, solving\n"
-    )
+    assert done.err == "0.1 s: round 1, 96 panels, largest bar 2.4 x target 0.001, solving\n"
     assert_same(load_result("r.json"), sample_result())
     assert Path("r.csv").read_text().count("\n") == 7
 

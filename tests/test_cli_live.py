@@ -41,9 +41,9 @@ def played(stream: io.StringIO) -> str:
 
 def test_a_line_says_all_that_was_asked_for() -> None:
     assert line_of(EVENTS[-1], 1e-3) == (
-        "9.5 s: round 2, 308 panels, largest bar / target 0.8, target 0.001, refining"
+        "9.5 s: round 2, 308 panels, largest bar 0.8 x target 0.001, refining"
     )
-    assert "largest bar / target not known yet" in line_of(EVENTS[2], 1e-3)
+    assert "largest bar unknown, target 0.001" in line_of(EVENTS[2], 1e-3)
 
 
 def test_a_file_gets_a_line_per_round_and_one_for_the_compiler() -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from dataclasses import replace
 from html.parser import HTMLParser
 from typing import Any
 
@@ -115,7 +116,7 @@ def test_many_conductors_get_lists_that_say_where_the_rest_is() -> None:
     assert "diagonal and row sums" in text
     assert "10 more conductors; every entry is in the JSON and CSV files" in text
     assert "1204 more pairs; every entry is in the JSON and CSV files" in text
-    asked = [line for line in text.splitlines() if "probe rod, stud 49" in line]
+    asked = [line for line in text.splitlines() if line.startswith("  probe rod, stud 49")]
     assert len(asked) == 1 and asked[0].endswith("5 %")
 
 
@@ -251,3 +252,21 @@ def test_html_is_well_formed_and_names_are_text() -> None:
 def test_html_takes_the_colours_of_the_page() -> None:
     html = sample_result()._repr_html_()
     assert "background" not in html and "color:" not in html.replace("border-bottom", "")
+
+
+def test_a_coupling_asked_for_by_name_is_reported_by_name() -> None:
+    """Reached or not: its bar in per cent of its value, beside what was asked."""
+    from bem.exports.summary import lines_of
+
+    value = np.array([[4e-12, -1e-15], [-1e-15, 4e-12]])
+    made = replace(
+        sample_result(),
+        capacitance=value,
+        error=np.full((2, 2), 2e-17),
+        pairs={},
+        conductors=("a", "b"),
+    )
+    asked = replace(made, pairs={("b", "a"): 0.01}, converged=False, stopped_by="max-panels")
+    text = "\n".join(lines_of(asked, "+-"))
+    assert "NOT REACHED: the pair a, b has a bar of 2 % of its value, asked was 1 %" in text
+    assert "the pair" not in "\n".join(lines_of(made, "+-"))

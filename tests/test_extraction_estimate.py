@@ -104,9 +104,9 @@ def test_parts_follow_their_formulas() -> None:
     """Discretisation: a share of the absolute indicator; trend: of the last change of value."""
     found = estimate(rounds_of(module.KAPPA_USUAL))
     last = rounds_of(module.KAPPA_USUAL)[-1]
-    share = np.full(last.absolute.shape, module.SHARE)
-    share[:, -1] = module.ROW_SHARE
-    assert found.parts["discretisation"] == pytest.approx(share * last.absolute, rel=1e-3)
+    ratio = found.parts["discretisation"] / (module.SHARE * last.absolute)
+    assert np.all(ratio > 0.999) and np.all(ratio < 1.001 * module.WIDEST)
+    assert np.diagonal(ratio) == pytest.approx(1.0, rel=1e-3)
     moved = rounds_of(module.KAPPA_USUAL)
     moved[-1] = replace(moved[-1], value=moved[-1].value + 0.01)
     assert np.all(estimate(moved).parts["trend"] >= 0.9 * module.TREND * 0.01)
@@ -155,3 +155,20 @@ def test_marking_takes_the_fewest_panels_that_hold_the_bulk(
     if marked.sum() < room:
         assert total[marked].sum() >= bulk * total.sum() * (1.0 - 1e-9)
         assert total[marked].sum() - total[marked].min() <= bulk * total.sum() * (1.0 + 1e-9)
+
+
+@pytest.mark.parametrize(
+    ("strength", "factor"), [(0.5, 1.0), (0.03, 1.0), (0.015, 1.75), (0.0, 2.5)]
+)
+def test_weak_couplings_get_wider_bars(strength: float, factor: float) -> None:
+    """What leaks through a shield does not follow the common slope; diagonals are as they were."""
+    value = np.array([[4.0, -6.0 * strength, 4.0], [-6.0 * strength, 9.0, 9.0]])
+    wide = module._widening(value)
+    assert wide[0, 1] == wide[1, 0] == pytest.approx(factor)
+    assert np.all(np.diagonal(wide) == 1.0)
+
+
+def test_row_sum_of_a_lone_body_has_the_bar_of_its_diagonal() -> None:
+    """And one that a shield brings down to nothing has a wider one."""
+    assert module._widening(np.array([[4.0, 4.0]]))[0, 1] == 1.0
+    assert module._widening(np.array([[4.0, -4.0, 0.0], [-4.0, 9.0, 5.0]]))[0, 2] == module.WIDEST

@@ -65,15 +65,15 @@ def _milestone(progress: Progress) -> str | int:
 
 
 def line_of(progress: Progress, tolerance: float) -> str:
-    """One line: round, panels, largest bar over target, target, elapsed, phase."""
+    """One line: elapsed, round, panels, largest bar in units of the target, target, phase."""
     elapsed = f"{progress.elapsed:.1f} s"
     if progress.round == 0:
         return f"{elapsed}: {progress.phase}"
     known = math.isfinite(progress.worst)
-    bar = f"{progress.worst:.3g}" if known else "not known yet"
+    bar = f"{progress.worst:.3g} x" if known else "unknown,"
     return (
         f"{elapsed}: round {progress.round}, {progress.panels} panels, "
-        f"largest bar / target {bar}, target {tolerance:g}, {progress.phase}"
+        f"largest bar {bar} target {tolerance:g}, {progress.phase}"
     )
 
 

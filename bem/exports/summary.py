@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from typing import Any
 
 import numpy as np
@@ -14,6 +15,9 @@ from bem.units import metre_unit
 
 MEANING = "{sign} is a bound meant to hold for at least 95 % of entries"
 MOST_NOTES = 10
+WIDEST_NAME = 30
+_ROUTINE = re.compile(r"[\d,]+ corners as read joined into [\d,]+ vertices")
+"""Every STL needs this; it stays in the JSON file and in what inspect prints."""
 
 _TOTAL = "total"
 
@@ -41,10 +45,28 @@ def _outcome(result: CapacitanceResult) -> str:
     worst = max(result.rounds[-1].worst, float(result.used.max()))
     times = f"{worst:.2g} times" if math.isfinite(worst) else "not yet comparable with"
     largest = f"the largest bar is {times} what it allows"
+    pair = _worst_pair(result)
+    if pair:
+        largest = pair
     if result.converged:
         return f"tolerance {result.tolerance:g} reached: {largest}"
     reason = remedy(result.stopped_by, result.converged)
     return f"TOLERANCE {result.tolerance:g} NOT REACHED: {largest}; {reason}"
+
+
+def _worst_pair(result: CapacitanceResult) -> str:
+    """Words for the coupling that was asked for by name and is the furthest from its goal."""
+    i, j = np.unravel_index(int(np.argmax(result.used)), result.used.shape)
+    names = (result.conductors[i], result.conductors[j])
+    asked = result.pairs.get(names, result.pairs.get(names[::-1]))
+    value, bar = abs(result.capacitance[i, j]), result.error[i, j]
+    if asked is None or result.allowance[i, j] < asked * value * (1.0 - 1e-9) or value == 0.0:
+        return ""
+    first, second = (shown(name, WIDEST_NAME) for name in names)
+    return (
+        f"the pair {first}, {second} has a bar of {100.0 * bar / value:.2g} % "
+        f"of its value, asked was {100.0 * asked:g} %"
+    )
 
 
 def _effort(result: CapacitanceResult) -> str:
@@ -58,7 +80,10 @@ def _effort(result: CapacitanceResult) -> str:
 
 def _phases(result: CapacitanceResult) -> list[str]:
     phases = {phase: time for phase, time in result.seconds.items() if phase != _TOTAL}
-    parts = [f"{shown(phase)} {time:.2g} s" for phase, time in phases.items()]
+    parts = [
+        f"{shown(phase)} {time:.0f} s" if time >= 10.0 else f"{shown(phase)} {time:.2g} s"
+        for phase, time in phases.items()
+    ]
     return [f"time by phase: {', '.join(parts)}"] if parts else []
 
 
@@ -102,6 +127,7 @@ def _changes(result: CapacitanceResult) -> list[str]:
         f"{shown(str(entry.get('name')))}: {shown(change)}"
         for entry in result.inputs
         for change in entry.get("changes", ())
+        if not _ROUTINE.fullmatch(str(change))
     ]
     left_out = len(notes) - MOST_NOTES
     more = [f"{left_out} more changes on reading; all are in the JSON file"] if left_out > 0 else []

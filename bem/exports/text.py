@@ -12,6 +12,8 @@ from bem.exports.tables import Row, Table, tables_of
 from bem.results.result import CapacitanceResult
 
 WIDTH = 80
+_SECOND_COLUMN = "\0"
+"""Stands for the second column of a wide character while lines are filled."""
 PLUS_MINUS = "±"
 PLUS_MINUS_ASCII = "+-"
 
@@ -34,7 +36,9 @@ def report(result: CapacitanceResult, sign: str = PLUS_MINUS) -> str:
 
 def wrapped(line: str) -> str:
     """``line`` in at most 80 columns, continued lines indented."""
-    return textwrap.fill(line, WIDTH, subsequent_indent=_INDENT, break_on_hyphens=False)
+    counted = "".join(c + _SECOND_COLUMN * (columns(c) - 1) for c in line)
+    filled = textwrap.fill(counted, WIDTH, subsequent_indent=_INDENT, break_on_hyphens=False)
+    return filled.replace(_SECOND_COLUMN, "")
 
 
 def table_text(table: Table, sign: str) -> str:

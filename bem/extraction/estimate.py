@@ -22,8 +22,9 @@ KAPPA_USUAL = 1.05
 KAPPA_DRAW = 2.0
 KAPPA_LOW, KAPPA_HIGH = 0.6, 3.0
 SHARE, TREND, DOUBT, FACET = 0.2, 0.35, 0.4, 0.7
-ROW_SHARE = 0.5
-"""The same as SHARE for row sums: they are differences, and nearly vanish behind a shield."""
+WEAK, WIDEST = 0.03, 2.5
+"""Couplings below WEAK sqrt(C_ii C_jj), and row sums below the diagonal, get wider bars: up to
+WIDEST times where they vanish beside it."""
 FLOOR = 1e-6
 ROUNDS = 4
 """Rounds before the trend is believed; until then the whole indicator stands for it."""
@@ -97,6 +98,20 @@ def _extrapolated(rounds: list[Sums]) -> np.ndarray:
     return last.value + _kappa(rounds)[0] * last.signed + last.faceting
 
 
+def _widening(value: np.ndarray) -> np.ndarray:
+    """(k, k + 1) factor on the bars of entries that are small differences of large ones.
+
+    Couplings through gaps in a shield, and row sums of shielded bodies, depend on densities
+    that the large entries hardly see, and their errors do not follow the common slope.
+    """
+    root = np.sqrt(np.diagonal(value))
+    strength = np.abs(value) / (root[:, None] * np.append(root, 1.0))
+    strength[:, -1] = np.abs(value[:, -1]) / np.diagonal(value)
+    weak = np.clip(1.0 - strength / WEAK, 0.0, 1.0)
+    weak[:, -1] = np.clip(1.0 - strength[:, -1], 0.0, 1.0)
+    return 1.0 + (WIDEST - 1.0) * weak
+
+
 def estimate(rounds: list[Sums]) -> Estimate:
     """Value and bar after the last of ``rounds``."""
     last = rounds[-1]
@@ -110,13 +125,12 @@ def estimate(rounds: list[Sums]) -> Estimate:
     root = np.sqrt(np.diagonal(last.value))
     floor = FLOOR * root[:, None] * np.append(root, np.sqrt(max(last.value[:, -1].sum(), 0.0)))
     facets = facet_doubt(last.faceting, last.value)
-    share = np.full(last.absolute.shape, SHARE)
-    share[:, -1] = ROW_SHARE
+    wide = _widening(value)
     parts = {
-        "discretisation": (share + DOUBT * doubt) * last.absolute,
-        "trend": trend,
+        "discretisation": wide * (SHARE + DOUBT * doubt) * last.absolute,
+        "trend": wide * trend,
         "quadrature": last.quadrature + floor,
         "input rounding": last.rounding,
-        "faceting": facets * np.abs(last.faceting),
+        "faceting": wide * facets * np.abs(last.faceting),
     }
     return Estimate(value, sum(parts.values()), parts, kappa, facets)

@@ -22,7 +22,7 @@ from bem.extraction.scaled import ScaledScene
 from bem.extraction.threads import use_threads
 from bem.panels.mesh import Mesh
 from bem.results.result import CapacitanceResult, Round
-from bem.scene.inspect import check_scene
+from bem.scene.inspect import Inspection, check_scene
 from bem.scene.scene import Scene
 
 MAX_PANELS = 10000
@@ -97,7 +97,17 @@ def extract(
         "relative_permittivity": scene.relative_permittivity,
         "operator": "dense",
     }
-    return _result(scene, scaled, run, findings, (seconds, settings, tuple(inspection.notes)))
+    return _result(scene, scaled, run, findings, (seconds, settings, _warnings(scene, inspection)))
+
+
+def _warnings(scene: Scene, inspection: Inspection) -> tuple[str, ...]:
+    lines = list(inspection.warnings)
+    if scene.relative_permittivity < 1.0:
+        lines.append(
+            f"relative permittivity {scene.relative_permittivity:g} is below that of vacuum, 1; "
+            "check the number"
+        )
+    return tuple(lines)
 
 
 def _goal(scene: Scene, tolerance: float, pairs: dict[tuple[str, str], float]) -> Goal:

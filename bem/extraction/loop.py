@@ -18,7 +18,7 @@ from bem.operators.dense import Reuse, far_reach
 from bem.panels.mesh import Mesh
 
 MOST_ROUNDS = 60
-FINE_START, EARLY = 1000, 0.3
+FINE_START, EARLY = 500, 0.3
 """A mesh of so many panels may do at once, if its bar is below this part of what is allowed."""
 BULK_FAR, BULK_NEAR = 0.85, 0.7
 """Part of the promise that is refined in one round, far from the goal and near it."""

@@ -28,8 +28,11 @@ def available_bytes() -> int:
 
 
 def readable(size: float) -> str:
-    """Bytes as MB or GB."""
-    return f"{size / 1e9:.2f} GB" if size >= 1e9 else f"{size / 1e6:.0f} MB"
+    """Bytes as kB, MB or GB."""
+    for unit, scale in (("GB", 1e9), ("MB", 1e6)):
+        if size >= scale:
+            return f"{size / scale:.3g} {unit}"
+    return f"{size / 1e3:.3g} kB"
 
 
 @dataclass(frozen=True)
@@ -60,6 +63,6 @@ class MemoryPlan:
         if not self.fits(panels):
             raise MemoryRefused(
                 f"the starting mesh of {panels} panels needs {readable(self.need(panels))}, "
-                f"the limit is {readable(self.limit)}: raise --memory, or use a coarser mesh "
-                "of the curved faces"
+                f"the limit is {readable(self.limit)}: raise --memory, or use coarser "
+                "facets on curved faces"
             )

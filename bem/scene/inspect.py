@@ -71,13 +71,15 @@ class Inspection:
         bodies: one report per conductor.
         pairs: sorted by gap; with many conductors those far apart are left out.
         fatal: reasons not to solve, one line each.
-        notes: what is worth knowing, one line each.
+        warnings: what may be wrong with a body, one line each.
+        notes: what is worth knowing, one line each, the warnings among it.
     """
 
     unit: str
     bodies: tuple[BodyReport, ...]
     pairs: tuple[PairReport, ...]
     fatal: list[str]
+    warnings: list[str]
     notes: list[str]
 
 
@@ -94,15 +96,14 @@ def inspect(scene: Scene) -> Inspection:
     pairs = tuple(all_pairs(bodies))
     solid = {c.name: c.body == "solid" for c in scene.conductors}
     bad = [pair for pair in pairs if _is_fatal(pair, solid)]
+    warnings = _all_body_notes(reports, bodies, scene.unit)
     return Inspection(
         unit=scene.unit,
         bodies=reports,
         pairs=pairs,
         fatal=[_reason(pair, scene.unit) for pair in bad],
-        notes=[
-            *_all_body_notes(reports, bodies, scene.unit),
-            *_pair_notes([pair for pair in pairs if pair not in bad], len(bodies)),
-        ],
+        warnings=warnings,
+        notes=[*warnings, *_pair_notes([p for p in pairs if p not in bad], len(bodies))],
     )
 
 

@@ -28,9 +28,9 @@ def solve_dense(operator: DenseOperator, right: np.ndarray) -> np.ndarray:
         factor = cho_factor(matrix, lower=True, overwrite_a=True, check_finite=False)
     except LinAlgError as error:
         raise SolutionError(
-            f"the system of {operator.size} panels is not positive definite ({error}): "
-            "two conductors are too close for their size, or faces overlap; "
-            "run 'bem inspect' and check the gaps"
+            f"the system of {operator.size} panels is not positive definite: "
+            "faces of one body overlap or lie there twice, or two conductors are too close "
+            "for their size; mend the mesh, and check the gaps with 'bem inspect'"
         ) from error
     density = scale[:, None] * cho_solve(factor, scale[:, None] * right, check_finite=False)
     if not np.isfinite(density).all():
