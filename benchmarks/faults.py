@@ -178,15 +178,15 @@ BARS = (
     Fault(
         "bar without its parts of discretisation",
         "extraction/estimate.py",
-        "(share + DOUBT * doubt) * last.absolute",
-        "0.0 * (share + DOUBT * doubt) * last.absolute",
+        "wide * (SHARE + DOUBT * doubt) * last.absolute",
+        "0.0 * (SHARE + DOUBT * doubt) * last.absolute",
         WHOLE,
     ),
     Fault(
         "bar without the trend of the value",
         "extraction/estimate.py",
-        '"trend": TREND * drift',
-        '"trend": 0.0 * TREND * drift',
+        '"trend": wide * trend',
+        '"trend": 0.0 * trend',
         WHOLE,
     ),
     Fault(
