@@ -36,7 +36,7 @@ KNOWN = 0.2
 
 
 @dataclass
-class Session:
+class Survey:
     """Results so far.
 
     Args:
@@ -83,25 +83,25 @@ def tight_truth(case: Case) -> Truth:
     return Truth(found.value, found.bar, False)
 
 
-def know(session: Session, case: Case) -> Truth | None:
+def know(survey: Survey, case: Case) -> Truth | None:
     """Look up or make the truth of a case, or note why there is none."""
     key = case.like or case.name
-    if key not in session.truths:
+    if key not in survey.truths:
         if case.truth is not None:
-            session.truths[key] = case.truth
+            survey.truths[key] = case.truth
         elif case.like is None:
-            _make_truth(session, case)
-    return session.truths.get(key)
+            _make_truth(survey, case)
+    return survey.truths.get(key)
 
 
-def _make_truth(session: Session, case: Case) -> None:
+def _make_truth(survey: Survey, case: Case) -> None:
     try:
-        session.truths[case.name] = tight_truth(case)
+        survey.truths[case.name] = tight_truth(case)
     except bem.BemError as problem:
-        session.left_out[case.name] = f"the tight run has no result: {problem}"
+        survey.left_out[case.name] = f"the tight run has no result: {problem}"
 
 
-def compare(session: Session, solved: Solved, truth: Truth, extra: float) -> None:
+def compare(survey: Survey, solved: Solved, truth: Truth, extra: float) -> None:
     """Note every entry of a result once; ``extra`` is relative slack of each."""
     n = len(solved.value)
     slack = truth.slack + extra * np.abs(truth.columns)
@@ -115,20 +115,20 @@ def compare(session: Session, solved: Solved, truth: Truth, extra: float) -> Non
                 float(solved.value[i, j]), float(solved.bar[i, j]),
                 float(truth.columns[i, j]), float(slack[i, j]), float(size[i, j]),
             )  # fmt: skip
-            _note(session, entry)
+            _note(survey, entry)
 
 
-def _note(session: Session, entry: Entry) -> None:
+def _note(survey: Survey, entry: Entry) -> None:
     if entry.slack <= KNOWN * entry.bar:
-        session.entries.append(entry)
+        survey.entries.append(entry)
         return
     name = f"{entry.case}, {entry.kind} {entry.row},{entry.column}, t = {entry.tolerance:g}"
-    session.left_out[name] = f"truth known to {entry.slack:.1e}, the bar is {entry.bar:.1e}"
+    survey.left_out[name] = f"truth known to {entry.slack:.1e}, the bar is {entry.bar:.1e}"
 
 
-def run_case(session: Session, case: Case, tolerance: float, folder: Path | None) -> None:
+def run_case(survey: Survey, case: Case, tolerance: float, folder: Path | None) -> None:
     """Run one case; from files where ``folder`` is given and the case is flat."""
-    truth = know(session, case)
+    truth = know(survey, case)
     if truth is None:
         return
     through_files = folder is not None and case.flat
@@ -137,58 +137,58 @@ def run_case(session: Session, case: Case, tolerance: float, folder: Path | None
         solved = solve(case.name, scene, tolerance)
     except bem.BemError as problem:
         kept = f"refused, as it may: {problem}" if case.may_refuse else f"no result: {problem}"
-        session.left_out[f"{case.name}, t = {tolerance:g}"] = kept
-        session.outcomes.append(Outcome(case.name, tolerance, 0, 0, kept, 0.0, case.may_refuse))
+        survey.left_out[f"{case.name}, t = {tolerance:g}"] = kept
+        survey.outcomes.append(Outcome(case.name, tolerance, 0, 0, kept, 0.0, case.may_refuse))
         return
-    session.outcomes.append(solved.outcome)
-    compare(session, solved, truth, rounding(case) if through_files else 0.0)
+    survey.outcomes.append(solved.outcome)
+    compare(survey, solved, truth, rounding(case) if through_files else 0.0)
 
 
-def run_slope(session: Session, slope: Slope, tolerance: float) -> None:
+def run_slope(survey: Survey, slope: Slope, tolerance: float) -> None:
     """Run both lengths and note their difference over that of the lengths."""
     try:
         two = [solve(slope.name, case.scene(), tolerance) for case in (slope.short, slope.long)]
     except bem.BemError as problem:
-        session.left_out[f"{slope.name}, t = {tolerance:g}"] = f"no result: {problem}"
-        session.outcomes.append(Outcome(slope.name, tolerance, 0, 0, str(problem), 0.0))
+        survey.left_out[f"{slope.name}, t = {tolerance:g}"] = f"no result: {problem}"
+        survey.outcomes.append(Outcome(slope.name, tolerance, 0, 0, str(problem), 0.0))
         return
     step = slope.lengths[1] - slope.lengths[0]
     value = float(two[1].value[0, 0] - two[0].value[0, 0]) / step
     bar = float(two[1].bar[0, 0] + two[0].bar[0, 0]) / step
-    session.outcomes.extend(solved.outcome for solved in two)
+    survey.outcomes.extend(solved.outcome for solved in two)
     _note(
-        session,
+        survey,
         Entry(
             slope.name, tolerance, "slope", True, 0, 0, value, bar, slope.exact, 1e-6, slope.exact
         ),
     )
 
 
-def run_all(session: Session, tolerances: list[float], only: str) -> None:
+def run_all(survey: Survey, tolerances: list[float], only: str) -> None:
     """Run cases whose name holds ``only``, printing a line for each."""
     cases = all_cases()
     by_name = {case.name: case for case in cases}
     for case in [c for c in cases if only in c.name]:
         if case.like:
-            know(session, by_name[case.like])
+            know(survey, by_name[case.like])
         for tolerance in tolerances:
-            run_case(session, case, tolerance, None)
+            run_case(survey, case, tolerance, None)
             with tempfile.TemporaryDirectory() as folder:
-                run_case(session, turned(case), tolerance, Path(folder))
+                run_case(survey, turned(case), tolerance, Path(folder))
             print(".", end="", flush=True)
     for slope in [s for s in slopes() if only in s.name]:
         for tolerance in tolerances:
-            run_slope(session, slope, tolerance)
+            run_slope(survey, slope, tolerance)
     print()
 
 
-def save(session: Session, path: Path) -> None:
+def save(survey: Survey, path: Path) -> None:
     """Write the raw numbers."""
     record = {
         "unit": "L = C / (4 pi eps0), metres",
-        "entries": [asdict(entry) for entry in session.entries],
-        "outcomes": [asdict(outcome) for outcome in session.outcomes],
-        "left_out": session.left_out,
+        "entries": [asdict(entry) for entry in survey.entries],
+        "outcomes": [asdict(outcome) for outcome in survey.outcomes],
+        "left_out": survey.left_out,
     }
     path.write_text(json.dumps(record, indent=1) + "\n")
 
@@ -200,11 +200,11 @@ def main() -> None:
     parser.add_argument("--only", default="", help="cases whose name holds this")
     parser.add_argument("--tolerance", type=float, action="append", choices=TOLERANCES)
     options = parser.parse_args()
-    session = Session()
-    run_all(session, options.tolerance or list(TOLERANCES), options.only)
+    survey = Survey()
+    run_all(survey, options.tolerance or list(TOLERANCES), options.only)
     if options.out:
-        save(session, options.out)
-    print_report(session.entries, session.outcomes, session.left_out)
+        save(survey, options.out)
+    print_report(survey.entries, survey.outcomes, survey.left_out)
 
 
 if __name__ == "__main__":
