@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import math
+import os
 import tracemalloc
 from typing import Any
 
-import numba
 import numpy as np
 import pytest
 from scenes import moved, scene_of
@@ -18,6 +18,7 @@ from bem.extraction.memory import MemoryPlan, readable
 from bem.extraction.progress import Progress
 from bem.extraction.threads import use_threads
 from bem.geometry import shapes
+from bem.kernels.parallel import workers
 
 
 def cube_scene() -> bem.Scene:
@@ -265,25 +266,25 @@ def test_a_breakdown_late_keeps_the_result_and_early_does_not(
 
 
 def test_threads_are_set_while_it_runs_and_put_back() -> None:
-    before = numba.get_num_threads()
+    before = workers()
     during: list[int] = []
     result = bem.extract(
         cube_scene(), tolerance=0.1, threads=1, progress=lambda p: during.append(p.round)
     )
     assert result.settings["threads"] == 1
-    assert numba.get_num_threads() == before
+    assert workers() == before
     with use_threads(1) as used:
-        assert used == numba.get_num_threads() == 1
-    assert numba.get_num_threads() == before
+        assert used == workers() == 1
+    assert workers() == before
 
 
 def test_all_usable_cores_by_default() -> None:
     with use_threads(None) as used:
-        assert used == numba.get_num_threads() >= 1
+        assert used == workers() >= 1
 
 
 def test_the_number_of_threads_changes_no_digit() -> None:
-    most = min(2, numba.config.NUMBA_NUM_THREADS)
+    most = min(2, os.cpu_count() or 1)
     one, more = (bem.extract(screened_pair(), 1e-2, threads=n) for n in (1, most))
     assert np.array_equal(one.capacitance, more.capacitance)
     assert np.array_equal(one.error, more.error)

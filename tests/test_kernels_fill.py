@@ -2,15 +2,17 @@
 
 from __future__ import annotations
 
-import numba
+from concurrent.futures import ThreadPoolExecutor
+
 import numpy as np
 import pytest
 from panel_shapes import SKEW, SQUARE, TRIANGLE, turned
 from reference_integrals import pair_integral, potential
 
+import bem
 from bem.geometry import shapes
 from bem.geometry.surface import Surface
-from bem.kernels import pairs
+from bem.kernels import pairs, parallel
 from bem.kernels.arrays import panel_arrays
 from bem.kernels.targets import make_targets
 from bem.operators import dense
@@ -194,16 +196,44 @@ def test_reuse_gives_the_very_entries_of_a_fresh_fill(surface: Surface) -> None:
 
 def test_threads_do_not_change_a_bit() -> None:
     corners = cloud(60, 8)
-    before = numba.get_num_threads()
-    try:
-        numba.set_num_threads(1)
-        one = operator_of(corners).matrices
-        numba.set_num_threads(min(2, numba.config.NUMBA_NUM_THREADS))
-        two = operator_of(corners).matrices
-    finally:
-        numba.set_num_threads(before)
-    assert np.array_equal(one.single, two.single)
-    assert np.array_equal(one.tests, two.tests)
+    one = operator_of(corners).matrices
+    for count in (2, 5):
+        with parallel.working_with(count):
+            more = operator_of(corners).matrices
+        assert np.array_equal(one.single, more.single)
+        assert np.array_equal(one.tests, more.tests)
+
+
+@pytest.mark.parametrize("count", [1, 2, 3, 7])
+@pytest.mark.parametrize("rows", [1, 2, 31, 500])
+def test_blocks_cover_every_row_once(rows: int, count: int) -> None:
+    seen: list[int] = []
+
+    def work(first: int, last: int) -> int:
+        seen.extend(range(first, last))
+        return last - first
+
+    with parallel.working_with(count):
+        assert parallel.sum_over_rows(rows, work) == rows
+    assert sorted(seen) == list(range(rows))
+    assert parallel.workers() == 1
+
+
+def test_a_failure_in_a_block_comes_out() -> None:
+    def work(first: int, last: int) -> int:
+        raise KeyboardInterrupt if first else ValueError
+
+    with parallel.working_with(2), pytest.raises((KeyboardInterrupt, ValueError)):
+        parallel.sum_over_rows(40, work)
+
+
+def test_extractions_in_threads_of_one_program() -> None:
+    """Each with its own number of threads; all get the same matrix."""
+    scene = bem.Scene(unit="m")
+    scene.add_conductor("box", shapes.box(1.0, 2.0, 0.5))
+    with ThreadPoolExecutor(3) as pool:
+        found = list(pool.map(lambda n: bem.extract(scene, 1e-2, threads=1 + n % 2), range(3)))
+    assert all(np.array_equal(r.capacitance, found[0].capacitance) for r in found)
 
 
 @pytest.mark.parametrize("count", [1, 2, 8, 100])

@@ -65,6 +65,8 @@ def extract(
     _check_counts(max_panels, memory)
     report = progress or (lambda _: None)
     report(Progress("checking the geometry", 0, 0, float("nan"), 0.0))
+    if _must_compile():
+        report(Progress("compiling kernels, first run only", 0, 0, float("nan"), 0.0))
     inspection = check_scene(scene)
     checked = time.perf_counter()
     scaled = ScaledScene.of(scene)
@@ -73,8 +75,6 @@ def extract(
     mesh = Mesh.start(scaled.surfaces, hollow, limits.check_start)
     run = Run(len(scene.conductors), goal, limits, report, started=started)
     with use_threads(threads) as used:
-        if _must_compile():
-            report(Progress("compiling kernels, first run only", 0, 0, float("nan"), run.elapsed))
         run.go(mesh)
         solved = time.perf_counter()
         findings = audit(run.rounds[-1].solution, run.rounds[-1].found)
@@ -143,11 +143,11 @@ def _check_counts(max_panels: int, memory: int | None) -> None:
 def _must_compile() -> bool:
     """Whether the largest kernel is in no cache yet."""
     from bem.compiled import FOLDER
-    from bem.kernels.pairs import fill
+    from bem.kernels.pairs import fill_block
 
-    if fill.signatures:
+    if fill_block.signatures:
         return False
-    return not any(FOLDER.rglob("pairs.fill-*.nbi"))
+    return not any(FOLDER.rglob("pairs.fill_block-*.nbi"))
 
 
 def _record(state: RoundState, farad: float) -> Round:

@@ -11,10 +11,10 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from numbers import Integral
 
-import numba
 from threadpoolctl import threadpool_limits
 
 from bem.errors import UsageError
+from bem.kernels.parallel import working_with
 
 
 def usable_cores() -> int:
@@ -29,16 +29,11 @@ def use_threads(asked: int | None) -> Iterator[int]:
     """Set the number of threads while the body runs; yields the number used.
 
     Raises:
-        UsageError: less than one thread, or more than the compiled code was started with.
+        UsageError: less than one thread, or more than the machine has processors.
     """
-    most = int(getattr(numba.config, "NUMBA_NUM_THREADS", 1))
+    most = os.cpu_count() or 1
     if asked is not None and not (isinstance(asked, Integral) and 1 <= asked <= most):
         raise UsageError(f"threads: found {asked!r}, allowed is 1 to {most} on this machine")
-    count = asked if asked is not None else min(most, usable_cores())
-    before = numba.get_num_threads()
-    numba.set_num_threads(count)
-    try:
-        with threadpool_limits(limits=1, user_api="blas"):
-            yield count
-    finally:
-        numba.set_num_threads(before)
+    count = int(asked) if asked is not None else usable_cores()
+    with threadpool_limits(limits=1, user_api="blas"), working_with(count):
+        yield count

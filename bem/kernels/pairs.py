@@ -19,11 +19,11 @@ import math
 from typing import NamedTuple
 
 import numpy as np
-from numba import prange
 
 from bem.compiled import njit
 from bem.kernels.arrays import PanelArrays
 from bem.kernels.expansion import dot, far_pair
+from bem.kernels.parallel import sum_over_rows
 from bem.kernels.polygons import coplanar_pair
 from bem.kernels.potential import ROWS, potential
 from bem.kernels.rectangles import parallel_pair, perpendicular_pair
@@ -239,7 +239,17 @@ def mirror(single: np.ndarray) -> None:
                         single[i, j] = single[j, i]
 
 
-@njit(cache=True, parallel=True, error_model="numpy")
+@njit(cache=True, nogil=True, error_model="numpy")
+def fill_block(first, last, panels, targets, reach, origin, old, new):
+    """Rows first to last (excluded) of ``fill``; near pairs below the diagonal stay NaN."""
+    sampled = 0
+    for i in range(first, last):
+        if origin[i] >= 0:
+            _copy_row(i, origin, old, new)
+        sampled += _fill_row(i, panels, targets, reach, origin, new)
+    return sampled
+
+
 def fill(
     panels: PanelArrays,
     targets: Targets,
@@ -250,9 +260,8 @@ def fill(
 ) -> int:
     """Fill ``new``, taking over from ``old`` the pairs of panels that it knows.
 
-    Near pairs are computed once and mirrored (in a function of its own, or the compiler
-    would fuse it with the loop that it must follow); all others have both rows, which differ
-    by quadrature error only.
+    Near pairs are computed once and mirrored; all others have both rows, which differ by
+    quadrature error only.
 
     Args:
         panels: geometry of n panels.
@@ -265,12 +274,11 @@ def fill(
     Returns:
         Number of pairs that were sampled against an exact potential.
     """
-    sampled = 0
-    for k in prange(panels.area.size):
-        i = np.int64(k)  # the loop's own type would have every callee compiled a second time
-        if origin[i] >= 0:
-            _copy_row(i, origin, old, new)
-        sampled += _fill_row(i, panels, targets, reach, origin, new)
+
+    def block(first: int, last: int) -> int:
+        return int(fill_block(first, last, panels, targets, reach, origin, old, new))
+
+    sampled = sum_over_rows(len(panels.area), block)
     mirror(new.single)
     return sampled
 
