@@ -402,3 +402,20 @@ def test_two_runs_give_the_same_bits() -> None:
     assert np.array_equal(first.capacitance, second.capacitance)
     assert np.array_equal(first.error, second.error)
     assert first.audit == second.audit
+
+
+@pytest.mark.parametrize("shape", [shapes.box(1.0, 1.0, 1.0), shapes.sphere(0.6)])
+def test_what_leaks_past_a_shield_is_inside_its_bar(shape: bem.Surface) -> None:
+    """Couplings of 1e-5 of the diagonal, by default and asked for by name, against a tight pair."""
+    scene = bem.Scene(unit="mm")
+    scene.add_conductor("above", shape, place=bem.Place(shift=(1.0, 0.0, 3.0)))
+    scene.add_conductor("below", shape, place=bem.Place(shift=(0.0, 0.0, -2.0)))
+    scene.add_conductor("shield", shapes.plate(20.0, 20.0))
+    pair = ("above", "below")
+    truth = bem.extract(scene, pairs={pair: 0.01}, threads=1)
+    assert truth.converged
+    for pairs in ({}, {pair: 0.2}, {pair: 0.05}):
+        found = bem.extract(scene, pairs=pairs, threads=1)
+        apart = abs(found.capacitance[0, 1] - truth.capacitance[0, 1])
+        assert apart <= found.error[0, 1] + truth.error[0, 1]
+        assert found.error[0, 1] <= max(pairs.values(), default=1.0) * abs(found.capacitance[0, 1])
