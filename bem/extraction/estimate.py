@@ -22,8 +22,9 @@ KAPPA_USUAL = 1.05
 KAPPA_DRAW = 2.0
 KAPPA_LOW, KAPPA_HIGH = 0.6, 3.0
 SHARE, TREND, DOUBT, FACET = 0.2, 0.35, 0.4, 0.7
-WEAK, WIDEST = 0.03, 2.5
-"""Couplings below WEAK sqrt(C_ii C_jj), and row sums below the diagonal, get wider bars: up to
+"""Factors of the parts of the bar, in the order of the formula above."""
+WEAK, WEAK_ROW, WIDEST = 0.03, 0.3, 2.5
+"""Couplings below WEAK sqrt(C_ii C_jj), and row sums below WEAK_ROW C_ii, get wider bars: up to
 WIDEST times where they vanish beside it."""
 FLOOR = 1e-6
 ROUNDS = 4
@@ -108,7 +109,7 @@ def _widening(value: np.ndarray) -> np.ndarray:
     strength = np.abs(value) / (root[:, None] * np.append(root, 1.0))
     strength[:, -1] = np.abs(value[:, -1]) / np.diagonal(value)
     weak = np.clip(1.0 - strength / WEAK, 0.0, 1.0)
-    weak[:, -1] = np.clip(1.0 - strength[:, -1], 0.0, 1.0)
+    weak[:, -1] = np.clip(1.0 - strength[:, -1] / WEAK_ROW, 0.0, 1.0)
     return 1.0 + (WIDEST - 1.0) * weak
 
 
