@@ -14,7 +14,7 @@ from bem.extraction.marking import Goal, indicator, mark
 from bem.extraction.memory import MemoryPlan, readable
 from bem.extraction.progress import Progress
 from bem.extraction.solution import Solution, Sums, solve_round, sums
-from bem.operators.dense import Reuse, far_reach
+from bem.operators.dense import DenseOperator, Reuse, far_reach
 from bem.panels.mesh import Mesh
 
 MOST_ROUNDS = 60
@@ -124,7 +124,9 @@ class Run:
         if origin is None:
             return None
         earlier = self.rounds[-1].solution.operator
-        return Reuse(earlier, origin) if earlier.far == self._far() else None
+        if isinstance(earlier, DenseOperator) and earlier.far == self._far():
+            return Reuse(earlier, origin)
+        return None
 
     def _keep(self, solution: Solution) -> None:
         """Estimate the round, and let go of the matrices of the one before."""

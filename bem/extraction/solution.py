@@ -23,6 +23,7 @@ from bem.kernels.indicator_energy import indicator_energies
 from bem.kernels.potential import potential_of_panels
 from bem.kernels.targets import make_targets
 from bem.operators.dense import DenseOperator, Reuse
+from bem.operators.operator import Operator
 from bem.panels.mesh import Faceting, Mesh
 from bem.solve.dense import solve_dense
 
@@ -44,7 +45,7 @@ class Solution:
 
     mesh: Mesh
     panels: PanelArrays
-    operator: DenseOperator
+    operator: Operator
     density: np.ndarray
     residual: np.ndarray
 

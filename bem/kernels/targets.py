@@ -15,7 +15,6 @@ import numpy as np
 from bem.kernels.arrays import PanelArrays, bilinear, gauss_square
 
 GAUSS_POINTS = 4
-TESTS = 4
 XI, ETA, _WEIGHT = gauss_square(GAUSS_POINTS)
 
 

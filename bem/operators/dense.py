@@ -10,8 +10,6 @@ from bem.kernels import pairs
 from bem.kernels.arrays import PanelArrays
 from bem.kernels.targets import Targets
 
-BYTES_PER_ENTRY = 8 + 16
-"""A in double, four tests in single precision."""
 NEAR = 1.5
 """Pairs nearer than this times the sum of both radii are integrated exactly."""
 LEAST_FAR = 2.5

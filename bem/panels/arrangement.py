@@ -13,13 +13,6 @@ from dataclasses import dataclass
 import numpy as np
 
 
-@dataclass(frozen=True)
-class Trapezoid:
-    """Corners (4, 2): lower left, lower right, upper right, upper left."""
-
-    corners: np.ndarray
-
-
 @dataclass
 class _Open:
     """A trapezoid that still grows upward between two walls."""
