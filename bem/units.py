@@ -33,7 +33,7 @@ def metres_per(unit: str) -> float:
     """
     if unit in METRES_PER:
         return METRES_PER[unit]
-    near = difflib.get_close_matches(str(unit), METRES_PER, n=1, cutoff=0.5)
+    near = difflib.get_close_matches(str(unit).lower(), METRES_PER, n=1, cutoff=0.5)
     hint = f" (did you mean {near[0]!r}?)" if near else ""
     raise UsageError(f"unit: found {unit!r}{hint}; allowed are {', '.join(METRES_PER)}")
 

@@ -46,3 +46,8 @@ def test_unknown_units_are_refused_with_those_known(unit: str) -> None:
 )
 def test_sensible_units(farad: float, name: str) -> None:
     assert farad_unit(farad)[0] == name
+
+
+def test_the_nearest_unit_is_suggested_whatever_its_case() -> None:
+    with pytest.raises(bem.UsageError, match=r"found 'MM' \(did you mean 'mm'\?\)"):
+        metres_per("MM")
