@@ -162,3 +162,15 @@ def scene_from_files(folder: Path, surfaces: Iterable[Surface]) -> bem.Scene:
     for k, surface in enumerate(surfaces):
         from_stl(scene, folder, f"c{k}", surface)
     return scene
+
+
+def check(result: bem.CapacitanceResult, exact: np.ndarray, slack: float = 0.0) -> None:
+    """Require every entry to be within its bar and the tolerance, and so the row sums."""
+    size = np.sqrt(np.diag(exact))
+    scale = np.outer(size, size)
+    apart = np.abs(in_lengths(result.capacitance) - exact)
+    assert result.converged
+    assert np.all(apart <= result.tolerance * scale + slack), apart / scale
+    assert np.all(apart <= in_lengths(result.error) + slack), apart / in_lengths(result.error)
+    row = np.abs(in_lengths(result.row_sum) - exact.sum(axis=1))
+    assert np.all(row <= in_lengths(result.row_sum_error) + slack)

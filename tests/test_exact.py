@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from reference_formulas import coaxial_line
 from reference_values import BY_NAME
-from scenes import in_lengths, moved, scene_of, scene_of_reference
+from scenes import check, moved, scene_of, scene_of_reference
 
 import bem
 from bem.geometry import shapes
@@ -32,18 +32,6 @@ CLOSED = (
 )
 NECK = 1e-6
 """Touching spheres are joined by a neck of a thousandth of their radius: its share of L."""
-
-
-def check(result: bem.CapacitanceResult, exact: np.ndarray, slack: float = 0.0) -> None:
-    """Require every entry to be within its bar and the tolerance, and so the row sums."""
-    size = np.sqrt(np.diag(exact))
-    scale = np.outer(size, size)
-    apart = np.abs(in_lengths(result.capacitance) - exact)
-    assert result.converged
-    assert np.all(apart <= result.tolerance * scale + slack), apart / scale
-    assert np.all(apart <= in_lengths(result.error) + slack), apart / in_lengths(result.error)
-    row = np.abs(in_lengths(result.row_sum) - exact.sum(axis=1))
-    assert np.all(row <= in_lengths(result.row_sum_error) + slack)
 
 
 @pytest.mark.parametrize("name", CLOSED)

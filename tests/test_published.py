@@ -21,6 +21,7 @@ from reference_formulas import (
 from reference_values import BY_NAME
 from scenes import (
     AXIS,
+    check,
     in_lengths,
     meshed_box,
     meshed_plate,
@@ -67,18 +68,6 @@ SHEETS = {
     "slivers": sliver_plate(30),
 }
 CUBE, SQUARE = BY_NAME["unit cube"].matrix, BY_NAME["unit square"].matrix
-
-
-def check(result: bem.CapacitanceResult, exact: np.ndarray, slack: float) -> None:
-    """Require every entry to be within its bar and the tolerance, and so the row sums."""
-    size = np.sqrt(np.diag(exact))
-    scale = np.outer(size, size)
-    apart = np.abs(in_lengths(result.capacitance) - exact)
-    assert result.converged
-    assert np.all(apart <= result.tolerance * scale + slack), apart / scale
-    assert np.all(apart <= in_lengths(result.error) + slack), apart / in_lengths(result.error)
-    row = np.abs(in_lengths(result.row_sum) - exact.sum(axis=1))
-    assert np.all(row <= in_lengths(result.row_sum_error) + len(exact) * slack)
 
 
 @pytest.mark.parametrize("name", RECORDS)

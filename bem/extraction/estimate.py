@@ -105,12 +105,10 @@ def _widening(value: np.ndarray) -> np.ndarray:
     Couplings through gaps in a shield, and row sums of shielded bodies, depend on densities
     that the large entries hardly see, and their errors do not follow the common slope.
     """
-    root = np.sqrt(np.diagonal(value))
-    strength = np.abs(value) / (root[:, None] * np.append(root, 1.0))
-    strength[:, -1] = np.abs(value[:, -1]) / np.diagonal(value)
-    weak = np.clip(1.0 - strength / WEAK, 0.0, 1.0)
-    weak[:, -1] = np.clip(1.0 - strength[:, -1] / WEAK_ROW, 0.0, 1.0)
-    return 1.0 + (WIDEST - 1.0) * weak
+    diagonal = np.diagonal(value)
+    strong = WEAK * np.sqrt(diagonal[:, None] * diagonal)
+    strong = np.concatenate([strong, WEAK_ROW * diagonal[:, None]], axis=1)
+    return 1.0 + (WIDEST - 1.0) * np.clip(1.0 - np.abs(value) / strong, 0.0, 1.0)
 
 
 def estimate(rounds: list[Sums]) -> Estimate:

@@ -177,7 +177,8 @@ def _result(
         warnings.append(f"the energy check adds {findings.extra:.1e} of each entry to its bar")
     if findings.signs.any():
         warnings.append("an entry had the wrong sign by more than its bar, which now reaches zero")
-    converged = run.stopped_by == "tolerance" and findings.extra == 0.0
+    widened = findings.extra > 0.0 or bool(findings.signs[:, :count].any())
+    converged = run.stopped_by == "tolerance" and not widened
     budget = {name: farad * part[:, :count] for name, part in last.found.parts.items()}
     return CapacitanceResult(
         conductors=tuple(c.name for c in scene.conductors),

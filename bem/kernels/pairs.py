@@ -108,12 +108,12 @@ def clustered_pair(i: int, j: int, panels: PanelArrays) -> float:
 
 
 @njit(cache=True, error_model="numpy")
-def _ends(gap, axis, half_i, half_j, sign, diff):
+def _ends(gap, axis, half_i, half_j, diff):
     """Corner differences (2, 2) along one direction; ``gap`` is center i minus center j."""
     at = dot(gap, axis)
     for a in range(2):
         for b in range(2):
-            diff[a, b] = at + (2 * a - 1) * half_i - sign * (2 * b - 1) * half_j
+            diff[a, b] = at + (2 * a - 1) * half_i - (2 * b - 1) * half_j
 
 
 @njit(cache=True, error_model="numpy")
@@ -121,8 +121,8 @@ def _parallel(i, j, panels, gap):
     axes, half = panels.axes, panels.half
     swap = abs(dot(axes[i, 0], axes[j, 0])) < 0.5
     u, v = np.empty((2, 2)), np.empty((2, 2))
-    _ends(gap, axes[i, 0], half[i, 0], half[j, 1 if swap else 0], 1.0, u)
-    _ends(gap, axes[i, 1], half[i, 1], half[j, 0 if swap else 1], 1.0, v)
+    _ends(gap, axes[i, 0], half[i, 0], half[j, 1 if swap else 0], u)
+    _ends(gap, axes[i, 1], half[i, 1], half[j, 0 if swap else 1], v)
     return parallel_pair(u, v, abs(dot(gap, axes[j, 2])))
 
 
@@ -132,7 +132,7 @@ def _perpendicular(i, j, panels, gap):
     a = 0 if abs(dot(axes[i, 0], axes[j, 2])) < 0.5 else 1
     b = 0 if abs(dot(axes[j, 0], axes[i, 2])) < 0.5 else 1
     u, v, w = np.empty((2, 2)), np.empty(2), np.empty(2)
-    _ends(gap, axes[i, a], half[i, a], half[j, b], 1.0, u)
+    _ends(gap, axes[i, a], half[i, a], half[j, b], u)
     across_i, across_j = dot(gap, axes[j, 2]), -dot(gap, axes[i, 2])
     for k in range(2):
         v[k] = across_i + (2 * k - 1) * half[i, 1 - a]
