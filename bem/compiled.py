@@ -2,7 +2,7 @@
 
 The compiler's own cache looks only at the file of each function, so a kernel would be kept
 although one that it calls, in another file, has changed. Here compiled code lies in a folder
-named after a digest of all files with compiled functions: beside the package or, where that
+named after a digest of all files that kernels are compiled from: beside the package or, where that
 cannot be written, in the user's cache folder or among the temporary files.
 """
 
@@ -19,15 +19,21 @@ from typing import Any
 import numba
 
 PACKAGE = Path(__file__).parent
-ROOMS = ("geometry", "kernels")
-"""Rooms that hold compiled functions."""
+
+
+def _sources() -> list[bytes]:
+    """Names and contents of all kernel files, and of others with compiled functions."""
+    kernels = sorted((PACKAGE / "kernels").glob("*.py"))
+    geometry = sorted((PACKAGE / "geometry").glob("*.py"))
+    texts = [file.name.encode() + file.read_bytes() for file in geometry]
+    compiled = [text for text in texts if b"bem.compiled import" in text]
+    return [file.name.encode() + file.read_bytes() for file in kernels] + compiled
 
 
 def _digest() -> str:
     digest = hashlib.sha256(numba.__version__.encode())
-    for room in ROOMS:
-        for file in sorted((PACKAGE / room).glob("*.py")):
-            digest.update(file.name.encode() + file.read_bytes())
+    for source in _sources():
+        digest.update(source)
     return digest.hexdigest()[:16]
 
 
