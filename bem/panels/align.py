@@ -11,7 +11,8 @@ from dataclasses import replace
 
 import numpy as np
 
-from bem.panels.planar import FLATNESS, Patch
+from bem.geometry.flat_faces import FLATNESS
+from bem.panels.planar import Patch
 
 
 def align_patches(patches: list[Patch], extent: float) -> list[Patch]:

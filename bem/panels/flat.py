@@ -6,9 +6,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from bem.geometry.flat_faces import FLATNESS
 from bem.panels.arrangement import trapezoids
 from bem.panels.facing import FacingTable, Walls
-from bem.panels.planar import FLATNESS, Patch
+from bem.panels.planar import Patch
 from bem.panels.split import mean_sides, split
 
 MANY_PIECES = 400

@@ -8,11 +8,12 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.surface import Surface
 from bem.geometry.topology import edges_of
 from bem.panels.align import align_patches
 from bem.panels.flat import FlatFamily
-from bem.panels.planar import FlatFaces
+from bem.panels.planar import patches_of
 from bem.panels.proximity import crowded
 
 if TYPE_CHECKING:
@@ -82,7 +83,7 @@ class Mesh:
         """
         flat = {k: FlatFaces.of(s) for k, s in enumerate(surfaces) if s.curve is None}
         accept(sum(faces.count for faces in flat.values()))
-        patches = [patch for k, faces in flat.items() for patch in faces.patches(k)]
+        patches = [patch for k, faces in flat.items() for patch in patches_of(faces, k)]
         families: list[Family] = []
         owners = []
         if patches:
