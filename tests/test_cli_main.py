@@ -47,6 +47,7 @@ def bem(*arguments: str | Path, **options: Any) -> subprocess.CompletedProcess[b
         ["extract", "--help"],
         ["inspect", "--help"],
         ["show", "--help"],
+        ["reduce", "--help"],
         [],
     ],
 )
@@ -113,7 +114,7 @@ def test_no_command_prints_the_help(capsys: pytest.CaptureFixture[str]) -> None:
         (
             ["extrakt", "a.toml"],
             "command: found 'extrakt' (did you mean 'extract'?); "
-            "allowed are extract, inspect, show",
+            f"allowed are {', '.join(COMMANDS)}",
         ),
         (["show"], "the following arguments are required: RESULT.json; see bem show --help"),
         (["--json"], "the following arguments are required: COMMAND; see bem --help"),

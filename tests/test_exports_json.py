@@ -17,9 +17,12 @@ from test_results import assert_same, sample_result
 from bem.errors import InputError
 from bem.exports.record import to_record
 from bem.results.outcome import STOPPED_BY
-from bem.results.result import load_result
+from bem.results.result import Reduction, load_result
 
 SCHEMA = json.loads(files("bem.exports").joinpath("result.schema.json").read_text())
+
+LATER = {"states", "nodes", "reduction"}
+"""Entries that files of the first version may lack."""
 
 
 def saved(tmp_path: Path, **changes: Any) -> dict[str, Any]:
@@ -85,7 +88,8 @@ def test_the_schema_refuses_nonsense(tmp_path: Path, entry: str, value: Any) -> 
 
 def test_the_schema_describes_every_entry_and_no_other(tmp_path: Path) -> None:
     assert set(saved(tmp_path)) == set(SCHEMA["properties"])
-    assert set(SCHEMA["required"]) == set(to_record(sample_result(), arrays=False))
+    written = set(to_record(sample_result(), arrays=False))
+    assert set(SCHEMA["required"]) == written - LATER
 
 
 def test_the_schema_knows_every_reason_to_stop() -> None:
@@ -197,3 +201,41 @@ def test_arrays_of_a_foreign_type_are_not_saved(tmp_path: Path) -> None:
     with pytest.raises(InputError, match="cannot save an array of complex128"):
         result.to_json(tmp_path / "r.json")
     assert list(tmp_path.iterdir()) == []
+
+
+WIRED: dict[str, Any] = {
+    "states": ("grounded", "terminal"),
+    "nodes": (None, "frame"),
+    "reduction": Reduction({"frame": ("wall", "door")}, ("rod",), (("pad", "stud"),)),
+}
+
+
+def test_states_and_reductions_follow_the_schema(tmp_path: Path) -> None:
+    record = saved(tmp_path, **WIRED)
+    jsonschema.validate(record, SCHEMA, cls=jsonschema.Draft202012Validator)
+    assert_same(load_result(tmp_path / "r.json"), sample_result(**WIRED))
+
+
+def test_files_of_before_states_still_load(tmp_path: Path) -> None:
+    path = damaged(tmp_path, **dict.fromkeys(LATER))
+    record = json.loads(path.read_text())
+    assert not LATER & set(record)
+    jsonschema.validate(record, SCHEMA, cls=jsonschema.Draft202012Validator)
+    assert_same(load_result(path), sample_result())
+
+
+@pytest.mark.parametrize(
+    ("entry", "value"),
+    [
+        ("states", ["grounded"]),
+        ("states", ["earthed", "terminal"]),
+        ("nodes", [None]),
+        ("nodes", [1, None]),
+        ("reduction", {"terminals": {}}),
+        ("reduction", {"terminals": {"a": [1]}, "grounded": [], "floating": []}),
+        ("reduction", 3),
+    ],
+)
+def test_damaged_states_are_refused_by_name(tmp_path: Path, entry: str, value: Any) -> None:
+    said = refusal(damaged(tmp_path, **{entry: value}))
+    assert said == f"entry {entry!r} is damaged; save the result again"

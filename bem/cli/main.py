@@ -8,12 +8,17 @@ from collections.abc import Sequence
 from types import ModuleType
 
 from bem import __version__
-from bem.cli import extract, inspect, show
+from bem.cli import extract, inspect, reduce, show
 from bem.cli.parser import Parser, nearest
 from bem.cli.terminal import silence_stdout, tell
 from bem.errors import EXIT_INTERRUPTED, BemError, MemoryRefused, UsageError
 
-COMMANDS: dict[str, ModuleType] = {"extract": extract, "inspect": inspect, "show": show}
+COMMANDS: dict[str, ModuleType] = {
+    "extract": extract,
+    "inspect": inspect,
+    "reduce": reduce,
+    "show": show,
+}
 EXIT_UNEXPECTED = 1
 EXIT_BROKEN_PIPE = 141
 
@@ -27,6 +32,7 @@ examples:
   bem inspect probe.toml                    look at the bodies before solving
   bem extract probe.toml --json probe.json  compute, print and save
   bem extract rod.stl wall.msh --unit mm    the same from mesh files
+  bem reduce probe.json --ground wall       ground, float or tie after the solve
   bem show probe.json --csv probe.csv       print a saved result
 
 exit codes:

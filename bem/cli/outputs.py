@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 
 from bem.cli.terminal import can_show, put, tell
 from bem.errors import InputError, UsageError
+from bem.geometry.wording import counted
 
 if TYPE_CHECKING:
     from bem.results.result import CapacitanceResult
@@ -39,18 +40,37 @@ def check_outputs(args: argparse.Namespace, inputs: list[str]) -> None:
 def deliver(result: CapacitanceResult, args: argparse.Namespace) -> bool:
     """Write the files that were asked for and print the report.
 
+    The JSON file holds every conductor, the CSV file and the report the terminals.
+
     Returns:
         Whether all of it arrived; if not, a line has said so.
     """
-    trouble = _tried([*_writers(result, args), lambda: put(_text(result, args.budget))])
+    from bem.results.reduction import presented
+
+    small = presented(result)
+    text = partial(_text, small, args.budget)
+    trouble = _tried([*_writers((result, small), args), lambda: put(text() + _note(result))])
     for line in trouble:
         tell(f"bem: {line}")
     return not trouble
 
 
-def _writers(result: CapacitanceResult, args: argparse.Namespace) -> list[Callable[[], None]]:
-    """Return one call per file that was asked for."""
-    writers = [("json", result.to_json), ("csv", result.to_csv)]
+def _note(result: CapacitanceResult) -> str:
+    """Say where the full matrix is, if the report was not it."""
+    if not result.states:
+        return ""
+    return (
+        f"\nthe full matrix of {counted(len(result.conductors), 'conductor')} is in the JSON file "
+        "(--json);\n  'bem show --all' prints it"
+    )
+
+
+def _writers(
+    results: tuple[CapacitanceResult, CapacitanceResult], args: argparse.Namespace
+) -> list[Callable[[], None]]:
+    """Return one call per file that was asked for; ``results`` are the full and the small one."""
+    full, small = results
+    writers = [("json", full.to_json), ("csv", small.to_csv)]
     paths = [(getattr(args, option, None), write) for option, write in writers]
     return [partial(write, path) for path, write in paths if path is not None]
 

@@ -5,11 +5,9 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from bem.cli.parser import nearest
 from bem.cli.values import fraction
 from bem.errors import UsageError
-
-_MOST_NAMES = 12
+from bem.geometry.wording import unknown_name
 
 
 @dataclass(frozen=True)
@@ -80,9 +78,4 @@ def _unknown(splits: list[tuple[str, str]], conductors: Sequence[str]) -> str:
     # the split that has a known name on one side is the one that was meant
     first, second = max(splits, key=lambda pair: sum(name in conductors for name in pair))
     name = second if first in conductors else first
-    listed = ", ".join(repr(known) for known in conductors[:_MOST_NAMES])
-    more = f" and {len(conductors) - _MOST_NAMES} more" if len(conductors) > _MOST_NAMES else ""
-    return (
-        f"--pair: no conductor is named {name!r}{nearest(name, conductors)}; "
-        f"the conductors are {listed}{more}"
-    )
+    return f"--pair: {unknown_name(name, conductors)}"

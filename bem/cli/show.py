@@ -28,6 +28,11 @@ def add_parser(subparsers: Any) -> None:
         epilog=_EPILOG,
     )
     parser.add_argument("result", metavar="RESULT.json", help="file that --json wrote")
+    parser.add_argument(
+        "--all",
+        action="store_true",
+        help="every conductor, also those that are grounded, floating or tied",
+    )
     parser.add_argument("--csv", metavar="FILE", help="save the entries with their bars")
     parser.add_argument("--budget", action="store_true", help="print how the bars are composed")
 
@@ -37,5 +42,8 @@ def run(args: argparse.Namespace) -> int:
     check_outputs(args, [args.result])
     from bem.results.result import load_result
 
-    written = deliver(load_result(args.result), args)
+    result = load_result(args.result)
+    if args.all:
+        result = result.reduced(free=result.conductors)
+    written = deliver(result, args)
     return EXIT_DONE if written else InputError.exit_code

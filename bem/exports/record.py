@@ -10,7 +10,8 @@ import numpy as np
 from bem.errors import InputError
 from bem.exports.arrays import pack, unpack
 from bem.exports.plain import plain, put_non_finite, take_non_finite
-from bem.results.result import CapacitanceResult, Round
+from bem.results.result import CapacitanceResult, Reduction, Round
+from bem.scene.states import STATES
 
 FORMAT = "bem capacitance result"
 SCHEMA_VERSION = 1
@@ -29,7 +30,7 @@ def to_record(result: CapacitanceResult, arrays: bool = True) -> dict[str, Any]:
         result: what to describe.
         arrays: also the panels and densities.
     """
-    record = {**_values(result), **_origin(result)}
+    record = {**_values(result), **_origin(result), **_wiring_record(result)}
     tidy, found = take_non_finite(plain(record), [])
     tidy["non_finite"] = found
     if arrays:
@@ -80,6 +81,20 @@ def _round_record(entry: Round) -> dict[str, Any]:
     }
 
 
+def _wiring_record(result: CapacitanceResult) -> dict[str, Any]:
+    done = result.reduction
+    reduction = (
+        {
+            "terminals": done.terminals,
+            "grounded": done.grounded,
+            "floating": done.floating,
+        }
+        if done
+        else None
+    )
+    return {"states": result.states, "nodes": result.nodes, "reduction": reduction}
+
+
 def _packed(result: CapacitanceResult) -> dict[str, Any]:
     values = {key: getattr(result, name) for name, key in _ARRAYS.items()}
     return {key: pack(array) for key, array in values.items() if array is not None}
@@ -108,6 +123,7 @@ def from_record(record: Any) -> CapacitanceResult:
         **_outcome(entries, names),
         **_history(entries, n),
         **_circumstances(entries),
+        **_wiring(entries, n),
         **_unpacked(record),
     )
 
@@ -138,6 +154,10 @@ class _Entries:
         except (KeyError, TypeError, ValueError, AttributeError, OverflowError) as error:
             what = "damaged" if key in self._record else "missing"
             raise InputError(f"entry {key!r} is {what}; save the result again") from error
+
+    def later(self, key: str, convert: Callable[[Any], Any], missing: Any) -> Any:
+        """As ``get``, for an entry that older files do not have."""
+        return self.get(key, convert) if key in self._record else missing
 
     def floats(self, key: str, shape: tuple[int, ...]) -> np.ndarray:
         return self.get(key, lambda found: _floats(found, shape))
@@ -183,6 +203,42 @@ def _circumstances(entries: _Entries) -> dict[str, Any]:
         "settings": entries.get("settings", dict),
         "seconds": entries.get("seconds", _seconds),
     }
+
+
+def _wiring(entries: _Entries, n: int) -> dict[str, Any]:
+    def states(found: list[str]) -> tuple[str, ...]:
+        if not set(found) <= set(STATES):
+            raise ValueError("unknown state")
+        return _all_or_none(found, n)
+
+    def nodes(found: list[str | None]) -> tuple[str | None, ...]:
+        return _all_or_none([None if node is None else _text(node) for node in found], n)
+
+    return {
+        "states": entries.later("states", states, ()),
+        "nodes": entries.later("nodes", nodes, ()),
+        "reduction": entries.later("reduction", _reduction, None),
+    }
+
+
+def _all_or_none(found: list[Any], n: int) -> tuple[Any, ...]:
+    if len(found) not in (0, n):
+        raise ValueError(f"{len(found)} entries, expected {n} or none")
+    return tuple(found)
+
+
+def _reduction(found: dict[str, Any] | None) -> Reduction | None:
+    if found is None:
+        return None
+    return Reduction(
+        terminals={name: _names(members) for name, members in found["terminals"].items()},
+        grounded=_names(found["grounded"]),
+        floating=tuple(map(_names, found["floating"])),
+    )
+
+
+def _names(found: list[str]) -> tuple[str, ...]:
+    return tuple(map(_text, found))
 
 
 def _round(entry: dict[str, Any], n: int) -> Round:

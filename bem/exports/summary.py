@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import re
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
@@ -15,6 +16,7 @@ from bem.units import metre_unit
 
 MEANING = "{sign} is a bound meant to hold for at least 95 % of entries"
 MOST_NOTES = 10
+MOST_NAMES = 12
 WIDEST_NAME = 30
 _ROUTINE = re.compile(r"[\d,]+ corners as read joined into [\d,]+ vertices")
 """Every STL needs this; it stays in the JSON file and in what inspect prints."""
@@ -31,6 +33,7 @@ def lines_of(result: CapacitanceResult, sign: str) -> list[str]:
     """
     return [
         MEANING.format(sign=sign),
+        *_reduction(result),
         _outcome(result),
         _effort(result),
         *_phases(result),
@@ -41,15 +44,47 @@ def lines_of(result: CapacitanceResult, sign: str) -> list[str]:
     ]
 
 
+def _reduction(result: CapacitanceResult) -> list[str]:
+    """Say which conductors were grounded, left floating, and tied."""
+    done = result.reduction
+    if done is None:
+        return []
+    tied = [
+        f"{shown(name)} is {_few(members, ' with ')}"
+        for name, members in done.terminals.items()
+        if members != (name,)
+    ]
+    parts = [f"grounded {_few(done.grounded)}"] if done.grounded else []
+    parts += [f"floating without charge {_few(node, ' with ')}" for node in done.floating]
+    return [f"conductors reduced: {'; '.join([*parts, *_few_of(tied)])}"]
+
+
+def _few(names: Sequence[str], between: str = ", ") -> str:
+    return between.join(_few_of([shown(name, WIDEST_NAME) for name in names]))
+
+
+def _few_of(names: Sequence[str]) -> list[str]:
+    more = [f"{len(names) - MOST_NAMES} more"] if len(names) > MOST_NAMES else []
+    return [*names[:MOST_NAMES], *more]
+
+
+def _worst(result: CapacitanceResult) -> float:
+    """Largest bar over what is allowed for it."""
+    used = float(result.used.max())
+    return used if result.reduction else max(result.rounds[-1].worst, used)
+
+
 def _outcome(result: CapacitanceResult) -> str:
-    worst = max(result.rounds[-1].worst, float(result.used.max()))
+    worst = _worst(result)
     times = f"{worst:.2g} times" if math.isfinite(worst) else "not yet comparable with"
-    largest = f"the largest bar is {times} what it allows"
+    here = " here" if result.reduction else ""
+    largest = f"the largest bar{here} is {times} what it allows"
     pair = _worst_pair(result)
     if pair:
         largest = pair
     if result.converged:
-        return f"tolerance {result.tolerance:g} reached: {largest}"
+        where = " by the full matrix" if result.reduction else ""
+        return f"tolerance {result.tolerance:g} reached{where}: {largest}"
     reason = remedy(result.stopped_by, result.converged)
     return f"TOLERANCE {result.tolerance:g} NOT REACHED: {largest}; {reason}"
 

@@ -66,6 +66,14 @@ def tables_of(result: CapacitanceResult) -> list[Table]:
     return [*first, *_couplings(result, unit)]
 
 
+def outward(result: CapacitanceResult) -> str:
+    """Say where the row sums lead: to the surroundings, and to what is grounded."""
+    ends = ["the surroundings"]
+    if result.reduction is not None and result.reduction.grounded:
+        ends.append("grounded conductors")
+    return " and ".join(ends)
+
+
 def _matrix(result: CapacitanceResult, unit: Unit) -> Table:
     rows = [
         Row((name,), tuple(map(unit.reading, result.capacitance[i], result.error[i])))
@@ -78,18 +86,21 @@ def _matrix(result: CapacitanceResult, unit: Unit) -> Table:
 def _row_sums(result: CapacitanceResult, unit: Unit) -> Table:
     readings = map(unit.reading, result.row_sum, result.row_sum_error)
     rows = [Row((name,), (cell,)) for name, cell in zip(result.conductors, readings, strict=True)]
-    return Table(f"To the surroundings (row sums) in {unit.name}", ("",), tuple(rows))
+    return Table(f"To {outward(result)} (row sums) in {unit.name}", ("",), tuple(rows))
 
 
 def _own(result: CapacitanceResult, unit: Unit) -> Table:
     diagonal = map(unit.reading, np.diagonal(result.capacitance), np.diagonal(result.error))
-    outward = map(unit.reading, result.row_sum, result.row_sum_error)
-    lines = zip(result.conductors, diagonal, outward, strict=True)
+    sums = map(unit.reading, result.row_sum, result.row_sum_error)
+    lines = zip(result.conductors, diagonal, sums, strict=True)
     rows = [Row((name,), (own, out)) for name, own, out in lines][:LONGEST_LIST]
-    title = f"Maxwell capacitance matrix C in {unit.name} (Q = C V): diagonal and row sums"
+    title = (
+        f"Maxwell capacitance matrix C in {unit.name} (Q = C V): "
+        f"diagonal and row sums (to {outward(result)})"
+    )
     left_out = len(result.conductors) - len(rows)
     note = f"{left_out} more conductors; {ELSEWHERE}" if left_out else ""
-    return Table(title, ("C_ii", "to the surroundings"), tuple(rows), note)
+    return Table(title, ("C_ii", "row sum"), tuple(rows), note)
 
 
 def _couplings(result: CapacitanceResult, unit: Unit) -> list[Table]:

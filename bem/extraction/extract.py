@@ -24,6 +24,7 @@ from bem.panels.mesh import Mesh
 from bem.results.result import CapacitanceResult, Round
 from bem.scene.inspect import Inspection, check_scene
 from bem.scene.scene import Scene
+from bem.scene.states import check_terminals, wiring_of
 
 MAX_PANELS = 10000
 TIGHTEST = 1e-6
@@ -113,6 +114,7 @@ def _warnings(scene: Scene, inspection: Inspection) -> tuple[str, ...]:
 def _goal(scene: Scene, tolerance: float, pairs: dict[tuple[str, str], float]) -> Goal:
     if not scene.conductors:
         raise UsageError("the scene has no conductors: add at least one")
+    check_terminals(scene.conductors)
     if not (isinstance(tolerance, Real) and TIGHTEST <= tolerance <= 0.5):
         raise UsageError(f"tolerance: found {tolerance!r}, allowed is {TIGHTEST:g} to 0.5")
     names = [c.name for c in scene.conductors]
@@ -180,6 +182,7 @@ def _result(
     widened = findings.extra > 0.0 or bool(findings.signs[:, :count].any())
     converged = run.stopped_by == "tolerance" and not widened
     budget = {name: farad * part[:, :count] for name, part in last.found.parts.items()}
+    states, nodes = wiring_of(scene.conductors)
     return CapacitanceResult(
         conductors=tuple(c.name for c in scene.conductors),
         capacitance=_symmetric(value[:, :count]),
@@ -200,6 +203,8 @@ def _result(
         settings=settings,
         seconds=seconds,
         version=__version__,
+        states=states,
+        nodes=nodes,
         panel_corners=last.solution.mesh.corners * scaled.length + scaled.center,
         panel_conductor=last.solution.conductor,
         density=last.solution.density * (farad / scaled.length**2),

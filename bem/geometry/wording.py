@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+import difflib
 import json
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from typing import Any
 
 from bem.units import metre_unit
+
+_MOST_NAMES = 12
 
 
 def metre_text(value: float) -> str:
@@ -34,3 +37,12 @@ def shown(value: Any) -> str:
     except (TypeError, ValueError):
         text = " ".join(repr(value).split())
     return text if len(text) <= 60 else text[:56] + " ..."
+
+
+def unknown_name(name: str, known: Sequence[str]) -> str:
+    """Words for a name that no conductor has, with the nearest and the first of those known."""
+    near = difflib.get_close_matches(name, known, n=1, cutoff=0.5)
+    hint = f" (did you mean {near[0]!r}?)" if near else ""
+    names = ", ".join(repr(one) for one in known[:_MOST_NAMES])
+    more = f" and {len(known) - _MOST_NAMES} more" if len(known) > _MOST_NAMES else ""
+    return f"no conductor is named {name!r}{hint}; the conductors are {names}{more}"

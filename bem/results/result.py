@@ -3,10 +3,14 @@
 Signs and units: Q = C V with Q in coulomb, V in volt, C in farad. Diagonal entries are
 positive, the others negative or zero. The sum of a row is the capacitance of that conductor
 to the surroundings; minus an off-diagonal entry is the capacitance between two conductors.
+
+The matrix of an extraction holds all conductors. What is grounded, floating or tied is kept
+beside it, and ``terminals`` and ``reduced`` give the smaller matrix that follows.
 """
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass, field
 from os import PathLike
 from typing import Any
@@ -33,6 +37,21 @@ class Round:
     seconds: float
 
 
+@dataclass(frozen=True)
+class Reduction:
+    """What was done with the conductors of the full matrix, by their names.
+
+    Args:
+        terminals: {name of the terminal: its conductors, tied if several}.
+        grounded: conductors held at 0 V.
+        floating: conductors of each node without net charge.
+    """
+
+    terminals: dict[str, tuple[str, ...]]
+    grounded: tuple[str, ...] = ()
+    floating: tuple[tuple[str, ...], ...] = ()
+
+
 @dataclass(frozen=True, eq=False, repr=False)
 class CapacitanceResult:
     """Maxwell capacitance matrix with error bars.
@@ -41,7 +60,7 @@ class CapacitanceResult:
         conductors: names, in the order of rows and columns.
         capacitance: (n, n) F, Maxwell signs: Q = C V.
         error: (n, n) F, bar of each entry: meant to hold in at least 95 % of entries.
-        row_sum: (n,) F, capacitance to the surroundings.
+        row_sum: (n,) F, capacitance to the surroundings and to all that is grounded.
         row_sum_error: (n,) F, its own bar (correlated with those of the row).
         tolerance: what was asked: every bar at most this times sqrt(C_ii C_jj).
         pairs: {(name, name): relative accuracy asked for that coupling}.
@@ -55,8 +74,12 @@ class CapacitanceResult:
         settings: all that determines the run.
         seconds: {phase: seconds}.
         version: version of bem that made the result.
+        states: of each conductor, "terminal", "grounded" or "floating"; empty: all terminals.
+        nodes: of each conductor, the node that it is tied to, or None; empty: none is tied.
+        reduction: how this matrix came from a larger one, or None.
         panel_corners: (p, 4, 3) m, the last mesh; a triangle repeats its last corner.
-        panel_conductor: (p,) index of the conductor that owns each panel.
+        panel_conductor: (p,) index of the conductor that owns each panel; after a reduction
+            -1 for grounded and floating ones.
         density: (p, n) C/m^2 per volt: column j for 1 V on conductor j, 0 V on the others.
     """
 
@@ -77,6 +100,9 @@ class CapacitanceResult:
     settings: dict[str, Any] = field(default_factory=dict)
     seconds: dict[str, float] = field(default_factory=dict)
     version: str = ""
+    states: tuple[str, ...] = ()
+    nodes: tuple[str | None, ...] = ()
+    reduction: Reduction | None = None
     panel_corners: np.ndarray | None = None
     panel_conductor: np.ndarray | None = None
     density: np.ndarray | None = None
@@ -111,6 +137,47 @@ class CapacitanceResult:
         nothing = np.where(self.error == 0.0, 0.0, np.inf)
         return np.divide(self.error, allowed, out=nothing, where=allowed > 0.0)
 
+    @property
+    def terminals(self) -> CapacitanceResult:
+        """The result as its scene asks for it: grounded, floating and tied conductors reduced.
+
+        Raises:
+            SolutionError: the potential of a floating conductor is not known within the bars.
+        """
+        return self.reduced()
+
+    def reduced(
+        self,
+        ground: Iterable[str] = (),
+        floating: Iterable[str] = (),
+        tie: Iterable[Iterable[str]] = (),
+        free: Iterable[str] = (),
+    ) -> CapacitanceResult:
+        """Ground, float and tie conductors after the solve, beside what their scene says.
+
+        Bars are carried through; see ``bem.results.reduction`` for the formulas. What is tied
+        to ground is grounded, and a floating conductor tied to a terminal belongs to it.
+
+        Args:
+            ground: conductors or nodes to hold at 0 V.
+            floating: conductors or nodes to leave without net charge.
+            tie: groups of conductors to connect, or {name of the new node: group}.
+            free: nodes, or single conductors of them, to make terminals of their own again.
+
+        Returns:
+            The result of the terminals, with ``reduction`` to say what was done; ``converged``
+            is that of the full matrix.
+
+        Raises:
+            UsageError: a name is unknown or told two things, or no terminal is left.
+            SolutionError: the potential of a floating conductor is not known within the bars.
+        """
+        from bem.results.reduction import reduced
+        from bem.results.wiring import Wiring
+
+        wiring = Wiring.of(self.conductors, self.states, self.nodes)
+        return reduced(self, wiring.changed(ground, floating, tie, free))
+
     def to_json(self, path: str | PathLike[str], arrays: bool = True) -> None:
         """Save everything; ``load_result`` reads it back without loss.
 
@@ -126,19 +193,21 @@ class CapacitanceResult:
         save_json(self, path, arrays)
 
     def to_csv(self, path: str | PathLike[str]) -> None:
-        """Save the entries and row sums with their bars, one line each.
+        """Save entries and row sums of the terminals with their bars, one line each.
 
         Raises:
             InputError: the file cannot be written.
+            SolutionError: as for ``terminals``.
         """
         from bem.exports.csv_file import save_csv
 
-        save_csv(self, path)
+        save_csv(self.terminals, path)
 
     def __str__(self) -> str:
         from bem.exports.text import report
+        from bem.results.reduction import presented
 
-        return report(self)
+        return report(presented(self))
 
     def __repr__(self) -> str:
         reached = "reached" if self.converged else "not reached"
@@ -149,8 +218,9 @@ class CapacitanceResult:
 
     def _repr_html_(self) -> str:
         from bem.exports.html import report
+        from bem.results.reduction import presented
 
-        return report(self)
+        return report(presented(self))
 
 
 def load_result(path: str | PathLike[str]) -> CapacitanceResult:

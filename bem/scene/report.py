@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import numpy as np
 
-from bem.geometry.wording import counted, metre_text
+from bem.geometry.wording import counted, metre_text, shown
 from bem.scene.inspect import BodyReport, Inspection, point_text
 from bem.scene.pairs import PairReport
 from bem.scene.scene import Conductor, Scene
+from bem.scene.states import TERMINAL
 from bem.units import metres_per
 
 MOST_PAIRS = 60
@@ -55,8 +56,15 @@ def _body(conductor: Conductor, body: BodyReport, unit: str) -> list[str]:
         f"  box     {_box(body.bounds, unit)}",
         f"  faces   {_faces(body)}",
         f"  kind    {_kind(body, unit)}",
+        *_wiring(conductor),
         *(f"  change  {line}" for line in body.changes),
     ]
+
+
+def _wiring(conductor: Conductor) -> list[str]:
+    node = [] if conductor.node is None else [f"node {shown(conductor.node)}"]
+    state = [] if conductor.state == TERMINAL else [conductor.state]
+    return [f"  state   {', '.join(state + node)}"] if state or node else []
 
 
 def _origin(conductor: Conductor) -> str:

@@ -12,6 +12,7 @@ from bem.errors import BemError, InputError
 from bem.geometry.surface import Surface
 from bem.scene import checks
 from bem.scene.placing import Place, place_or_refuse, rotation
+from bem.scene.states import TERMINAL, check_wiring
 from bem.units import metres_per
 
 __all__ = ["Conductor", "Place", "Scene", "Source", "rotation"]
@@ -48,12 +49,16 @@ class Conductor:
         surface: faces in metres.
         body: "solid" (a closed mesh is solid metal) or "shell" (only its faces are metal).
         source: where the surface came from.
+        state: "terminal", "grounded" or "floating" (no net charge).
+        node: conductors with one node are tied; None is a node of its own.
     """
 
     name: str
     surface: Surface
     body: str
     source: Source
+    state: str = TERMINAL
+    node: str | None = None
 
 
 @dataclass
@@ -92,6 +97,8 @@ class Scene:
         place: Place | None = None,
         body: str = "solid",
         unit: str | None = None,
+        state: str = TERMINAL,
+        node: str | None = None,
     ) -> Scene:
         """Add a conductor from a shape or a mesh file; returns the scene itself.
 
@@ -103,6 +110,8 @@ class Scene:
             place: scaled first, then turned about the origin, then shifted.
             body: "solid" (a closed surface is solid metal) or "shell" (hollow).
             unit: of the numbers in the mesh file, if not the scene's.
+            state: "terminal" of the matrix, "grounded", or "floating" with no net charge.
+            node: conductors with one node are tied, and have one state.
 
         Raises:
             InputError: a value does not fit, or the file cannot be used.
@@ -111,6 +120,7 @@ class Scene:
         entry = entry_name(len(self.conductors) + 1, name)
         self._check_name(entry, name)
         checks.one_of(f"{entry}: body", body, BODIES)
+        check_wiring(entry, (name, state, node), self.conductors)
         where = place_or_refuse(f"{entry}: place", place)
         _check_choice(entry, {"shape": shape, "mesh": mesh, "part": part, "unit": unit})
         try:
@@ -122,7 +132,7 @@ class Scene:
             raise type(problem)(f"{entry}: {problem}") from None
         if where != Place():
             surface = surface.placed(where.matrix, metres_per(self.unit) * np.array(where.shift))
-        self.conductors.append(Conductor(name, surface, body, source))
+        self.conductors.append(Conductor(name, surface, body, source, state, node))
         return self
 
     def _check_name(self, entry: str, name: Any) -> None:

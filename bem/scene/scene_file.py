@@ -11,6 +11,8 @@ A scene file::
     part = "rod"                   # optional: a named portion of the file
     unit = "mm"                    # optional: of the mesh file, if not the scene's
     body = "solid"                 # optional: or "shell", hollow
+    state = "grounded"             # optional: or "floating", "terminal"
+    node = "shield"                # optional: conductors with one node are tied
     place = { shift = [0, 0, 12.5], turn = { axis = [0, 0, 1], degrees = 90 }, scale = 1.0 }
 """
 
@@ -28,10 +30,11 @@ from bem.geometry.wording import counted, listed
 from bem.scene import checks
 from bem.scene.placing import Place
 from bem.scene.scene import Scene, entry_name
+from bem.scene.states import check_terminals
 from bem.units import METRES_PER
 
 _TOP = ("unit", "surroundings", "conductor")
-_CONDUCTOR = ("name", "mesh", "part", "unit", "body", "place")
+_CONDUCTOR = ("name", "mesh", "part", "unit", "body", "place", "state", "node")
 _POSITION = re.compile(r"\(at (line \d+, column \d+|end of document)\)")
 
 
@@ -48,6 +51,7 @@ def load_scene(path: str | Path) -> Scene:
         scene = Scene(entries["unit"], _permittivity(entries), folder=Path(path).parent)
         for number, conductor in enumerate(_conductors(entries), 1):
             _add(scene, number, conductor)
+        check_terminals(scene.conductors)
     return scene
 
 
