@@ -6,7 +6,7 @@
     |   +-- GeometryError     3   ... because the bodies touch, cross, or are damaged
     +-- ToleranceNotReached   4   only raised on request: the result is normally returned, marked
     +-- MemoryRefused         5   the plan needs more memory than is allowed
-    +-- SolutionError         3   the audit found the result unusable
+    +-- SolutionError         3   the result is unusable, or too uncertain for what is asked of it
 
 Every message says what was found, what the limit is, and what to do next.
 """
@@ -40,7 +40,7 @@ class GeometryError(InputError):
 
 
 class SolutionError(BemError):
-    """The audit after the solve found the result unusable."""
+    """The result is unusable, or too uncertain for what is asked of it."""
 
     exit_code = 3
 

@@ -455,6 +455,11 @@ def test_many_reduced_conductors_are_counted() -> None:
     assert "grounded c1, c2, c3, c4, c5, c6, c7, c8, c9, c10, c11, c12, 17 more" in text
 
 
+def test_floating_nodes_are_listed_once() -> None:
+    small = result_of(network(5, 2)).reduced(floating=["c1", "c2", "c4"], tie=[("c2", "c3")])
+    assert "floating without charge c1, c2 with c3, c4" in " ".join(str(small).split())
+
+
 def test_many_terminals_and_ground_say_so_in_the_list() -> None:
     small = result_of(network(12, 2)).reduced(ground=["c0"])
     text = " ".join(str(small).split())

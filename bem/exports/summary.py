@@ -55,7 +55,8 @@ def _reduction(result: CapacitanceResult) -> list[str]:
         if members != (name,)
     ]
     parts = [f"grounded {_few(done.grounded)}"] if done.grounded else []
-    parts += [f"floating without charge {_few(node, ' with ')}" for node in done.floating]
+    afloat = [_few(node, " with ") for node in done.floating]
+    parts += [f"floating without charge {', '.join(_few_of(afloat))}"] if afloat else []
     return [f"conductors reduced: {'; '.join([*parts, *_few_of(tied)])}"]
 
 
