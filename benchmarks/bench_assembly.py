@@ -48,12 +48,13 @@ def squares(count: int) -> np.ndarray:
 def fill_nanoseconds(panels: PanelArrays, reach: tuple[float, float]) -> float:
     """Per pair of a fill whose tiers begin at ``reach``."""
     targets, n = make_targets(panels), len(panels.area)
+    sources = pairs.Sources(panels, np.ones(1))
     none = pairs.Matrices(np.empty((0, 0)), np.empty((4, 0, 0), dtype=np.float32))
     new = pairs.Matrices(np.empty((n, n)), np.empty((4, n, n), dtype=np.float32))
     limits, origin = np.array(reach), np.full(n, -1)
 
     def work() -> None:
-        pairs.fill(panels, targets, limits, origin, none, new)
+        pairs.fill(sources, targets, limits, origin, none, new)
 
     work()
     return 1e9 * least_seconds(work) / n**2

@@ -10,6 +10,7 @@ from typing import Any
 import numpy as np
 
 from bem.exports.names import shown
+from bem.geometry.wording import metre_text
 from bem.results.outcome import remedy
 from bem.results.result import CapacitanceResult
 from bem.units import metre_unit
@@ -38,6 +39,7 @@ def lines_of(result: CapacitanceResult, sign: str) -> list[str]:
         _effort(result),
         *_phases(result),
         *_bodies(result),
+        *_planes(result),
         _audit(result),
         *_changes(result),
         *(f"warning: {shown(line)}" for line in result.warnings),
@@ -131,10 +133,31 @@ def _bodies(result: CapacitanceResult) -> list[str]:
         span = points.max(axis=0) - points.min(axis=0)
         name, size = metre_unit(float(span.max()))
         lengths = " x ".join(f"{length / size:.4g}" for length in span)
-        facts.append(f"bodies span {lengths} {name}")
+        cut = "mirror_planes_m" in result.settings
+        kept = " (the part that mirror planes leave)" if cut else ""
+        facts.append(f"bodies span {lengths} {name}{kept}")
     if "relative_permittivity" in result.settings:
         facts.append(f"relative permittivity {result.settings['relative_permittivity']:g}")
     return [", ".join(facts)] if facts else []
+
+
+def _planes(result: CapacitanceResult) -> list[str]:
+    """What images stand for, and whether the half or the whole is reported."""
+    lines = []
+    if "ground_plane_m" in result.settings:
+        where = _plane(result.settings["ground_plane_m"])
+        lines.append(f"infinite grounded plane {where}: row sums are to it and to the surroundings")
+    if mirrors := result.settings.get("mirror_planes_m"):
+        where = ", ".join(map(_plane, mirrors))
+        lines.append(
+            f"mirror planes {where}: all values are for the whole, each body together with its "
+            f"images; 1/{2 ** len(mirrors)} of it was solved"
+        )
+    return lines
+
+
+def _plane(coordinate: dict[str, float]) -> str:
+    return ", ".join(f"{axis} = {metre_text(at)}" for axis, at in coordinate.items())
 
 
 def _audit(result: CapacitanceResult) -> str:

@@ -14,7 +14,6 @@ import numpy as np
 
 from bem.extraction.estimate import Estimate
 from bem.extraction.solution import Solution
-from bem.kernels.potential import potential_of_panels
 
 POINTS = 200
 WILD = 0.05
@@ -67,11 +66,7 @@ def _energy_check(solution: Solution) -> tuple[float, float, float]:
     columns = range(min(solution.density.shape[1], 4))
     for column in columns:
         points, chosen = _random_points(solution, column, rng)
-        found = potential_of_panels(
-            solution.panels,
-            np.ascontiguousarray(points.T),
-            np.ascontiguousarray(solution.density[:, column]),
-        )
+        found = solution.potential(points, column)
         want = (solution.conductor[chosen] == column).astype(float)
         sign = np.sign(solution.density[chosen, column])
         residual = (want - found) * sign

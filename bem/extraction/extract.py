@@ -23,6 +23,7 @@ from bem.extraction.threads import use_threads
 from bem.panels.mesh import Mesh
 from bem.results.result import CapacitanceResult, Round
 from bem.scene.inspect import Inspection, check_scene
+from bem.scene.plane_checks import planes_record
 from bem.scene.scene import Scene
 from bem.scene.states import check_terminals, wiring_of
 
@@ -73,7 +74,7 @@ def extract(
     scaled = ScaledScene.of(scene)
     hollow = [k for k, c in enumerate(scene.conductors) if c.body == "shell"]
     limits = Limits(max_panels, MemoryPlan.of(memory))
-    mesh = Mesh.start(scaled.surfaces, hollow, limits.check_start)
+    mesh = Mesh.start(scaled.surfaces, hollow, limits.check_start, scaled.planes)
     run = Run(len(scene.conductors), goal, limits, report, started=started)
     with use_threads(threads) as used:
         run.go(mesh)
@@ -96,6 +97,7 @@ def extract(
         "memory_bytes": limits.memory.limit,
         "threads": used,
         "relative_permittivity": scene.relative_permittivity,
+        **planes_record(scene.planes),
         "operator": "dense",
     }
     return _result(scene, scaled, run, findings, (seconds, settings, _warnings(scene, inspection)))
@@ -207,5 +209,5 @@ def _result(
         nodes=nodes,
         panel_corners=last.solution.mesh.corners * scaled.length + scaled.center,
         panel_conductor=last.solution.conductor,
-        density=last.solution.density * (farad / scaled.length**2),
+        density=last.solution.density * (farad / scaled.planes.multiplicity / scaled.length**2),
     )

@@ -6,6 +6,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from bem.geometry.folding import folded
+from bem.geometry.planes import Planes
 from bem.geometry.surface import Surface
 from bem.scene.scene import Scene
 from bem.units import EPS0
@@ -16,16 +18,18 @@ class ScaledScene:
     """Surfaces in units of ``length``, centred.
 
     Args:
-        surfaces: one per conductor.
+        surfaces: one per conductor, what is left of it on the kept side of mirror planes.
         length: metres per unit, the largest side of the scene's bounding box.
         center: (3,) m, what was subtracted first.
-        farad: capacitance in farad of one unit of L = C / (4 pi eps).
+        farad: capacitance in farad of one unit of L = C / (4 pi eps), mirror images included.
+        planes: grounded and mirror planes.
     """
 
     surfaces: list[Surface]
     length: float
     center: np.ndarray
     farad: float
+    planes: Planes
 
     @classmethod
     def of(cls, scene: Scene) -> ScaledScene:
@@ -34,6 +38,10 @@ class ScaledScene:
         low, high = bounds[:, 0].min(axis=0), bounds[:, 1].max(axis=0)
         length, center = float((high - low).max()), 0.5 * (low + high)
         matrix = np.eye(3) / length
-        surfaces = [c.surface.placed(matrix, -center / length) for c in scene.conductors]
+        planes = scene.planes.moved(1.0 / length, center)
+        surfaces = [
+            folded(c.surface.placed(matrix, -center / length), planes, c.body == "solid")
+            for c in scene.conductors
+        ]
         farad = 4.0 * np.pi * EPS0 * scene.relative_permittivity * length
-        return cls(surfaces, length, center, farad)
+        return cls(surfaces, length, center, farad * planes.multiplicity, planes)

@@ -19,7 +19,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from bem.kernels.arrays import PanelArrays, panel_arrays
+from bem.kernels.images import own_images, sources_of, with_images
 from bem.kernels.indicator_energy import indicator_energies
+from bem.kernels.pairs import Sources
 from bem.kernels.potential import potential_of_panels
 from bem.kernels.targets import make_targets
 from bem.operators.dense import DenseOperator, Reuse
@@ -38,6 +40,8 @@ class Solution:
     Args:
         mesh: n panels of k conductors.
         panels: their arrays.
+        sources: panels and their images behind planes.
+        own: (n,) number of images of each panel that coincide with it, itself among them.
         operator: their operator.
         density: (n, k).
         residual: (4, n, k) residual against each test over the root of its energy.
@@ -45,6 +49,8 @@ class Solution:
 
     mesh: Mesh
     panels: PanelArrays
+    sources: Sources
+    own: np.ndarray
     operator: Operator
     density: np.ndarray
     residual: np.ndarray
@@ -53,6 +59,11 @@ class Solution:
     def conductor(self) -> np.ndarray:
         """(n,) owner of each panel."""
         return self.mesh.conductor
+
+    def potential(self, points: np.ndarray, column: int) -> np.ndarray:
+        """(m,) potential at points (m, 3) with conductor ``column`` at 1 and the others at 0."""
+        density = with_images(self.density[:, column], self.sources.signs)
+        return potential_of_panels(self.sources.panels, np.ascontiguousarray(points.T), density)
 
 
 def incidence(conductor: np.ndarray, count: int) -> np.ndarray:
@@ -69,12 +80,17 @@ def solve_round(mesh: Mesh, count: int, far: float, reuse: Reuse | None) -> Solu
     """Assemble, solve and test the residual on a mesh of ``count`` conductors."""
     panels = panel_arrays(mesh.corners)
     targets = make_targets(panels)
-    operator = DenseOperator(panels, targets, far, reuse)
+    planes = mesh.planes
+    sources = Sources(panels, np.ones(1))
+    if planes.all:
+        sources = sources_of(planes.images(mesh.corners), planes.signs)
+    operator = DenseOperator(sources, targets, far, reuse)
     right = panels.area[:, None] * incidence(mesh.conductor, count)
     density = solve_dense(operator, right)
-    energy = indicator_energies(panels, targets)
+    own = own_images(sources, len(panels.area))
+    energy = indicator_energies(panels, targets) * own[:, None]
     residual = -operator.tests(density) / np.sqrt(energy.T)[:, :, None]
-    return Solution(mesh, panels, operator, density, residual)
+    return Solution(mesh, panels, sources, own, operator, density, residual)
 
 
 @dataclass(frozen=True)
@@ -141,7 +157,7 @@ def faceting_effect(solution: Solution) -> np.ndarray:
     if faceting.exact:
         return np.zeros((count, count + 1))
     normal = 4.0 * np.pi * area * faceting.offset
-    rim = 0.5 * np.pi**2 * area * faceting.rim_offset * faceting.rim_width
+    rim = 0.5 * np.pi**2 * solution.own * area * faceting.rim_offset * faceting.rim_width
     excess = _side_difference(solution, faceting)
     change = density.T @ (normal[:, None] * excess)
     change = 0.5 * (change + change.T) + density.T @ (rim[:, None] * density)
@@ -152,7 +168,7 @@ def rounding_effect(solution: Solution) -> np.ndarray:
     """Bound (k, k + 1) on the change of L if every panel moves by its file's rounding."""
     offset = np.array([b.rounding for b in solution.mesh.bodies])[solution.conductor]
     size = np.abs(solution.density)
-    weight = 4.0 * np.pi * solution.panels.area * offset
+    weight = 4.0 * np.pi * solution.own * solution.panels.area * offset
     return size.T @ (weight[:, None] * np.abs(with_all(solution.density)))
 
 
@@ -172,10 +188,8 @@ def _side_difference(solution: Solution, faceting: Faceting) -> np.ndarray:
     points = np.concatenate(
         [panels.center[rows] + step * normal, panels.center[rows] - step * normal]
     )
-    for column, density in enumerate(solution.density.T):
-        u = potential_of_panels(
-            panels, np.ascontiguousarray(points.T), np.ascontiguousarray(density)
-        )
+    for column in range(solution.density.shape[1]):
+        u = solution.potential(points, column)
         slope = (u[: len(rows)] - u[len(rows) :]) / (2.0 * step[:, 0])
         difference[rows, column] = -slope / (2.0 * np.pi)
     return difference

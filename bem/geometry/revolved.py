@@ -14,7 +14,7 @@ and a profile point on the axis is one single point whatever u.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import NamedTuple, Protocol
 
 import numpy as np
@@ -184,11 +184,16 @@ class Revolution:
         profile: pieces, each starting where the one before ends; r = 0 only at the two ends.
         matrix: (3, 3), regular; a reflection is replaced by a rotation to the same surface.
         shift: (3,), in the unit of the placed body.
+        turn: part of the full turn that is there, from u = 0: 1, or 1/2 or 1/4 where planes of
+            symmetry through the axis stand for the rest.
+        cut: whether the profile is cut short at its start, and at its end, by a plane of symmetry.
     """
 
     profile: tuple[Piece, ...]
     matrix: np.ndarray
     shift: np.ndarray
+    turn: float = 1.0
+    cut: tuple[bool, bool] = (False, False)
 
     def __post_init__(self) -> None:
         # The body is its own mirror image in y, so a proper map to the same surface exists.
@@ -216,8 +221,8 @@ class Revolution:
     @property
     def free_rims(self) -> tuple[bool, bool]:
         """Whether the surface has a free rim at s = 0, and at s = K."""
-        at_start, at_end = self.poles
-        return not (self.loops or at_start), not (self.loops or at_end)
+        (at_start, at_end), (cut_start, cut_end) = self.poles, self.cut
+        return not (self.loops or at_start or cut_start), not (self.loops or at_end or cut_end)
 
     def point(self, u: np.ndarray | float, s: np.ndarray | float) -> np.ndarray:
         """(..., 3): points of the placed surface; ``u`` and ``s`` broadcast."""
@@ -259,7 +264,7 @@ class Revolution:
             shift: (3,).
         """
         matrix = np.asarray(matrix, dtype=float)
-        return Revolution(self.profile, matrix @ self.matrix, matrix @ self.shift + shift)
+        return replace(self, matrix=matrix @ self.matrix, shift=matrix @ self.shift + shift)
 
     def _mapped(self, x: np.ndarray) -> np.ndarray:
         # Written out: a matrix product may round one row differently from another.

@@ -11,6 +11,9 @@ near    (distance below ``near`` times both radii): A exact where a closed form 
         otherwise by samples of the smaller panel clustered at its rim; T as above, so that
         all near panels are seen from the same samples and the residual is sampled
         consistently.
+
+With grounded or mirror planes the images of all panels are sources too, each with its sign:
+A_ij and T_k,ij are sums over the images of j.
 """
 
 from __future__ import annotations
@@ -199,27 +202,53 @@ def _copy_row(i, origin, old, new):
                 new.tests[t, i, j] = old.tests[t, k, origin[j]]
 
 
-@njit(cache=True, error_model="numpy")
-def _fill_row(i, panels, targets, reach, origin, new):
-    work = np.empty((ROWS, targets.weights.shape[1]))
-    out = np.empty(5)
-    sampled = 0
-    for j in range(panels.area.size):
-        if origin[i] >= 0 and origin[j] >= 0:
-            continue
-        dx = panels.center[i] - panels.center[j]
-        distance = math.sqrt(dot(dx, dx)) / (panels.radius[i] + panels.radius[j])
-        if distance > reach[1]:
-            far_pair(i, j, panels, targets, out)
-        else:
-            potential(j, panels, targets.points, i, work)
-            _collect(i, targets, work, out)
-            sampled += 1
-            if distance <= reach[0]:
-                out[0] = near_pair(i, j, panels) if j >= i else math.nan
+class Sources(NamedTuple):
+    """Panels and their images behind grounded and mirror planes.
+
+    Args:
+        panels: n panels, then all n of each image in turn.
+        signs: (g,) sign of the charge on each image, 1 for the panels themselves.
+    """
+
+    panels: PanelArrays
+    signs: np.ndarray
+
+
+@njit(inline="always")
+def _put(i, j, image, sign, out, new):
+    """Let the original (image 0) start the sums over the images of panel j, others add to them."""
+    if image == 0:
         new.single[i, j] = out[0]
         for k in range(4):
             new.tests[k, i, j] = out[k + 1]
+    else:
+        new.single[i, j] += sign * out[0]
+        for k in range(4):
+            new.tests[k, i, j] += sign * out[k + 1]
+
+
+@njit(cache=True, error_model="numpy")
+def _fill_row(i, sources, targets, reach, origin, new):
+    panels, signs = sources.panels, sources.signs
+    work = np.empty((ROWS, targets.weights.shape[1]))
+    out = np.empty(5)
+    sampled = 0
+    for image in range(signs.size):
+        for j in range(origin.size):
+            if origin[i] >= 0 and origin[j] >= 0:
+                continue
+            source = image * origin.size + j
+            dx = panels.center[i] - panels.center[source]
+            distance = math.sqrt(dot(dx, dx)) / (panels.radius[i] + panels.radius[source])
+            if distance > reach[1]:
+                far_pair(i, source, panels, targets, out)
+            else:
+                potential(source, panels, targets.points, i, work)
+                _collect(i, targets, work, out)
+                sampled += 1
+                if distance <= reach[0]:
+                    out[0] = near_pair(i, source, panels) if j >= i else math.nan
+            _put(i, j, image, signs[image], out, new)
     return sampled
 
 
@@ -240,18 +269,18 @@ def mirror(single: np.ndarray) -> None:
 
 
 @njit(cache=True, nogil=True, error_model="numpy")
-def fill_block(first, last, panels, targets, reach, origin, old, new):
+def fill_block(first, last, sources, targets, reach, origin, old, new):
     """Rows first to last (excluded) of ``fill``; near pairs below the diagonal stay NaN."""
     sampled = 0
     for i in range(first, last):
         if origin[i] >= 0:
             _copy_row(i, origin, old, new)
-        sampled += _fill_row(i, panels, targets, reach, origin, new)
+        sampled += _fill_row(i, sources, targets, reach, origin, new)
     return sampled
 
 
 def fill(
-    panels: PanelArrays,
+    sources: Sources,
     targets: Targets,
     reach: np.ndarray,
     origin: np.ndarray,
@@ -264,8 +293,8 @@ def fill(
     quadrature error only.
 
     Args:
-        panels: geometry of n panels.
-        targets: their samples and tests.
+        sources: n panels and their images.
+        targets: samples and tests of the n panels.
         reach: (2,) ``near`` and ``far``: distances over the sum of both radii.
         origin: (n,) index of each panel in ``old``, or -1.
         old: matrices of the mesh before; of any size, even empty.
@@ -276,9 +305,9 @@ def fill(
     """
 
     def block(first: int, last: int) -> int:
-        return int(fill_block(first, last, panels, targets, reach, origin, old, new))
+        return int(fill_block(first, last, sources, targets, reach, origin, old, new))
 
-    sampled = sum_over_rows(len(panels.area), block)
+    sampled = sum_over_rows(len(origin), block)
     mirror(new.single)
     return sampled
 

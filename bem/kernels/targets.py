@@ -39,11 +39,11 @@ class Targets(NamedTuple):
 
 
 def make_targets(panels: PanelArrays) -> Targets:
-    """Samples and tests of all panels."""
+    """Samples and tests of all panels; those of one do not depend on the others to the last bit."""
     at, jacobian = bilinear(panels.corners, XI, ETA)
     weights = jacobian * _WEIGHT
     raw = np.array([XI, ETA, 1.5 * XI**2 - 0.5, 1.5 * ETA**2 - 0.5])
-    mean = weights @ raw.T / panels.area[:, None]
+    mean = np.einsum("nk,tk->nt", weights, raw) / panels.area[:, None]
     test = raw[None] - mean[:, :, None]
     weighted = test * weights[:, None, :]
     products = np.stack([at[..., 0] ** 2, at[..., 1] ** 2, at[..., 0] * at[..., 1]], axis=2)
@@ -52,7 +52,7 @@ def make_targets(panels: PanelArrays) -> Targets:
         points=np.ascontiguousarray(points),
         weights=weights,
         tests=np.ascontiguousarray(weighted),
-        first=weighted @ at,
-        second=weighted @ products,
+        first=np.einsum("ntk,nkc->ntc", weighted, at),
+        second=np.einsum("ntk,nkc->ntc", weighted, products),
         square=np.sum(weighted * test, axis=2),
     )

@@ -7,7 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from bem.kernels import pairs
-from bem.kernels.arrays import PanelArrays
+from bem.kernels.images import plain_energy
+from bem.kernels.pairs import Sources
 from bem.kernels.targets import Targets
 
 NEAR = 1.5
@@ -58,23 +59,24 @@ class DenseOperator:
     """Dense single-layer operator of a panel set.
 
     Args:
-        panels: geometry, n panels.
-        targets: samples and tests of the same panels.
+        sources: n panels and their images.
+        targets: samples and tests of the panels.
         far: distance over the sum of radii where expansions begin.
         reuse: an earlier operator, made with the same ``far``.
     """
 
     def __init__(
-        self, panels: PanelArrays, targets: Targets, far: float, reuse: Reuse | None = None
+        self, sources: Sources, targets: Targets, far: float, reuse: Reuse | None = None
     ) -> None:
-        n = len(panels.area)
-        self.radius = panels.radius
+        n = len(targets.weights)
+        self.sources = sources
+        self.radius = sources.panels.radius[:n]
         self.matrices = _empty(n)
         known = reuse.operator.matrices if reuse is not None else _empty(0)
         origin = reuse.origin if reuse is not None else np.full(n, -1)
         self.far = far
         reach = np.array([NEAR, far])
-        self.sampled_pairs = int(pairs.fill(panels, targets, reach, origin, known, self.matrices))
+        self.sampled_pairs = int(pairs.fill(sources, targets, reach, origin, known, self.matrices))
 
     @property
     def size(self) -> int:
@@ -111,4 +113,6 @@ class DenseOperator:
 
     def magnitude(self, left: np.ndarray, right: np.ndarray) -> np.ndarray:
         """(k, m) energies |left|^T A |right| without cancellation, from (n, k) and (n, m)."""
+        if (self.sources.signs < 0.0).any():
+            return plain_energy(self.sources.panels, np.abs(left), np.abs(right))
         return np.abs(left).T @ (self.matrices.single @ np.abs(right))

@@ -51,7 +51,7 @@ class Grid:
 
     Args:
         surface: what the panels follow.
-        around: leaves around the axis in the starting mesh.
+        around: leaves around the whole axis in the starting mesh.
         cells: (K,) leaves along each piece of the profile in the starting mesh.
     """
 
@@ -460,7 +460,8 @@ class CurvedFamily:
         chosen_around, chosen_along = _start_counts(surface, around)
         cells = np.array(chosen_along if along is None else along)
         grid = Grid(surface, chosen_around, cells)
-        i, j = (x.ravel() for x in np.indices((grid.around, int(cells.sum()))))
+        columns = round(surface.turn * grid.around)
+        i, j = (x.ravel() for x in np.indices((columns, int(cells.sum()))))
         box = np.stack([i, i + 1, j, j + 1], axis=1) * grid.unit
         leaves, pattern = _settled(grid, Leaves(box, np.full(len(box), -1)))
         nodes, leaf = _nodes(grid, leaves.box, pattern)
@@ -508,6 +509,9 @@ def _start_counts(surface: Revolution, around: int | None) -> tuple[int, tuple[i
         while around < MOST_AROUND and 4.0 * around * lengths.sum() < rings.max():
             around *= 2
     bends = np.array([piece.bend for piece in surface.profile])
-    least = np.maximum(2.0, np.ceil(bends / LARGEST_BEND - 1e-9))
+    fewest = np.full(surface.pieces, 2.0)
+    # A plane of symmetry may have cut a piece in half.
+    fewest[[0, -1]] = np.where(surface.cut, 1.0, 2.0)
+    least = np.maximum(fewest, np.ceil(bends / LARGEST_BEND - 1e-9))
     counts = np.clip(np.round(lengths * around / rings), least, MOST_ALONG)
     return around, tuple(counts.astype(int).tolist())

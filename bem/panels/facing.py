@@ -7,10 +7,12 @@ of that charge per step, so the indicator is blind to it and the starting mesh m
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
+from bem.geometry.flat_faces import FLATNESS
+from bem.geometry.planes import NO_PLANES, Planes
 from bem.panels.planar import Patch
 
 NEAR = 0.5
@@ -80,6 +82,7 @@ class FacingTable:
         origins: (n, 3).
         sizes: (n,).
         least: smaller patches are not looked at.
+        planes: grounded and mirror planes; a wall in a mirror is no rim.
     """
 
     patches: list[Patch]
@@ -87,10 +90,12 @@ class FacingTable:
     origins: np.ndarray
     sizes: np.ndarray
     least: float
+    planes: Planes
 
     @classmethod
-    def of(cls, patches: list[Patch]) -> FacingTable:
-        """Table of the patches of all conductors."""
+    def of(cls, patches: list[Patch], planes: Planes = NO_PLANES) -> FacingTable:
+        """Table of the patches of all conductors, followed by their images."""
+        patches = [*patches, *(image for patch in patches for image in _images(patch, planes))]
         sizes = np.array([p.size for p in patches])
         return cls(
             patches,
@@ -98,6 +103,7 @@ class FacingTable:
             np.array([p.origin for p in patches]),
             sizes,
             float(np.sort(sizes)[-MOST_FACING]) if len(sizes) > MOST_FACING else 0.0,
+            planes,
         )
 
     def _facing(self, k: int) -> np.ndarray:
@@ -158,7 +164,20 @@ class FacingTable:
             )
             ends = np.concatenate([ends, shadow.edges[new]])
             gap = np.concatenate([gap, shadow.gap[new]])
+        gap[self.planes.mirrored(patch.lift(ends), FLATNESS * patch.size)] = np.inf
         return Walls(ends, np.arange(len(ends)) < outline, gap)
+
+
+def _images(patch: Patch, planes: Planes) -> list[Patch]:
+    """Images of a patch; those of opposite sign belong to a conductor of their own."""
+    signs = planes.signs[1:]
+    origins = planes.images(patch.origin)[1:]
+    axes = planes.images(patch.origin + patch.axes)[1:] - origins[:, None]
+    owners = [patch.conductor if sign > 0.0 else -1 - patch.conductor for sign in signs]
+    return [
+        replace(patch, conductor=owner, origin=origin, axes=frame)
+        for owner, origin, frame in zip(owners, origins, axes, strict=True)
+    ]
 
 
 def _coincident(edges: np.ndarray, walls: np.ndarray, tolerance: np.ndarray) -> np.ndarray:

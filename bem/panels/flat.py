@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from bem.geometry.flat_faces import FLATNESS
+from bem.geometry.planes import NO_PLANES, Planes
 from bem.panels.arrangement import trapezoids
 from bem.panels.facing import FacingTable, Walls
 from bem.panels.planar import Patch
@@ -55,9 +56,9 @@ class FlatFamily:
     feature: np.ndarray
 
     @classmethod
-    def start(cls, patches: list[Patch]) -> FlatFamily:
-        """Starting mesh that knows outlines and gaps."""
-        pieces = _pieces(patches)
+    def start(cls, patches: list[Patch], planes: Planes = NO_PLANES) -> FlatFamily:
+        """Starting mesh that knows outlines, and gaps to other bodies and to images."""
+        pieces = _pieces(patches, planes)
         if len(pieces.corners) <= MANY_PIECES:
             pieces = _three_quads(pieces)
         if len(pieces.corners) <= FEW_PIECES:
@@ -78,8 +79,8 @@ class FlatFamily:
         return FlatFamily(corners, self.conductor[order], self.feature[order]), kept
 
 
-def _pieces(patches: list[Patch]) -> Pieces:
-    table = FacingTable.of(patches)
+def _pieces(patches: list[Patch], planes: Planes) -> Pieces:
+    table = FacingTable.of(patches, planes)
     corners, owner, gaps, feature = [], [], [], []
     for k, patch in enumerate(patches):
         walls = table.walls(k)

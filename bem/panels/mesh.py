@@ -8,7 +8,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bem.geometry.flat_faces import FlatFaces
+from bem.geometry.flat_faces import FLATNESS, FlatFaces
+from bem.geometry.planes import NO_PLANES, Planes
 from bem.geometry.surface import Surface
 from bem.geometry.topology import edges_of
 from bem.panels.align import align_patches
@@ -43,12 +44,14 @@ class Body:
     rounding: float
 
     @classmethod
-    def of(cls, surface: Surface, hollow: bool) -> Body:
+    def of(cls, surface: Surface, hollow: bool, planes: Planes = NO_PLANES) -> Body:
         """Tell what a surface bounds; a hollow one is a skin even where it is closed."""
         if surface.curve is not None:
             closed = not any(surface.curve.free_rims)
         else:
-            closed = bool((edges_of(surface.triangles).uses == 2).all())
+            edges = edges_of(surface.triangles)
+            ends = surface.vertices[edges.ends[edges.uses != 2]]
+            closed = bool(planes.mirrored(ends, FLATNESS * surface.extent).all())
         return cls(closed and not hollow, surface.rounding)
 
 
@@ -60,11 +63,13 @@ class Mesh:
         families: flat panels of the whole scene, then one family per curved body.
         owners: per family, the conductor (n_family,) of each panel.
         bodies: what each conductor is.
+        planes: whose images of all panels count too.
     """
 
     families: tuple[Family, ...]
     owners: tuple[np.ndarray, ...]
     bodies: tuple[Body, ...]
+    planes: Planes = NO_PLANES
 
     @classmethod
     def start(
@@ -72,6 +77,7 @@ class Mesh:
         surfaces: list[Surface],
         hollow: Iterable[int] = (),
         accept: Callable[[int], None] = lambda _: None,
+        planes: Planes = NO_PLANES,
     ) -> Mesh:
         """Return the starting mesh of one surface per conductor.
 
@@ -80,6 +86,7 @@ class Mesh:
             hollow: conductors whose closed surface is a skin, with field on both sides.
             accept: called early with a number of panels that the mesh will at least have,
                 and with that of the finished mesh; it may raise.
+            planes: grounded and mirror planes; no surface crosses them.
         """
         flat = {k: FlatFaces.of(s) for k, s in enumerate(surfaces) if s.curve is None}
         accept(sum(faces.count for faces in flat.values()))
@@ -87,7 +94,8 @@ class Mesh:
         families: list[Family] = []
         owners = []
         if patches:
-            family = FlatFamily.start(align_patches(patches, max(s.extent for s in surfaces)))
+            aligned = align_patches(patches, max(s.extent for s in surfaces))
+            family = FlatFamily.start(aligned, planes)
             families.append(family)
             owners.append(_owners(family, 0))
         for k, surface in enumerate(surfaces):
@@ -95,8 +103,8 @@ class Mesh:
                 families.append(_curved(surface.curve))
                 owners.append(_owners(families[-1], k))
         accept(sum(len(owner) for owner in owners))
-        bodies = tuple(Body.of(s, k in set(hollow)) for k, s in enumerate(surfaces))
-        return _resolved(cls(tuple(families), tuple(owners), bodies))
+        bodies = tuple(Body.of(s, k in set(hollow), planes) for k, s in enumerate(surfaces))
+        return _resolved(cls(tuple(families), tuple(owners), bodies, planes))
 
     @property
     def corners(self) -> np.ndarray:
@@ -149,7 +157,8 @@ class Mesh:
             origin.append(fresh)
             owners.append(_owners(finer, int(owner[0])))
             start += len(owner)
-        return Mesh(tuple(families), tuple(owners), self.bodies), np.concatenate(origin)
+        finer_mesh = Mesh(tuple(families), tuple(owners), self.bodies, self.planes)
+        return finer_mesh, np.concatenate(origin)
 
 
 @dataclass(frozen=True)

@@ -7,9 +7,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from bem.errors import GeometryError, InputError
+from bem.geometry.planes import Planes
 from bem.geometry.wording import counted, metre_text
 from bem.scene.body import Body, body_of
 from bem.scene.pairs import ALL_PAIRS, CONTACT, PairReport, all_pairs
+from bem.scene.plane_checks import ground_gap, on_kept_side, plane_findings
 from bem.scene.scene import Scene
 from bem.units import metres_per
 
@@ -73,6 +75,7 @@ class Inspection:
         fatal: reasons not to solve, one line each.
         warnings: what may be wrong with a body, one line each.
         notes: what is worth knowing, one line each, the warnings among it.
+        ground_gaps: distance of each conductor from the grounded plane, metres; none without it.
     """
 
     unit: str
@@ -81,6 +84,7 @@ class Inspection:
     fatal: list[str]
     warnings: list[str]
     notes: list[str]
+    ground_gaps: tuple[float, ...] = ()
 
 
 def inspect(scene: Scene) -> Inspection:
@@ -91,7 +95,8 @@ def inspect(scene: Scene) -> Inspection:
     """
     if not scene.conductors:
         raise InputError("the scene has no conductors; add at least one")
-    bodies = [body_of(conductor) for conductor in scene.conductors]
+    planes = scene.planes
+    bodies = [body_of(on_kept_side(conductor, planes)) for conductor in scene.conductors]
     reports = tuple(_body_report(body) for body in bodies)
     pairs = tuple(all_pairs(bodies))
     solid = {c.name: c.body == "solid" for c in scene.conductors}
@@ -101,7 +106,11 @@ def inspect(scene: Scene) -> Inspection:
         unit=scene.unit,
         bodies=reports,
         pairs=pairs,
-        fatal=[_reason(pair, scene.unit) for pair in bad],
+        fatal=[
+            *plane_findings(scene.conductors, planes, scene.unit),
+            *(_reason(pair, scene.unit) + _image_hint(planes) for pair in bad),
+        ],
+        ground_gaps=tuple(ground_gap(b, planes.ground) for b in bodies) if planes.ground else (),
         warnings=warnings,
         notes=[*warnings, *_pair_notes([p for p in pairs if p not in bad], len(bodies))],
     )
@@ -169,6 +178,13 @@ def _reason(pair: PairReport, unit: str) -> str:
         f"their gap of {metre_text(pair.gap)} is within {CONTACT:g} of the smaller body; "
         "move them apart, or make them one conductor"
     )
+
+
+def _image_hint(planes: Planes) -> str:
+    """What to think of where bodies were folded onto one side of mirror planes."""
+    if not planes.mirrors:
+        return ""
+    return " (with the mirror planes a body stands for its images too: leave those out)"
 
 
 def point_text(point: tuple[float, float, float] | np.ndarray, unit: str) -> str:

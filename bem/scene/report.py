@@ -7,6 +7,7 @@ import numpy as np
 from bem.geometry.wording import counted, metre_text, shown
 from bem.scene.inspect import BodyReport, Inspection, point_text
 from bem.scene.pairs import PairReport
+from bem.scene.plane_checks import plane_text
 from bem.scene.scene import Conductor, Scene
 from bem.scene.states import TERMINAL
 from bem.units import metres_per
@@ -22,6 +23,8 @@ def report(scene: Scene, inspection: Inspection) -> str:
         lines += ["", *_body(conductor, body, scene.unit)]
     if inspection.pairs:
         lines += ["", "smallest gaps", *_pairs(inspection.pairs)]
+    if inspection.ground_gaps:
+        lines += ["", "gaps to the grounded plane", *_ground_gaps(inspection)]
     if inspection.notes:
         lines += ["", "notes", *(f"  {line}" for line in inspection.notes)]
     if inspection.fatal:
@@ -40,8 +43,24 @@ def _head(scene: Scene, inspection: Inspection) -> str:
             f"{counted(len(inspection.bodies), 'conductor')}, {counted(faces, 'face')}, "
             f"unit {scene.unit}, relative permittivity {scene.relative_permittivity:g}",
             f"  box     {_box(np.array([low, high]), scene.unit)}",
+            *_planes(scene),
         ]
     )
+
+
+def _planes(scene: Scene) -> list[str]:
+    """Lines about grounded and mirror planes."""
+    ground, mirrors = scene.planes.ground, scene.planes.mirrors
+    lines = []
+    if ground is not None:
+        lines.append(f"  ground  infinite plane {plane_text(ground, scene.unit)} at potential zero")
+    if mirrors:
+        where = ", ".join(plane_text(mirror, scene.unit) for mirror in mirrors)
+        lines.append(
+            f"  mirror  {where}: a body and its images are one conductor, "
+            "results are for the whole; bodies are shown on the side of larger coordinates"
+        )
+    return lines
 
 
 def _box(bounds: np.ndarray, unit: str) -> str:
@@ -104,6 +123,15 @@ def _pairs(pairs: tuple[PairReport, ...]) -> list[str]:
     if len(pairs) > MOST_PAIRS:
         lines.append(f"  {counted(len(pairs) - MOST_PAIRS, 'wider gap')} not listed")
     return lines
+
+
+def _ground_gaps(inspection: Inspection) -> list[str]:
+    """Smallest gaps first."""
+    gaps = sorted(zip(inspection.ground_gaps, inspection.bodies, strict=True), key=lambda g: g[0])
+    width = max(len(body.name) for _, body in gaps)
+    lines = [f"  {body.name:<{width}}  {metre_text(max(gap, 0.0))}" for gap, body in gaps]
+    more = [f"  {counted(len(gaps) - MOST_PAIRS, 'wider gap')} not listed"]
+    return lines[:MOST_PAIRS] + (more if len(gaps) > MOST_PAIRS else [])
 
 
 def _gap(pair: PairReport) -> str:

@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
 from bem.errors import BemError, InputError
+from bem.geometry.planes import AXES, NO_PLANES, Plane, Planes
 from bem.geometry.surface import Surface
 from bem.scene import checks
 from bem.scene.placing import Place, place_or_refuse, rotation
@@ -63,13 +64,14 @@ class Conductor:
 
 @dataclass
 class Scene:
-    """Conductors in one homogeneous medium.
+    """Conductors in one homogeneous medium, with or without grounded and mirror planes.
 
     Args:
         unit: unit of every length that the scene is given; required.
         relative_permittivity: of the surroundings.
         conductors: filled by ``add_conductor``.
         folder: where relative names of mesh files start; None is the current directory.
+        planes: in metres, filled by ``set_ground_plane`` and ``add_mirror_plane``.
 
     Raises:
         UsageError: the unit is unknown.
@@ -80,6 +82,7 @@ class Scene:
     relative_permittivity: float = 1.0
     conductors: list[Conductor] = field(default_factory=list)
     folder: Path | None = None
+    planes: Planes = NO_PLANES
 
     def __post_init__(self) -> None:
         metres_per(self.unit)
@@ -134,6 +137,51 @@ class Scene:
             surface = surface.placed(where.matrix, metres_per(self.unit) * np.array(where.shift))
         self.conductors.append(Conductor(name, surface, body, source, state, node))
         return self
+
+    def set_ground_plane(
+        self, *, x: float | None = None, y: float | None = None, z: float | None = None
+    ) -> Scene:
+        """Put an infinite plane at potential zero; returns the scene itself.
+
+        All conductors must lie on one side of it. Give one coordinate, in the scene's unit.
+
+        Raises:
+            InputError: not one coordinate, there is a grounded plane, or a plane of that axis.
+        """
+        if self.planes.ground is not None:
+            raise InputError("ground_plane: found a second one; a scene has at most one")
+        plane = self._plane("ground_plane", {"x": x, "y": y, "z": z})
+        self.planes = replace(self.planes, ground=plane)
+        return self
+
+    def add_mirror_plane(
+        self, *, x: float | None = None, y: float | None = None, z: float | None = None
+    ) -> Scene:
+        """Add an infinite plane of symmetry; returns the scene itself.
+
+        The mirror image of a body belongs to its conductor, and results are for the whole.
+        Give one coordinate, in the scene's unit.
+
+        Raises:
+            InputError: not one coordinate, or there is a plane of that axis already.
+        """
+        number = len(self.planes.mirrors) + 1
+        plane = self._plane(f"mirror_plane {number}", {"x": x, "y": y, "z": z})
+        self.planes = replace(self.planes, mirrors=(*self.planes.mirrors, plane))
+        return self
+
+    def _plane(self, entry: str, given: dict[str, Any]) -> Plane:
+        found = {key: value for key, value in given.items() if value is not None}
+        if len(found) != 1:
+            raise checks.refuse(entry, found, "one of x, y, z")
+        [(key, value)] = found.items()
+        at = metres_per(self.unit) * checks.number(f"{entry}: {key}", value)
+        axis = AXES.index(key)
+        if any(plane.axis == axis for plane in self.planes.all):
+            raise InputError(
+                f"{entry}: found a second plane normal to {key}; each axis has room for one"
+            )
+        return Plane(axis, at)
 
     def _check_name(self, entry: str, name: Any) -> None:
         checks.text(f"{entry}: name", name)

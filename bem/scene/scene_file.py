@@ -5,6 +5,10 @@ A scene file::
     unit = "mm"                    # required: m, cm, mm, um, nm, in, mil
     [surroundings]
     relative_permittivity = 1.0    # optional
+    [ground_plane]                 # optional: infinite, at potential zero
+    z = 0.0                        # or x, or y
+    [[mirror_plane]]               # optional, up to three: images belong to their conductors
+    x = 0.0
     [[conductor]]
     name = "probe rod"
     mesh = "probe_rod.stl"         # relative to this file
@@ -26,6 +30,7 @@ from pathlib import Path
 from typing import Any
 
 from bem.errors import BemError, InputError, UsageError
+from bem.geometry.planes import AXES
 from bem.geometry.wording import counted, listed
 from bem.scene import checks
 from bem.scene.placing import Place
@@ -33,7 +38,7 @@ from bem.scene.scene import Scene, entry_name
 from bem.scene.states import check_terminals
 from bem.units import METRES_PER
 
-_TOP = ("unit", "surroundings", "conductor")
+_TOP = ("unit", "surroundings", "ground_plane", "mirror_plane", "conductor")
 _CONDUCTOR = ("name", "mesh", "part", "unit", "body", "place", "state", "node")
 _POSITION = re.compile(r"\(at (line \d+, column \d+|end of document)\)")
 
@@ -49,6 +54,7 @@ def load_scene(path: str | Path) -> Scene:
         if "unit" not in entries:
             raise InputError(f"unit: missing; allowed are {', '.join(METRES_PER)}")
         scene = Scene(entries["unit"], _permittivity(entries), folder=Path(path).parent)
+        _add_planes(scene, entries)
         for number, conductor in enumerate(_conductors(entries), 1):
             _add(scene, number, conductor)
         check_terminals(scene.conductors)
@@ -134,6 +140,25 @@ def _permittivity(entries: dict[str, Any]) -> float:
     key = "relative_permittivity"
     around = checks.table("surroundings", entries.get("surroundings", {}), (key,))
     return checks.positive(f"surroundings.{key}", around.get(key, 1.0))
+
+
+def _add_planes(scene: Scene, entries: dict[str, Any]) -> None:
+    """Add what [ground_plane] and [[mirror_plane]] say."""
+    if "ground_plane" in entries:
+        scene.set_ground_plane(**_coordinate("ground_plane", entries["ground_plane"]))
+    mirrors = entries.get("mirror_plane", [])
+    if not isinstance(mirrors, list):
+        raise InputError(
+            "mirror_plane: found a single value or [mirror_plane]; write [[mirror_plane]]"
+        )
+    for number, mirror in enumerate(mirrors, 1):
+        scene.add_mirror_plane(**_coordinate(f"mirror_plane {number}", mirror))
+
+
+def _coordinate(where: str, value: Any) -> dict[str, float]:
+    """A plane's coordinate by the name of its axis."""
+    found = checks.table(where, value, tuple(AXES))
+    return {key: checks.number(f"{where}: {key}", at) for key, at in found.items()}
 
 
 def _conductors(entries: dict[str, Any]) -> list[Any]:
