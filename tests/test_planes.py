@@ -371,6 +371,7 @@ def test_scene_files_have_planes(tmp_path: Path) -> None:
     assert "gaps to the grounded plane\n  cube  1.5 mm" in text
     result = bem.extract(scene, 1e-2)
     assert "infinite grounded plane z = -2 mm" in str(result).replace("\n  ", " ")
+    assert "To the surroundings and the grounded plane (row sums)" in str(result)
     assert "all values are for the whole" in str(result).replace("\n  ", " ")
     assert result.settings["mirror_planes_m"] == [{"x": 0.0}, {"y": 5e-4}]
 

@@ -80,10 +80,10 @@ KNOWN = "known are name, mesh, part, unit, body, place, state, node"
          "allowed are m, cm, mm, um, nm, in, mil"),
         ("unit = 5\n" + ROD, "unit: found 5; allowed are m, cm, mm, um, nm, in, mil"),
         ('units = "mm"\n' + ROD, 'unknown key "units"; did you mean "unit"? '
-         "known are unit, surroundings, conductor"),
+         "known are unit, surroundings, ground_plane, mirror_plane, conductor"),
         ('unit = "mm"\n[[conductors]]\n', 'unknown key "conductors"; did you mean "conductor"? '
-         "known are unit, surroundings, conductor"),
-        ('unit = "mm"\nxyz = 1\n', 'unknown key "xyz"; known are unit, surroundings, conductor'),
+         "known are unit, surroundings, ground_plane, mirror_plane, conductor"),
+        ('unit = "mm"\nxyz = 1\n', 'unknown key "xyz"; known are unit, surroundings, ground_plane, mirror_plane, conductor'),
         ('unit = "mm"\nsurroundings = 2\n' + ROD, "surroundings: found 2, "
          "needs a table with relative_permittivity"),
         ('unit = "mm"\n[surroundings]\npermittivity = 2\n' + ROD, "surroundings: unknown key "

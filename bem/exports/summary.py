@@ -146,7 +146,7 @@ def _planes(result: CapacitanceResult) -> list[str]:
     lines = []
     if "ground_plane_m" in result.settings:
         where = _plane(result.settings["ground_plane_m"])
-        lines.append(f"infinite grounded plane {where}: row sums are to it and to the surroundings")
+        lines.append(f"infinite grounded plane {where}")
     if mirrors := result.settings.get("mirror_planes_m"):
         where = ", ".join(map(_plane, mirrors))
         lines.append(

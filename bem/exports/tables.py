@@ -69,9 +69,11 @@ def tables_of(result: CapacitanceResult) -> list[Table]:
 def outward(result: CapacitanceResult) -> str:
     """Say where the row sums lead: to the surroundings, and to what is grounded."""
     ends = ["the surroundings"]
+    if "ground_plane_m" in result.settings:
+        ends.append("the grounded plane")
     if result.reduction is not None and result.reduction.grounded:
         ends.append("grounded conductors")
-    return " and ".join(ends)
+    return ", ".join(ends[:-1]) + " and " + ends[-1] if len(ends) > 1 else ends[0]
 
 
 def _matrix(result: CapacitanceResult, unit: Unit) -> Table:
