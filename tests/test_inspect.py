@@ -100,7 +100,7 @@ def test_slivers_and_holes_are_noted():
     fine = ball(1.0, 32)
     torn = Surface(fine.vertices, fine.faces[1:])
     sliver = Surface(np.array([[0.0, 0, 5], [1, 0, 5], [1, 2e-5, 5]]), np.array([[0, 1, 2, -1]]))
-    notes = inspect(scene_of(("torn", torn, "solid"), ("thin", sliver, "solid"))).notes
+    notes = inspect(scene_of(("torn", torn, "shell"), ("thin", sliver, "solid"))).notes
     assert notes[0].startswith('"torn" is almost closed: 3 open edges, the first at (')
     assert notes[0].endswith(" mm; it counts as a sheet, not as solid metal")
     assert notes[1] == '"thin" has slivers: one triangle is 5.0e+04 times as long as high'

@@ -85,7 +85,7 @@ def _push(stack: np.ndarray, low: np.ndarray, top: int, pair: tuple[int, int, fl
 
 
 @njit(cache=True)
-def _push_halves(
+def push_halves(
     a: Tree, b: Tree, pair: tuple[int, int], stack: np.ndarray, low: np.ndarray, top: int
 ) -> int:
     """Put the two halves of a pair on the stack, the nearer one on top."""
@@ -113,7 +113,7 @@ def _search(a: Tree, b: Tree, limit: float, enough: float, slack: float) -> Gap:
             best = _leaf_gap(a, i, b, j, best)
             bound = min(bound, best.distance)
         else:
-            top = _push_halves(a, b, (i, j), stack, low, top)
+            top = push_halves(a, b, (i, j), stack, low, top)
     return best
 
 
@@ -165,5 +165,5 @@ def deepest_crossing(a: Tree, b: Tree, enough: float) -> tuple[float, Vector]:
         if a.child[i] < 0 and b.child[j] < 0:
             best = _leaf_depth(a, i, b, j, best)
         else:
-            top = _push_halves(a, b, (i, j), stack, low, top)
+            top = push_halves(a, b, (i, j), stack, low, top)
     return best

@@ -63,6 +63,12 @@ def thickness(vertices: np.ndarray, faces: np.ndarray) -> np.ndarray:
     return result
 
 
+def triangle_owners(faces: np.ndarray) -> np.ndarray:
+    """Face (t,) of each row of ``Surface.triangles``."""
+    quads = np.flatnonzero(faces[:, 3] != NO_CORNER)
+    return np.concatenate([np.flatnonzero(faces[:, 3] == NO_CORNER), quads, quads])
+
+
 def _heights(corners: np.ndarray) -> np.ndarray:
     sides = np.roll(corners, -1, axis=1) - corners
     area2 = np.linalg.norm(np.cross(sides[:, 0], sides[:, 1]), axis=1)

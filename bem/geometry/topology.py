@@ -67,7 +67,7 @@ def open_edges(vertices: np.ndarray, edges: Edges, tolerance: float) -> np.ndarr
     if len(odd) == 0:
         return odd
     ends = edges.ends[odd]
-    cut, corner = _corners_on(vertices, ends, tolerance)
+    cut, corner = corners_on(vertices, ends, tolerance)
     segments, source = _cut(vertices, ends, cut, corner)
     span = len(vertices)
     key = segments.min(axis=1) * span + segments.max(axis=1)
@@ -75,10 +75,19 @@ def open_edges(vertices: np.ndarray, edges: Edges, tolerance: float) -> np.ndarr
     return odd[np.unique(source[count[group] % 2 == 1])]
 
 
-def _corners_on(
+def corners_on(
     vertices: np.ndarray, ends: np.ndarray, tolerance: float
 ) -> tuple[np.ndarray, np.ndarray]:
-    """Edges and corners (indices into ``ends`` and vertices) where a corner lies on an edge."""
+    """Find corners of edges that lie on other edges.
+
+    Args:
+        vertices: (v, 3) metres.
+        ends: (e, 2) vertices of the edges.
+        tolerance: a corner this near to an edge lies on it, metres.
+
+    Returns:
+        (n,) edge and (n,) vertex of each find.
+    """
     from scipy.spatial import cKDTree
 
     used = np.unique(ends)

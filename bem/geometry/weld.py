@@ -63,7 +63,7 @@ def _compact(surface: Surface) -> Surface:
 
 def _join(surface: Surface, tolerance: float) -> tuple[Surface, list[str]]:
     keep, label = _same(surface.vertices)
-    near_keep, near_label = _near(surface.vertices[keep], tolerance)
+    near_keep, near_label = near_groups(surface.vertices[keep], tolerance)
     changes = []
     if len(keep) < len(surface.vertices):
         left = counted(len(keep), "vertex", "vertices")
@@ -104,8 +104,20 @@ def _same(points: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     return _relabel(order[starts], group)
 
 
-def _near(points: np.ndarray, tolerance: float) -> tuple[np.ndarray, np.ndarray]:
-    """Find groups of points linked by short distances, as ``_relabel`` returns them."""
+def near_groups(points: np.ndarray, tolerance: float) -> tuple[np.ndarray, np.ndarray]:
+    """Find groups of points linked by short distances.
+
+    Args:
+        points: (n, 3) metres.
+        tolerance: points this close are linked, metres.
+
+    Returns:
+        (g,) the lowest members of the groups in rising order, and (n,) the place there of
+        each point's group.
+
+    Raises:
+        InputError: most points are linked to many others.
+    """
     from scipy.sparse import coo_array
     from scipy.sparse.csgraph import connected_components
     from scipy.spatial import cKDTree

@@ -7,7 +7,7 @@ import json
 from collections.abc import Iterable, Sequence
 from typing import Any
 
-from bem.units import metre_unit
+from bem.units import metre_unit, metres_per
 
 _MOST_NAMES = 12
 
@@ -18,6 +18,12 @@ def metre_text(value: float) -> str:
         return "0 m"
     name, size = metre_unit(value)
     return f"{value / size:.4g} {name}"
+
+
+def point_text(point: Iterable[float], unit: str) -> str:
+    """Point given in metres in another unit, as in "(1, 2.5, 0) mm"."""
+    numbers = (f"{(x + 0.0) / metres_per(unit):.6g}" for x in point)
+    return f"({', '.join(numbers)}) {unit}"
 
 
 def counted(number: int, thing: str, plural: str | None = None) -> str:

@@ -8,15 +8,21 @@ import numpy as np
 
 from bem.errors import GeometryError, InputError
 from bem.geometry.planes import Planes
-from bem.geometry.wording import counted, metre_text
+from bem.geometry.repair import SEAMS
+from bem.geometry.wording import counted, metre_text, point_text
 from bem.scene.body import Body, body_of
 from bem.scene.pairs import ALL_PAIRS, CONTACT, PairReport, all_pairs
 from bem.scene.plane_checks import ground_gap, on_kept_side, plane_findings
 from bem.scene.scene import Scene
-from bem.units import metres_per
 
 ALMOST_CLOSED = 0.02
 """A surface with less than this part of its edges open is probably meant to be closed."""
+
+ONE_FACET = 3
+"""So many open edges are a missing facet, however coarse the mesh."""
+
+SOUP = 20
+"""So many triangles or more without a shared corner are told as such."""
 
 SLIVER = 1e4
 """Triangles this many times longer than high get a note."""
@@ -112,7 +118,11 @@ def inspect(scene: Scene) -> Inspection:
         ],
         ground_gaps=tuple(ground_gap(b, planes.ground) for b in bodies) if planes.ground else (),
         warnings=warnings,
-        notes=[*warnings, *_pair_notes([p for p in pairs if p not in bad], len(bodies))],
+        notes=[
+            *warnings,
+            *_junctions(bodies, scene.unit),
+            *_pair_notes([p for p in pairs if p not in bad], len(bodies)),
+        ],
     )
 
 
@@ -187,12 +197,6 @@ def _image_hint(planes: Planes) -> str:
     return " (with the mirror planes a body stands for its images too: leave those out)"
 
 
-def point_text(point: tuple[float, float, float] | np.ndarray, unit: str) -> str:
-    """Point in the scene's unit, as in "(1, 2.5, 0) mm"."""
-    numbers = (f"{x / metres_per(unit):.6g}" for x in np.asarray(point) + 0.0)
-    return f"({', '.join(numbers)}) {unit}"
-
-
 def _pair_notes(pairs: list[PairReport], number: int) -> list[str]:
     notes = [
         f'"{pair.inner}" lies inside "{_outer(pair)}"'
@@ -218,7 +222,12 @@ def _all_body_notes(reports: tuple[BodyReport, ...], bodies: list[Body], unit: s
 
 def _body_notes(report: BodyReport, body: Body, unit: str) -> list[str]:
     lines = []
-    if 0 < report.open_edges < ALMOST_CLOSED * len(body.edges.uses):
+    if _is_soup(body):
+        lines.append(
+            f'"{report.name}" falls apart into {counted(report.pieces, "single triangle")}: they '
+            f"miss each other by more than {SEAMS[-1]:g} of its size; export it with more digits"
+        )
+    if _is_almost_closed(report, body):
         end = body.edges.ends[body.open_edges[0], 0]
         lines.append(
             f'"{report.name}" is almost closed: {counted(report.open_edges, "open edge")}, '
@@ -230,4 +239,28 @@ def _body_notes(report: BodyReport, body: Body, unit: str) -> list[str]:
             f'"{report.name}" has slivers: one triangle is {report.worst_aspect:.1e} times as '
             "long as high"
         )
+    return lines
+
+
+def _is_soup(body: Body) -> bool:
+    return body.pieces[0] == len(body.triangles) >= SOUP
+
+
+def _is_almost_closed(report: BodyReport, body: Body) -> bool:
+    """Whether few edges are open, or those of a single facet."""
+    most = max(ALMOST_CLOSED * len(body.edges.uses), ONE_FACET if report.triangles > 3 else 0)
+    return 0 < report.open_edges <= most
+
+
+def _junctions(bodies: list[Body], unit: str) -> list[str]:
+    """Tell of edges where more than two faces meet."""
+    lines = []
+    for body in bodies:
+        many = np.flatnonzero(body.edges.uses > 2)
+        if len(many):
+            start = body.surface.vertices[body.edges.ends[many[0], 0]]
+            lines.append(
+                f'"{body.conductor.name}" has {counted(len(many), "edge")} of three faces or more, '
+                f"the first at {point_text(start, unit)}: fins and walls are fine on a conductor"
+            )
     return lines

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from bem.geometry.wording import counted, metre_text, shown
-from bem.scene.inspect import BodyReport, Inspection, point_text
+from bem.geometry.wording import counted, metre_text, point_text, shown
+from bem.scene.inspect import BodyReport, Inspection
 from bem.scene.pairs import PairReport
 from bem.scene.plane_checks import plane_text
 from bem.scene.scene import Conductor, Scene

@@ -131,6 +131,7 @@ class Scene:
                 surface, source = self._from_shape(shape)
             else:
                 surface, source = self._from_mesh(mesh, part, unit or self.unit)
+            surface, source = _repaired(surface, source, body)
         except BemError as problem:
             raise type(problem)(f"{entry}: {problem}") from None
         if where != Place():
@@ -203,6 +204,14 @@ class Scene:
         path = Path(mesh) if self.folder is None else self.folder / mesh
         surface, changes = read_surface(path, metres_per(unit), part)
         return surface, Source(str(mesh), file_digest(path), unit, part, tuple(changes))
+
+
+def _repaired(surface: Surface, source: Source, body: str) -> tuple[Surface, Source]:
+    """Mend the faces as far as that is safe, and tell."""
+    from bem.geometry.repair import repair
+
+    surface, changes = repair(surface, body == "solid", source.unit)
+    return surface, replace(source, changes=(*source.changes, *changes))
 
 
 def entry_name(number: int, name: Any) -> str:
