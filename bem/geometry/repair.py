@@ -118,6 +118,8 @@ def _set_apart(surface: Surface, solid: bool, unit: str) -> Repaired:
         united, pieces = _united(surface, found)
         if pieces:
             return Repaired(united, [f"{pieces} pieces that overlap or touch united"])
+    if len(found.coplanar) == 0 and not _is_closed(surface):
+        return Repaired(surface, [])
     if len(found.coplanar) == 0:
         place = point_text(_middle(surface, found.crossing[0]), unit)
         return Repaired(surface, [f"pieces cross near {place}, left as they are"])
