@@ -250,4 +250,42 @@ PANELS_AND_EXPORTS = (
     ),
 )
 
-FAULTS: tuple[Fault, ...] = KERNELS + UNITS_AND_SIGNS + BARS + PANELS_AND_EXPORTS
+REDUCTION = (
+    Fault(
+        "floating conductors a hundredth short of their potentials",
+        "results/reduction.py",
+        "self.kept - self.floating @ np.linalg.solve(inner, drive)",
+        "self.kept - self.floating @ np.linalg.solve(inner, 0.99 * drive)",
+        ("test_reduce.py",),
+    ),
+    Fault(
+        "bars of floating conductors left out of those of the terminals",
+        "results/reduction.py",
+        "first = size.T @ _applied_bar(matrix, weights)",
+        "first = nodes.kept.T @ _applied_bar(matrix, nodes.kept)",
+        ("test_reduce.py",),
+    ),
+    Fault(
+        "second order of the floating potentials left out of the bars",
+        "results/reduction.py",
+        "second = moved[:, :-1].T @ inverse @ moved",
+        "second = 0.0 * moved[:, :-1].T @ inverse @ moved",
+        ("test_reduce.py",),
+    ),
+    Fault(
+        "bars of row sums taken without those of the grounded columns",
+        "results/reduction.py",
+        "matrix.row_bar[:, None] + matrix.bar @ np.abs(weights - 1.0)",
+        "matrix.row_bar[:, None] + 0.0 * matrix.bar @ np.abs(weights - 1.0)",
+        ("test_reduce.py",),
+    ),
+    Fault(
+        "what is tied to ground stays a terminal",
+        "results/wiring.py",
+        "(GROUNDED, TERMINAL, FLOATING) if s in states",
+        "(TERMINAL, GROUNDED, FLOATING) if s in states",
+        ("test_reduce.py",),
+    ),
+)
+
+FAULTS: tuple[Fault, ...] = KERNELS + UNITS_AND_SIGNS + BARS + PANELS_AND_EXPORTS + REDUCTION

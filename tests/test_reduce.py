@@ -10,7 +10,8 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from scenes import FARAD
+from reference_values import BY_NAME
+from scenes import FARAD, scene_of_reference
 from test_results import assert_same, sample_result
 
 import bem
@@ -18,14 +19,8 @@ from bem.errors import SolutionError, UsageError
 from bem.results.reduction import SECOND_ORDER
 from bem.results.result import CapacitanceResult, Reduction, Round
 
-GUARD_RING = np.array(
-    [
-        [1.4889468833, -0.8291798008, -0.5721820418],
-        [-0.8291798008, 3.2985860925, -1.8288243487],
-        [-0.5721820418, -1.8288243487, 3.1308069413],
-    ]
-)
-"""L of a thin disc, the ring around it and the plate below (an independent run, ten digits)."""
+GUARD_RING = BY_NAME["guard ring"].matrix
+"""L of a thin disc, the ring around it and the plate below (spectral method, ten digits)."""
 
 DISC, RING, PLATE = NAMES = ("disc", "ring", "plate")
 
@@ -153,7 +148,7 @@ def test_grounded_between_concentric_shells() -> None:
 
 @st.composite
 def wirings(draw: st.DrawFn) -> tuple[int, dict[str, list[list[int]]]]:
-    """Seed and a split of six conductors to grounded, floating and terminal nodes."""
+    """Draw a seed and a split of six conductors to grounded, floating and terminal nodes."""
     group = draw(st.lists(st.integers(0, 4), min_size=6, max_size=6))
     group[0] = 0
     state = ["tied", *draw(st.lists(st.sampled_from(["tied", "afloat", "ground"]), min_size=4,
@@ -217,6 +212,36 @@ def test_bars_are_no_larger_than_they_must_be() -> None:
     small = result_of(value, bar).reduced(floating=["c3"])
     true = FARAD * charges(value + bar, [], [[3]], [[0], [1], [2]])
     assert np.all(np.abs(true - small.capacitance) >= 0.99 * small.error)
+
+
+@pytest.fixture(scope="module")
+def extracted() -> CapacitanceResult:
+    """Solve the guard ring itself."""
+    return bem.extract(scene_of_reference(BY_NAME["guard ring"]), tolerance=5e-3, threads=1)
+
+
+@pytest.mark.parametrize(
+    ("ground", "afloat", "tied"),
+    [
+        ([], [[1]], [[0], [2]]),
+        ([1], [[2]], [[0]]),
+        ([2], [], [[0, 1]]),
+        ([], [[1, 2]], [[0]]),
+        ([], [], [[0, 1, 2]]),
+        ([], [[0], [1]], [[2]]),
+    ],
+)
+def test_an_extraction_keeps_its_bars_and_tolerance(
+    extracted: CapacitanceResult, ground: list[int], afloat: list[list[int]], tied: list[list[int]]
+) -> None:
+    """Spectral values of the record, reduced by one linear system."""
+    nodes = {"ground": [[k] for k in ground], "afloat": afloat, "tied": tied}
+    small = reduce_by(extracted, nodes)
+    expected = FARAD * charges(GUARD_RING, ground, afloat, tied)
+    assert small.converged and small.used.max() <= 3.0
+    assert np.all(np.abs(small.capacitance - expected) <= small.error)
+    assert np.all(np.abs(small.capacitance - expected) <= small.allowance)
+    assert np.all(np.abs(small.row_sum - expected.sum(axis=1)) <= small.row_sum_error)
 
 
 # the order does not matter
