@@ -15,8 +15,9 @@ so that to first order the change of W drops out. The bar is a bound on both ter
 the inverse is bounded, entry by entry, by that of the comparison matrix less E_ff (Ostrowski
 1937), as long as that is an M-matrix; if not, the floating potentials are not known.
 
-Where a column w of W is 1 V on most conductors, C w is near the row sums g, which have bars of
-their own: C w = g + C (w - 1), and the smaller of both bounds holds.
+The row sums g of C have bars of their own, which are smaller than the sum of those of the row,
+and C w = s g + C (w - s) for every number s: where a column w of W has about one potential on
+most conductors, that gives the tighter bound. The best s of a row is a weighted median.
 """
 
 from __future__ import annotations
@@ -38,19 +39,17 @@ SECOND_ORDER = "floating, second order"
 
 
 class Matrix(NamedTuple):
-    """A capacitance matrix with bars, and its row sums where they are known.
+    """A capacitance matrix with bars on its entries and its row sums.
 
     Args:
         value: (n, n) F.
         bar: (n, n) F.
-        row_sum: (n,) F, or None.
-        row_bar: (n,) F, or None.
+        row_bar: (n,) F.
     """
 
     value: np.ndarray
     bar: np.ndarray
-    row_sum: np.ndarray | None = None
-    row_bar: np.ndarray | None = None
+    row_bar: np.ndarray
 
 
 @dataclass(frozen=True)
@@ -105,29 +104,38 @@ class Bars(NamedTuple):
 
 def bars(matrix: Matrix, nodes: Nodes, weights: np.ndarray) -> Bars:
     """Bounds for ``weights`` (n, k), as the module describes them; infinite if there is none."""
-    size = np.abs(weights)
     total = weights.sum(axis=1, keepdims=True)
-    first = size.T @ _applied_bar(matrix, weights)
-    row = (size.T @ _applied_bar(matrix, total))[:, 0]
-    moved = nodes.floating.T @ np.column_stack(
-        [matrix.bar @ size, _applied_bar(matrix, total)[:, 0]]
-    )
-    inverse = _inverse_bound(matrix, nodes.floating)
+    applied = _applied_bar(matrix, np.hstack([weights, total]))
+    first = np.abs(weights).T @ applied
+    second = _second_order(matrix, nodes.floating, nodes.floating.T @ applied)
+    entries = np.minimum(first[:, :-1], first[:, :-1].T)
+    return Bars(entries, second[:, :-1], first[:, -1] + second[:, -1])
+
+
+def _second_order(matrix: Matrix, floating: np.ndarray, moved: np.ndarray) -> np.ndarray:
+    """(k, k + 1) second-order bound from that on the charges (f, k + 1) of floating nodes."""
+    inverse = _inverse_bound(matrix, floating)
     if inverse is None:
-        second = np.full((len(first), len(first) + 1), np.inf)
-    else:
-        second = moved[:, :-1].T @ inverse @ moved
-    return Bars(np.minimum(first, first.T), second[:, :-1], row + second[:, -1])
+        return np.full((moved.shape[1] - 1, moved.shape[1]), np.inf)
+    return np.asarray(moved[:, :-1].T @ inverse @ moved)
 
 
 def _applied_bar(matrix: Matrix, weights: np.ndarray) -> np.ndarray:
     """(n, m) bound on the error of C w for each column w of ``weights`` (n, m)."""
-    plain = matrix.bar @ np.abs(weights)
-    if matrix.row_bar is None:
-        return plain
-    through_sums = matrix.row_bar[:, None] + matrix.bar @ np.abs(weights - 1.0)
-    spread = np.count_nonzero(weights, axis=0) > 1
-    return np.where(spread, np.minimum(plain, through_sums), plain)
+    return np.column_stack([_column_bar(matrix, column) for column in weights.T])
+
+
+def _column_bar(matrix: Matrix, column: np.ndarray) -> np.ndarray:
+    """(n,) smallest over s of row_bar |s| + bar |w - s|; one conductor keeps its own bars."""
+    if np.count_nonzero(column) == 1:
+        return matrix.bar @ np.abs(column)
+    points = np.append(column, 0.0)
+    sizes = np.column_stack([matrix.bar, matrix.row_bar])
+    order = np.argsort(points)
+    held = np.cumsum(sizes[:, order], axis=1)
+    middle = np.argmax(held >= 0.5 * held[:, -1:], axis=1)
+    distance = np.abs(points - points[order][middle, None])
+    return np.einsum("ij,ij->i", sizes, distance)
 
 
 def _inverse_bound(matrix: Matrix, floating: np.ndarray) -> np.ndarray | None:
@@ -151,7 +159,7 @@ def reduced(result: CapacitanceResult, wiring: Wiring) -> CapacitanceResult:
     if wiring.plain:
         return replace(result, states=(), nodes=()) if result.states or result.nodes else result
     nodes = Nodes.of(wiring)
-    full = Matrix(result.capacitance, result.error, result.row_sum, result.row_sum_error)
+    full = Matrix(result.capacitance, result.error, result.row_sum_error)
     weights = nodes.weights(full.value)
     found = bars(full, nodes, weights)
     _check_floating(full, wiring, found)
@@ -161,7 +169,7 @@ def reduced(result: CapacitanceResult, wiring: Wiring) -> CapacitanceResult:
         conductors=tuple(terminals),
         capacitance=_symmetric(weights.T @ full.value @ weights),
         error=found.first + found.second,
-        row_sum=_row_sum(full, weights),
+        row_sum=_row_sum(result, weights),
         row_sum_error=found.row,
         pairs=_pairs(result, wiring),
         budget=_budget(result, weights, found),
@@ -171,7 +179,9 @@ def reduced(result: CapacitanceResult, wiring: Wiring) -> CapacitanceResult:
         panel_conductor=_owners(result, wiring),
         density=None if result.density is None else result.density @ weights,
     )
-    return replace(small, rounds=tuple(_round(entry, nodes, small) for entry in result.rounds))
+    *earlier, last = result.rounds
+    rounds = [_round(entry, entry.error.sum(axis=1), nodes, small) for entry in earlier]
+    return replace(small, rounds=(*rounds, _round(last, full.row_bar, nodes, small)))
 
 
 def presented(result: CapacitanceResult) -> CapacitanceResult:
@@ -187,9 +197,9 @@ def _symmetric(value: np.ndarray) -> np.ndarray:
     return 0.5 * (value + value.T)
 
 
-def _row_sum(full: Matrix, weights: np.ndarray) -> np.ndarray:
+def _row_sum(result: CapacitanceResult, weights: np.ndarray) -> np.ndarray:
     """C' 1 by way of the row sums, which lose no digits where they are small."""
-    return weights.T @ (full.row_sum + full.value @ (weights.sum(axis=1) - 1.0))
+    return weights.T @ (result.row_sum + result.capacitance @ (weights.sum(axis=1) - 1.0))
 
 
 def _check_floating(full: Matrix, wiring: Wiring, found: Bars) -> None:
@@ -258,15 +268,11 @@ def _owners(result: CapacitanceResult, wiring: Wiring) -> np.ndarray | None:
     return owner[result.panel_conductor]
 
 
-def _round(entry: Round, nodes: Nodes, small: CapacitanceResult) -> Round:
+def _round(entry: Round, row_bar: np.ndarray, nodes: Nodes, small: CapacitanceResult) -> Round:
     """Reduce a round by its own matrix; its bars are infinite where floating ones are unknown."""
     weights = nodes.weights(entry.capacitance)
-    found = bars(Matrix(entry.capacitance, entry.error), nodes, weights)
+    found = bars(Matrix(entry.capacitance, entry.error, row_bar), nodes, weights)
     value = weights.T @ entry.capacitance @ weights
     there = replace(small, capacitance=value, error=found.first + found.second)
-    return replace(
-        entry,
-        capacitance=value,
-        error=there.error,
-        worst=float(there.used.max()),
-    )
+    worst = float(there.used.max())
+    return replace(entry, capacitance=value, error=there.error, worst=worst)
