@@ -7,6 +7,7 @@
     +-- ToleranceNotReached   4   only raised on request: the result is normally returned, marked
     +-- MemoryRefused         5   the plan needs more memory than is allowed
     +-- SolutionError         3   the result is unusable, or too uncertain for what is asked of it
+    +-- ChangeExceeded        6   only raised on request: a change is, or may be, above its limit
 
 Every message says what was found, what the limit is, and what to do next.
 """
@@ -55,3 +56,9 @@ class MemoryRefused(BemError):
     """The memory plan exceeds the limit; nothing was allocated."""
 
     exit_code = 5
+
+
+class ChangeExceeded(BemError):
+    """The change between two scenes is, or may be, larger than the limit that was set."""
+
+    exit_code = 6

@@ -41,6 +41,7 @@ class Estimate:
         parts: what the bar is made of.
         kappa: slope used.
         facet_doubt: part of the faceting effect that the bar holds.
+        slope_doubt: how far raw slopes stray from kappa.
     """
 
     value: np.ndarray
@@ -48,6 +49,7 @@ class Estimate:
     parts: dict[str, np.ndarray]
     kappa: float
     facet_doubt: float
+    slope_doubt: float = 0.0
 
 
 def facet_doubt(faceting: np.ndarray, value: np.ndarray) -> float:
@@ -132,4 +134,4 @@ def estimate(rounds: list[Sums]) -> Estimate:
         "input rounding": last.rounding,
         "faceting": wide * facets * np.abs(last.faceting),
     }
-    return Estimate(value, sum(parts.values()), parts, kappa, facets)
+    return Estimate(value, sum(parts.values()), parts, kappa, facets, doubt)

@@ -63,11 +63,11 @@ def extract(
         SolutionError: the audit found the result unusable.
     """
     started = time.perf_counter()
-    goal = _goal(scene, tolerance, pairs or {})
-    _check_counts(max_panels, memory)
+    goal = goal_of(scene, tolerance, pairs or {})
+    check_counts(max_panels, memory)
     report = progress or (lambda _: None)
     report(Progress("checking the geometry", 0, 0, float("nan"), 0.0))
-    if _must_compile():
+    if must_compile():
         report(Progress("compiling kernels, first run only", 0, 0, float("nan"), 0.0))
     inspection = check_scene(scene)
     checked = time.perf_counter()
@@ -79,12 +79,7 @@ def extract(
     with use_threads(threads) as used:
         run.go(mesh)
         solved = time.perf_counter()
-        findings = audit(run.rounds[-1].solution, run.rounds[-1].found)
-    if findings.wild:
-        raise SolutionError(
-            f"the result failed its audit: {findings.wild[0]}; "
-            "check the geometry with 'bem inspect' and report the case if it is sound"
-        )
+        findings = audited(run)
     ended = time.perf_counter()
     seconds = {
         "geometry": checked - started,
@@ -100,10 +95,26 @@ def extract(
         **planes_record(scene.planes),
         "operator": "dense",
     }
-    return _result(scene, scaled, run, findings, (seconds, settings, _warnings(scene, inspection)))
+    return result_of(scene, scaled, run, findings, (seconds, settings, warnings_of(scene, inspection)))
 
 
-def _warnings(scene: Scene, inspection: Inspection) -> tuple[str, ...]:
+def audited(run: Run) -> Audit:
+    """Check the last round.
+
+    Raises:
+        SolutionError: it is unusable.
+    """
+    findings = audit(run.rounds[-1].solution, run.rounds[-1].found)
+    if findings.wild:
+        raise SolutionError(
+            f"the result failed its audit: {findings.wild[0]}; "
+            "check the geometry with 'bem inspect' and report the case if it is sound"
+        )
+    return findings
+
+
+def warnings_of(scene: Scene, inspection: Inspection) -> tuple[str, ...]:
+    """Lines for the user about a scene."""
     lines = list(inspection.warnings)
     if scene.relative_permittivity < 1.0:
         lines.append(
@@ -113,7 +124,12 @@ def _warnings(scene: Scene, inspection: Inspection) -> tuple[str, ...]:
     return tuple(lines)
 
 
-def _goal(scene: Scene, tolerance: float, pairs: dict[tuple[str, str], float]) -> Goal:
+def goal_of(scene: Scene, tolerance: float, pairs: dict[tuple[str, str], float]) -> Goal:
+    """What is asked of the bars, in numbers of conductors.
+
+    Raises:
+        UsageError: a setting is out of range or names no conductor.
+    """
     if not scene.conductors:
         raise UsageError("the scene has no conductors: add at least one")
     check_terminals(scene.conductors)
@@ -137,14 +153,19 @@ def _goal(scene: Scene, tolerance: float, pairs: dict[tuple[str, str], float]) -
     return Goal(float(tolerance), tuple(wanted))
 
 
-def _check_counts(max_panels: int, memory: int | None) -> None:
+def check_counts(max_panels: int, memory: int | None) -> None:
+    """Refuse limits that are none.
+
+    Raises:
+        UsageError: one is out of range.
+    """
     if not (isinstance(max_panels, Integral) and max_panels >= 1):
         raise UsageError(f"max_panels: found {max_panels!r}, needs a whole number of at least 1")
     if memory is not None and not (isinstance(memory, Real) and 1 <= memory < math.inf):
         raise UsageError(f"memory: found {memory!r} bytes, needs a number of at least 1")
 
 
-def _must_compile() -> bool:
+def must_compile() -> bool:
     """Whether the largest kernel is in no cache yet."""
     from bem.compiled import FOLDER
     from bem.kernels.pairs import fill_block
@@ -169,9 +190,18 @@ def _symmetric(value: np.ndarray) -> np.ndarray:
     return 0.5 * (value + value.T)
 
 
-def _result(
+def result_of(
     scene: Scene, scaled: ScaledScene, run: Run, findings: Audit, context: tuple[Any, Any, Any]
 ) -> CapacitanceResult:
+    """What the last round found, in farad, with how it was reached.
+
+    Args:
+        scene: conductors and surroundings.
+        scaled: their frame.
+        run: all rounds.
+        findings: of the audit.
+        context: seconds by phase, settings, and lines for the user.
+    """
     seconds, settings, notes = context
     last, farad, count = run.rounds[-1], scaled.farad, run.count
     value = farad * last.found.value

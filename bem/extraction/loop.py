@@ -111,7 +111,7 @@ class Run:
         panels = len(mesh.conductor)
         self.tell("solving", panels)
         solution = solve_round(mesh, self.count, self._far(), self._reuse(origin))
-        self._keep(solution)
+        self._keep(self._judged(solution))
         return self._refine(mesh, solution)
 
     def _far(self) -> float:
@@ -128,16 +128,19 @@ class Run:
             return Reuse(earlier, origin)
         return None
 
-    def _keep(self, solution: Solution) -> None:
-        """Estimate the round, and let go of the matrices of the one before."""
+    def _judged(self, solution: Solution) -> RoundState:
+        """The round with its value, its bars, and how far these are from the goal."""
         here = sums(solution)
         found = estimate([r.sums for r in self.rounds] + [here])
         worst = float(self.goal.worst(found).max())
         fine = here.panels >= FINE_START and worst <= EARLY
         if len(self.rounds) + 1 < ROUNDS and not fine:
             worst = max(worst, 1.0 + 1e-9)
-        self.rounds = [_light(r) for r in self.rounds]
-        self.rounds.append(RoundState(solution, here, found, worst, self.elapsed))
+        return RoundState(solution, here, found, worst, self.elapsed)
+
+    def _keep(self, state: RoundState) -> None:
+        """Add a round, and let go of the matrices of the one before."""
+        self.rounds = [*(_light(r) for r in self.rounds), state]
 
     def _held_up_by_input(self, last: RoundState) -> bool:
         """Whether bars are too large only for the rounded numbers of the input."""
@@ -149,10 +152,18 @@ class Run:
             (rounding > 0.9 * allowed).any() and (rest <= np.maximum(allowed, rounding)).all()
         )
 
+    def _worst(self) -> float:
+        """Largest bar over its allowance after the last round."""
+        return self.rounds[-1].worst
+
+    def _promise(self, solution: Solution) -> np.ndarray:
+        """(2, n) what halving each panel in either direction promises."""
+        return indicator(solution, self.goal, self.rounds[-1].found)
+
     def _refine(self, mesh: Mesh, solution: Solution) -> tuple[np.ndarray, Mesh]:
-        last = self.rounds[-1]
+        last, worst = self.rounds[-1], self._worst()
         panels = len(mesh.conductor)
-        if last.worst <= 1.0:
+        if worst <= 1.0:
             self.stopped_by = "tolerance"
         elif self._held_up_by_input(last):
             self.stopped_by = "input-rounding"
@@ -162,9 +173,9 @@ class Run:
             self.stopped_by = "max-panels"
         if self.stopped_by:
             return np.empty(0), mesh
-        bulk = BULK_FAR if last.worst > FAR_FROM_GOAL else BULK_NEAR
+        bulk = BULK_FAR if worst > FAR_FROM_GOAL else BULK_NEAR
         room = self.limits.max_panels - panels
-        finer, origin = mesh.refine(*mark(indicator(solution, self.goal, last.found), bulk, room))
+        finer, origin = mesh.refine(*mark(self._promise(solution), bulk, room))
         if not self.limits.memory.fits(len(finer.conductor), panels):
             self.stopped_by = "memory"
         elif len(finer.conductor) > self.limits.max_panels:

@@ -37,18 +37,20 @@ def readable(size: float) -> str:
 
 @dataclass(frozen=True)
 class MemoryPlan:
-    """Limit in bytes for the matrices of the extraction."""
+    """Limit in bytes for the matrices of an extraction, or of several that go side by side."""
 
     limit: int
+    scenes: int = 1
 
     @classmethod
-    def of(cls, asked: int | None) -> MemoryPlan:
+    def of(cls, asked: int | None, scenes: int = 1) -> MemoryPlan:
         """The asked limit, or 80 % of what is free now."""
-        return cls(int(asked) if asked is not None else int(SHARE_OF_FREE * available_bytes()))
+        free = int(asked) if asked is not None else int(SHARE_OF_FREE * available_bytes())
+        return cls(free, scenes)
 
     def need(self, panels: int, kept: int = 0) -> int:
         """Bytes of a round of ``panels``, while the round before with ``kept`` is held."""
-        return BYTES_PER_PAIR * panels**2 + (BYTES_PER_PAIR - 8) * kept**2
+        return self.scenes * (BYTES_PER_PAIR * panels**2 + (BYTES_PER_PAIR - 8) * kept**2)
 
     def fits(self, panels: int, kept: int = 0) -> bool:
         """Whether the next round stays within the limit."""

@@ -32,11 +32,9 @@ class ScaledScene:
     planes: Planes
 
     @classmethod
-    def of(cls, scene: Scene) -> ScaledScene:
-        """Scale a scene."""
-        bounds = np.array([c.surface.bounds for c in scene.conductors])
-        low, high = bounds[:, 0].min(axis=0), bounds[:, 1].max(axis=0)
-        length, center = float((high - low).max()), 0.5 * (low + high)
+    def of(cls, scene: Scene, like: ScaledScene | None = None) -> ScaledScene:
+        """Scale a scene, to its own size and center or to those of another."""
+        length, center = _frame(scene) if like is None else (like.length, like.center)
         matrix = np.eye(3) / length
         planes = scene.planes.moved(1.0 / length, center)
         surfaces = [
@@ -45,3 +43,10 @@ class ScaledScene:
         ]
         farad = 4.0 * np.pi * EPS0 * scene.relative_permittivity * length
         return cls(surfaces, length, center, farad * planes.multiplicity, planes)
+
+
+def _frame(scene: Scene) -> tuple[float, np.ndarray]:
+    """Largest side and center (3,) of the bounding box of all conductors."""
+    bounds = np.array([c.surface.bounds for c in scene.conductors])
+    low, high = bounds[:, 0].min(axis=0), bounds[:, 1].max(axis=0)
+    return float((high - low).max()), 0.5 * (low + high)

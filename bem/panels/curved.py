@@ -497,6 +497,19 @@ class CurvedFamily:
         leaf = np.concatenate([now[self.leaf[kept]], fresh[owner]])
         return CurvedFamily(*panels, self.grid, leaves.box, pattern, leaf), kept
 
+    def on(self, surface: Revolution) -> CurvedFamily:
+        """The same panels in the same order, by their parameters, on another surface.
+
+        Args:
+            surface: its profile has as many pieces, and the same poles and rims.
+        """
+        nodes, leaf = _nodes(self.grid, self.box, self.pattern)
+        order = np.empty(len(leaf), dtype=np.int64)
+        order[np.argsort(self.leaf, kind="stable")] = np.argsort(leaf, kind="stable")
+        grid = Grid(surface, self.grid.around, self.grid.cells)
+        panels = _measured(grid, nodes[order])
+        return CurvedFamily(*panels, grid, self.box, self.pattern, self.leaf)
+
 
 def _start_counts(surface: Revolution, around: int | None) -> tuple[int, tuple[int, ...]]:
     """Leaves around, and along each piece, that make the leaves about as long as wide."""

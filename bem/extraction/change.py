@@ -1,0 +1,145 @@
+"""The change between two scenes solved on the same panels, and its error bar.
+
+    dX  = dL + kappa dS + dF
+    bar = (SHARE + DOUBT dk) D + TREND drift + q + facet_doubt |dF| + r + floor
+
+d is the difference between the scenes after one and the same round, D the sum over all panels
+and tests of the absolute change of each product of residuals, and kappa the slope of the first
+scene. What is wrong alike in both scenes drops out of every term.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from bem.extraction.estimate import ROUNDS, Estimate
+from bem.extraction.solution import Solution, Sums, rounding_effect, with_all
+
+SHARE, TREND, DOUBT = 0.4, 0.5, 0.4
+"""Factors of the parts of the bar, in the order of the formula above."""
+FAR_CHANGE = 10.0
+"""How much faster expansions may change than the energies that they serve."""
+FLOOR, RELATIVE_FLOOR = 1e-9, 1e-4
+"""Of sqrt(L_ii L_jj), and of the largest change in these units."""
+
+
+@dataclass(frozen=True)
+class ChangeSums:
+    """What one round says of the change of every entry, (k, k + 1); the last is the row sum.
+
+    Args:
+        value: change of L from the density.
+        signed: change of the summed indicator.
+        absolute: summed absolute change of each product of residuals.
+        quadrature: change of the quadrature effect.
+        faceting: change of the faceting effect.
+        rounding: largest effect of rounded input on either side, where it is not the same.
+    """
+
+    value: np.ndarray
+    signed: np.ndarray
+    absolute: np.ndarray
+    quadrature: np.ndarray
+    faceting: np.ndarray
+    rounding: np.ndarray
+
+
+@dataclass(frozen=True)
+class Change:
+    """Change and bar of every entry, (k, k + 1) each; the last column is the row sum.
+
+    Args:
+        value: extrapolated change of L.
+        bar: its error bar.
+        parts: what the bar is made of.
+    """
+
+    value: np.ndarray
+    bar: np.ndarray
+    parts: dict[str, np.ndarray]
+
+
+def change_sums(
+    before: tuple[Solution, Sums], after: tuple[Solution, Sums], redrawn: np.ndarray
+) -> ChangeSums:
+    """Collect the sums of one round of both scenes, solved on the same panels.
+
+    Args:
+        before: of the first scene.
+        after: of the second.
+        redrawn: (k,) bool, conductors whose numbers are not the same in both.
+    """
+    (first, sums_first), (second, sums_second) = before, after
+    far = np.abs(_far_effect(second) - _far_effect(first))
+    rows = with_all(np.abs(_row_effect(second) - _row_effect(first)))
+    return ChangeSums(
+        value=sums_second.value - sums_first.value,
+        signed=sums_second.signed - sums_first.signed,
+        absolute=_product_changes(first.residual, second.residual),
+        quadrature=rows + FAR_CHANGE * far,
+        faceting=sums_second.faceting - sums_first.faceting,
+        rounding=_rounding(first, redrawn) + _rounding(second, redrawn),
+    )
+
+
+def _rounding(solution: Solution, redrawn: np.ndarray) -> np.ndarray:
+    """Effect of the rounded input of those conductors that are not the same in both scenes."""
+    bodies = tuple(
+        body if fresh else replace(body, rounding=0.0)
+        for body, fresh in zip(solution.mesh.bodies, redrawn, strict=True)
+    )
+    return rounding_effect(replace(solution, mesh=replace(solution.mesh, bodies=bodies)))
+
+
+def _row_effect(solution: Solution) -> np.ndarray:
+    return solution.operator.asymmetry(solution.density)
+
+
+def _far_effect(solution: Solution) -> np.ndarray:
+    operator, density = solution.operator, solution.density
+    return 2.0 * operator.far_error * operator.magnitude(density, with_all(density))
+
+
+def _product_changes(before: np.ndarray, after: np.ndarray) -> np.ndarray:
+    """(k, k + 1) sum of |b_i b_j - a_i a_j| over panels and tests of residuals (4, n, k)."""
+    a, b = (w.reshape(-1, w.shape[-1]) for w in (before, after))
+    all_a, all_b = with_all(a), with_all(b)
+    return np.array(
+        [
+            np.abs(b[:, i, None] * all_b - a[:, i, None] * all_a).sum(axis=0)
+            for i in range(a.shape[1])
+        ]
+    )
+
+
+def _values(rounds: list[ChangeSums], kappa: float) -> list[np.ndarray]:
+    return [r.value + kappa * r.signed + r.faceting for r in rounds]
+
+
+def estimate_change(rounds: list[ChangeSums], before: Estimate) -> Change:
+    """Change and bar after the last of ``rounds``.
+
+    Args:
+        rounds: so far.
+        before: estimate of the first scene after the same rounds.
+    """
+    last = rounds[-1]
+    *earlier, value = _values(rounds[-3:], before.kappa)
+    drift = np.max([np.abs(value - x) for x in earlier], axis=0, initial=0.0)
+    trend = TREND * drift
+    if len(rounds) < ROUNDS:
+        trend = np.maximum(trend, last.absolute)
+    size = np.diagonal(before.value)
+    root = np.sqrt(size)
+    scale = root[:, None] * np.append(root, np.sqrt(max(before.value[:, -1].sum(), 0.0)))
+    largest = np.abs(value[:, :-1] / (root[:, None] * root)).max()
+    parts = {
+        "discretisation": (SHARE + DOUBT * before.slope_doubt) * last.absolute,
+        "trend": trend,
+        "quadrature": last.quadrature + (FLOOR + RELATIVE_FLOOR * largest) * scale,
+        "input rounding": last.rounding,
+        "faceting": before.facet_doubt * np.abs(last.faceting),
+    }
+    return Change(value, sum(parts.values()), parts)
