@@ -21,7 +21,9 @@ _HOME = {
     "sphere": "bem.geometry.shapes",
     "cylinder": "bem.geometry.shapes",
     "extract": "bem.extraction.extract",
+    "compare": "bem.extraction.compare",
     "CapacitanceResult": "bem.results.result",
+    "Comparison": "bem.results.comparison",
     "load_result": "bem.results.result",
     "BemError": "bem.errors",
     "UsageError": "bem.errors",
@@ -30,6 +32,7 @@ _HOME = {
     "SolutionError": "bem.errors",
     "ToleranceNotReached": "bem.errors",
     "MemoryRefused": "bem.errors",
+    "ChangeExceeded": "bem.errors",
     "EPS0": "bem.units",
 }
 

@@ -8,12 +8,13 @@ from collections.abc import Sequence
 from types import ModuleType
 
 from bem import __version__
-from bem.cli import extract, inspect, reduce, show
+from bem.cli import compare, extract, inspect, reduce, show
 from bem.cli.parser import Parser, nearest
 from bem.cli.terminal import silence_stdout, tell
 from bem.errors import EXIT_INTERRUPTED, BemError, MemoryRefused, UsageError
 
 COMMANDS: dict[str, ModuleType] = {
+    "compare": compare,
     "extract": extract,
     "inspect": inspect,
     "reduce": reduce,
@@ -34,11 +35,13 @@ examples:
   bem extract rod.stl wall.msh --unit mm    the same from mesh files
   bem reduce probe.json --ground wall       ground, float or tie after the solve
   bem show probe.json --csv probe.csv       print a saved result
+  bem compare probe.toml changed.toml       compute what a change of the scene does
 
 exit codes:
   0 done; 1 a fault in bem; 2 usage; 3 bad input, or writing the result failed;
   4 tolerance not reached, the result is still written, and marked;
-  5 refused for lack of memory; 130 interrupted; 141 nobody read the output
+  5 refused for lack of memory; 6 a change above its limit; 130 interrupted;
+  141 nobody read the output
 
 bem COMMAND --help describes each command.
 """

@@ -49,7 +49,7 @@ def deliver(result: CapacitanceResult, args: argparse.Namespace) -> bool:
 
     small = presented(result)
     text = partial(_text, small, args.budget)
-    trouble = _tried([*_writers((result, small), args), lambda: put(text() + _note(result))])
+    trouble = tried([*_writers((result, small), args), lambda: put(text() + _note(result))])
     for line in trouble:
         tell(f"bem: {line}")
     return not trouble
@@ -75,7 +75,7 @@ def _writers(
     return [partial(write, path) for path, write in paths if path is not None]
 
 
-def _tried(steps: list[Callable[[], None]]) -> list[str]:
+def tried(steps: list[Callable[[], None]]) -> list[str]:
     """Take every step, whatever became of the others; returns the complaints."""
     trouble = []
     for step in steps:

@@ -2,18 +2,18 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Callable
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from bem.errors import UsageError
 from bem.extraction.scaled import ScaledScene
-from bem.geometry.surface import Surface
 from bem.geometry.wording import listed
 from bem.panels.mesh import Body, Mesh
 from bem.panels.motion import ByFaces, Motion, loosened, motion_of, same_vertices
 from bem.panels.transport import transported
-from bem.scene.scene import Conductor, Scene
+from bem.scene.scene import Scene
 
 
 def check_names(before: list[str], after: list[str]) -> None:
@@ -38,29 +38,27 @@ def check_names(before: list[str], after: list[str]) -> None:
 
 @dataclass(frozen=True)
 class Counterparts:
-    """Both scenes in one frame.
+    """Both scenes in the frame of the first.
 
     Args:
         first: the first scene, scaled.
-        second: surfaces of the second one, in the order and the frame of the first.
+        second: the second one, its conductors in the same order.
         hollow: conductors that are shells, of the first and of the second scene.
         motions: per conductor, how it goes over; None where that is not possible.
     """
 
     first: ScaledScene
-    second: list[Surface]
+    second: ScaledScene
     hollow: tuple[list[int], list[int]]
     motions: list[Motion | None]
 
     @classmethod
     def of(cls, before: Scene, after: Scene) -> Counterparts:
-        """Match two scenes with the same names of conductors."""
+        """Match two scenes with the same conductors in the same order."""
         first = ScaledScene.of(before)
-        theirs = [in_order(after)[c.name] for c in before.conductors]
-        matrix, shift = np.eye(3) / first.length, -first.center / first.length
-        second = [c.surface.placed(matrix, shift) for c in theirs]
-        hollow = _shells(before.conductors), _shells(theirs)
-        return cls(first, second, hollow, list(map(motion_of, first.surfaces, second)))
+        second = ScaledScene.of(after, first)
+        motions = list(map(motion_of, first.surfaces, second.surfaces))
+        return cls(first, second, (_shells(before), _shells(after)), motions)
 
     @property
     def motionless(self) -> list[int]:
@@ -70,27 +68,37 @@ class Counterparts:
     @property
     def redrawn(self) -> np.ndarray:
         """(k,) bool, conductors whose numbers are not the same in both scenes."""
-        return np.array([not same_vertices(a, b) for a, b in zip(self.first.surfaces, self.second, strict=True)])
+        pairs = zip(self.first.surfaces, self.second.surfaces, strict=True)
+        return np.array([not same_vertices(a, b) for a, b in pairs])
 
-    def start(self, accept) -> Mesh:
-        """Starting mesh of the first scene, whose panels can be carried over."""
+    def start(self, accept: Callable[[int], None]) -> Mesh:
+        """Starting mesh of the first scene, of panels that can be carried over.
+
+        Args:
+            accept: told the number of panels; it may raise.
+        """
         surfaces = [
             loosened(surface) if isinstance(motion, ByFaces) and motion.loose else surface
             for surface, motion in zip(self.first.surfaces, self.motions, strict=True)
         ]
         mesh = Mesh.start(surfaces, self.hollow[0], accept)
-        return mesh
+        return replace(mesh, bodies=_bodies(self.first, self.hollow[0]))
 
     def carry(self, mesh: Mesh) -> Mesh:
         """The panels of the first scene carried over to the second."""
-        bodies = tuple(Body.of(s, k in self.hollow[1]) for k, s in enumerate(self.second))
-        return transported(mesh, [m for m in self.motions if m is not None], bodies)
+        motions = [motion for motion in self.motions if motion is not None]
+        return transported(mesh, motions, _bodies(self.second, self.hollow[1]))
 
 
-def in_order(scene: Scene) -> dict[str, Conductor]:
-    """Conductors by name."""
-    return {conductor.name: conductor for conductor in scene.conductors}
+def _bodies(scaled: ScaledScene, hollow: list[int]) -> tuple[Body, ...]:
+    return tuple(Body.of(surface, k in hollow) for k, surface in enumerate(scaled.surfaces))
 
 
-def _shells(conductors: list[Conductor]) -> list[int]:
-    return [k for k, c in enumerate(conductors) if c.body == "shell"]
+def _shells(scene: Scene) -> list[int]:
+    return [k for k, conductor in enumerate(scene.conductors) if conductor.body == "shell"]
+
+
+def in_order(scene: Scene, names: list[str]) -> Scene:
+    """The same scene with its conductors in the order of ``names``."""
+    by_name = {conductor.name: conductor for conductor in scene.conductors}
+    return replace(scene, conductors=[by_name[name] for name in names])

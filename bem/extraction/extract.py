@@ -95,7 +95,9 @@ def extract(
         **planes_record(scene.planes),
         "operator": "dense",
     }
-    return result_of(scene, scaled, run, findings, (seconds, settings, warnings_of(scene, inspection)))
+    return result_of(
+        scene, scaled, run, findings, (seconds, settings, warnings_of(scene, inspection))
+    )
 
 
 def audited(run: Run) -> Audit:

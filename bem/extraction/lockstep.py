@@ -57,9 +57,7 @@ class Lockstep(Run):
         self.tell("solving the second scene", len(mesh.conductor))
         moved = self.carrier.carry(mesh)
         second = solve_round(moved, self.count, far, self._shared(first, moved, origin))
-        self._keep(first)
-        self.other._keep(second)
-        self._compare(self.rounds[-1], self.other.rounds[-1])
+        self._store(self._judged(first), self.other._judged(second))
         return self._refine(mesh, first)
 
     def _far(self) -> float:
@@ -79,10 +77,21 @@ class Lockstep(Run):
             raise TypeError("scenes are compared with dense operators only")
         return Reuse(giver, same, radius)
 
-    def _compare(self, before: RoundState, after: RoundState) -> None:
+    def _store(self, before: RoundState, after: RoundState) -> None:
+        """Keep a round of both scenes and of their difference; all of it is known before."""
         both = (before.solution, before.sums), (after.solution, after.sums)
-        self.sums.append(change_sums(*both, self.carrier.redrawn))
-        self.changes.append(estimate_change(self.sums, before.found))
+        sums = [*self.sums, change_sums(*both, self.carrier.redrawn)]
+        change = estimate_change(sums, before.found)
+        self._keep(before)
+        self.other._keep(after)
+        self.sums = sums
+        self.changes.append(change)
+
+    def alone(self, run: Run) -> Run:
+        """The rounds of one scene by itself, stopped by the tolerance if that was reached."""
+        reached = run.rounds[-1].worst <= 1.0
+        stopped_by = "tolerance" if reached else self.stopped_by
+        return Run(run.count, run.goal, run.limits, run.report, run.rounds, stopped_by, run.started)
 
     def _size(self) -> np.ndarray:
         """(k, k) sqrt(L_ii L_jj) of the first scene."""

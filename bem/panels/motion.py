@@ -18,9 +18,10 @@ from dataclasses import dataclass, replace
 import numpy as np
 from scipy.spatial import cKDTree
 
+from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.revolved import Arc, Piece, Revolution
 from bem.geometry.surface import NO_CORNER, Surface
-from bem.panels.planar import FlatFaces, Patch
+from bem.panels.planar import Patch, patches_of, planar_patches
 
 FIT = 1e-9
 """Vertices may miss a map by this part of the body's size, and by the rounding of both files."""
@@ -161,7 +162,7 @@ def _by_triangles(before: Surface, after: Surface, slack: float) -> ByFaces | No
 def _by_faces(before: Surface, after: Surface, slack: float) -> ByFaces | None:
     """A map for each flat face, if there is one for all of them."""
     flat = FlatFaces.of(before)
-    patches = flat.patches(0)
+    patches = patches_of(flat, 0)
     maps = []
     for label in range(flat.count):
         used = np.unique(flat.corners[flat.label == label])
@@ -174,7 +175,7 @@ def _by_faces(before: Surface, after: Surface, slack: float) -> ByFaces | None:
 
 def _outline(surface: Surface) -> tuple[np.ndarray, np.ndarray]:
     """Corners (c, 3) of all flat faces, and the segments (e, 2) between them that bound these."""
-    patches = FlatFaces.of(surface).patches(0)
+    patches = planar_patches(surface, 0)
     ends = np.concatenate([patch.lift(patch.edges).reshape(-1, 3) for patch in patches])
     near = cKDTree(ends).query_ball_point(ends, 1e-6 * surface.extent)
     first = np.array([min(group) for group in near])

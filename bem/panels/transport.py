@@ -11,10 +11,11 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from bem.geometry.flat_faces import FLATNESS
 from bem.panels.flat import FlatFamily
 from bem.panels.mesh import Body, Mesh
 from bem.panels.motion import Affine, ByFaces, Motion, Recurved
-from bem.panels.planar import FLATNESS, Patch
+from bem.panels.planar import Patch
 
 if TYPE_CHECKING:
     from bem.panels.curved import CurvedFamily
