@@ -163,12 +163,12 @@ def test_marking_takes_the_fewest_panels_that_hold_the_bulk(
 def test_weak_couplings_get_wider_bars(strength: float, factor: float) -> None:
     """What leaks through a shield does not follow the common slope; diagonals are as they were."""
     value = np.array([[4.0, -6.0 * strength, 4.0], [-6.0 * strength, 9.0, 9.0]])
-    wide = module._widening(value)
+    wide = module.widening(value)
     assert wide[0, 1] == wide[1, 0] == pytest.approx(factor)
     assert np.all(np.diagonal(wide) == 1.0)
 
 
 def test_row_sum_of_a_lone_body_has_the_bar_of_its_diagonal() -> None:
     """And one that a shield brings down to nothing has a wider one."""
-    assert module._widening(np.array([[4.0, 4.0]]))[0, 1] == 1.0
-    assert module._widening(np.array([[4.0, -4.0, 0.0], [-4.0, 9.0, 5.0]]))[0, 2] == module.WIDEST
+    assert module.widening(np.array([[4.0, 4.0]]))[0, 1] == 1.0
+    assert module.widening(np.array([[4.0, -4.0, 0.0], [-4.0, 9.0, 5.0]]))[0, 2] == module.WIDEST

@@ -35,7 +35,7 @@ examples:
   bem extract rod.stl wall.msh --unit mm    the same from mesh files
   bem reduce probe.json --ground wall       ground, float or tie after the solve
   bem show probe.json --csv probe.csv       print a saved result
-  bem compare probe.toml changed.toml       compute what a change of the scene does
+  bem compare probe.toml longer.toml        compute what a change does
 
 exit codes:
   0 done; 1 a fault in bem; 2 usage; 3 bad input, or writing the result failed;

@@ -161,7 +161,7 @@ def _independent(
         correlated=False,
         converged=not reasons,
         stopped_by=reasons[0] if reasons else "tolerance",
-        notes=tuple(notes),
+        notes=(*notes, *_wiring((first, second))),
         version=__version__,
     )
 
@@ -286,9 +286,17 @@ def _compared(
         correlated=True,
         converged=run.stopped_by == "tolerance" and all(r.converged for r in results),
         stopped_by=run.stopped_by,
+        notes=_wiring(results),
         seconds=seconds,
         version=__version__,
     )
+
+
+def _wiring(results: tuple[CapacitanceResult, CapacitanceResult]) -> tuple[str, ...]:
+    """Say that the full matrices are compared, where there are smaller ones."""
+    if not any(result.states for result in results):
+        return ()
+    return ("conductors that are grounded, floating or tied are compared as all others",)
 
 
 def _turned(found: Comparison) -> Comparison:

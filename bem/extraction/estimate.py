@@ -101,7 +101,7 @@ def _extrapolated(rounds: list[Sums]) -> np.ndarray:
     return last.value + _kappa(rounds)[0] * last.signed + last.faceting
 
 
-def _widening(value: np.ndarray) -> np.ndarray:
+def widening(value: np.ndarray) -> np.ndarray:
     """(k, k + 1) factor on the bars of entries that are small differences of large ones.
 
     Couplings through gaps in a shield, and row sums of shielded bodies, depend on densities
@@ -126,7 +126,7 @@ def estimate(rounds: list[Sums]) -> Estimate:
     root = np.sqrt(np.diagonal(last.value))
     floor = FLOOR * root[:, None] * np.append(root, np.sqrt(max(last.value[:, -1].sum(), 0.0)))
     facets = facet_doubt(last.faceting, last.value)
-    wide = _widening(value)
+    wide = widening(value)
     parts = {
         "discretisation": wide * (SHARE + DOUBT * doubt) * last.absolute,
         "trend": wide * trend,

@@ -15,8 +15,9 @@ from bem.operators.dense import DenseOperator, Reuse
 from bem.panels.mesh import Mesh
 from bem.panels.transport import unmoved
 
-SMALLEST = 1e-3
-"""A change is known well enough once its bar is below this part of the tolerance."""
+SMALLEST = 1e-7
+"""A change is known well enough once its bar is below this part of sqrt(L_ii L_jj): rounding
+alone makes a tenth of that."""
 
 
 @dataclass(frozen=True)
@@ -101,9 +102,7 @@ class Lockstep(Run):
     def _allowed(self) -> float:
         """Largest bar allowed for a change, in units of the size of its entry."""
         change = self.changes[-1].value[:, : self.count] / self._size()
-        return max(
-            self.carrier.accuracy * float(np.abs(change).max()), SMALLEST * self.goal.tolerance
-        )
+        return max(self.carrier.accuracy * float(np.abs(change).max()), SMALLEST)
 
     def _used(self) -> np.ndarray:
         """(k, k) bars of the changes over what is allowed for them."""

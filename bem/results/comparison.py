@@ -169,7 +169,7 @@ def in_order(result: CapacitanceResult, names: Sequence[str]) -> CapacitanceResu
         rounds=tuple(_round_in_order(entry, grid) for entry in result.rounds),
         budget={name: part[grid] for name, part in result.budget.items()},
         inputs=tuple(inputs[k] for k in order) if len(inputs) == len(order) else inputs,
-        panel_conductor=None if owner is None else place[owner],
+        panel_conductor=None if owner is None else np.where(owner < 0, owner, place[owner]),
         density=None if density is None else density[:, order],
         states=tuple(result.states[k] for k in order) if result.states else (),
         nodes=tuple(result.nodes[k] for k in order) if result.nodes else (),
