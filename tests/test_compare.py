@@ -307,6 +307,43 @@ def test_a_scene_that_cannot_be_solved() -> None:
         compared(plates(0.1), plates(0.0))
 
 
+def over_ground(height: float, ground: float = 0.0) -> bem.Scene:
+    """Ball of radius 1 over a grounded plane."""
+    scene = scene_of([at(shapes.sphere(1.0), height)])
+    scene.set_ground_plane(z=ground)
+    return scene
+
+
+def ball_over_plane(height: float) -> np.ndarray:
+    """Ball and image at opposite potentials: C_11 - C_12 of two spheres (images, Maxwell)."""
+    pair = two_spheres(1.0, 1.0, 2.0 * height)
+    return np.array([[pair[0, 0] - pair[0, 1]]])
+
+
+@pytest.mark.parametrize(("height", "ground"), [(1.2012, 0.0), (1.2, -0.0012)])
+def test_a_ball_rises_or_the_grounded_plane_sinks(height: float, ground: float) -> None:
+    found = compare(over_ground(1.2), over_ground(height, ground), threads=1)
+    check_change(found, ball_over_plane(1.2012) - ball_over_plane(1.2))
+    assert "ground_plane_m" in found.before.settings
+
+
+def test_a_grounded_plane_comes_in() -> None:
+    scene = scene_of([at(shapes.sphere(1.0), 4.0)])
+    check_change(
+        compare(scene, over_ground(4.0), threads=1), ball_over_plane(4.0) - np.array([[1.0]])
+    )
+
+
+def test_half_a_cube_beside_a_mirror_plane_grows() -> None:
+    before, after = scene_of([shapes.box(1, 1, 1)]), scene_of([shapes.box(1.001, 1.001, 1.001)])
+    for scene in (before, after):
+        scene.add_mirror_plane(x=0.0)
+    found = compare(before, after, threads=1)
+    check_change(found, np.array([[0.001 * CUBE]]))
+    whole = compare(scene_of([shapes.box(1, 1, 1)]), scene_of([shapes.box(1.001, 1.001, 1.001)]))
+    assert found.panels < whole.panels
+
+
 def test_states_are_noted() -> None:
     before, after = (scene_of(plates(g)) for g in (0.1, 0.1001))
     for scene in (before, after):

@@ -11,7 +11,7 @@ from bem.geometry import shapes
 from bem.geometry.surface import Surface
 from bem.panels.mesh import Body, Mesh
 from bem.panels.motion import Affine, ByFaces, Recurved, loosened, motion_of
-from bem.panels.transport import transported, unmoved
+from bem.panels.transport import Other, transported, unmoved
 
 UP = np.array([0.0, 0.0, 0.01])
 
@@ -27,7 +27,7 @@ def carried(before: list[Surface], after: list[Surface], rounds: int = 3) -> tup
     assert len(motions) == len(before)
     mesh = refined(Mesh.start(before), rounds)
     bodies = tuple(Body.of(surface, False) for surface in after)
-    return mesh, transported(mesh, motions, bodies)
+    return mesh, transported(mesh, Other(motions, bodies))
 
 
 def refined(mesh: Mesh, rounds: int) -> Mesh:
@@ -140,7 +140,7 @@ def test_a_face_that_goes_by_no_affine_map_goes_by_its_triangles() -> None:
     assert isinstance(motion, ByFaces)
     assert motion.loose
     mesh = refined(Mesh.start([loosened(before)]), 2)
-    there = transported(mesh, [motion], mesh.bodies)
+    there = transported(mesh, Other([motion], mesh.bodies))
     assert np.ptp(there.corners.reshape(-1, 3), axis=0) == pytest.approx([2.0, 2.03, 0.2])
     assert area(there) == pytest.approx(2.0 * 3.03 + 0.2 * (2 + 1 + 1 + 1.03 + 1 + 2.03))
 

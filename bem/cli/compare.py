@@ -39,8 +39,8 @@ exit codes:
   1    a fault in bem; please report it
   2    the command is not understood, or an output file cannot be written
   3    an input cannot be used, or writing the result failed
-  4    the accuracy was not reached; the comparison is still written, and marked
-       (with --limit only the limit decides between 0 and 6)
+  4    the accuracy was not reached; the comparison is still written, and
+       marked (with --limit, the limit alone decides between 0 and 6)
   5    refused: more memory would be needed than is allowed
   6    a change is, or cannot be ruled out to be, above --limit
   130  interrupted; the best comparison so far is written, if there is one

@@ -6,7 +6,8 @@
 d is the difference between the scenes after one and the same round, D the sum over all panels
 and tests of the absolute change of each product of residuals, kappa and dk the slope of the first
 scene and its doubt, w wider where the entry is weak. The coefficients were chosen on thirty pairs
-of scenes; benchmarks/bench_compare.py reports how well they hold. What is wrong alike in both scenes drops out of every term.
+of scenes; benchmarks/bench_compare.py reports how well they hold. What is wrong alike in both
+scenes drops out of every term.
 """
 
 from __future__ import annotations

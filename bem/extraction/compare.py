@@ -35,6 +35,7 @@ from bem.results import comparison
 from bem.results.comparison import Comparison
 from bem.results.result import CapacitanceResult
 from bem.scene.inspect import check_scene
+from bem.scene.plane_checks import planes_record
 from bem.scene.scene import Scene
 
 CHANGE_ACCURACY = 0.02
@@ -255,7 +256,8 @@ def _in_lockstep(
 
 
 def _with(settings: dict[str, Any], scene: Scene) -> dict[str, Any]:
-    return {**settings, "relative_permittivity": scene.relative_permittivity}
+    medium = {"relative_permittivity": scene.relative_permittivity}
+    return {**settings, **medium, **planes_record(scene.planes)}
 
 
 def _compared(

@@ -12,7 +12,7 @@ from bem.extraction.scaled import ScaledScene
 from bem.geometry.wording import listed
 from bem.panels.mesh import Body, Mesh
 from bem.panels.motion import ByFaces, Motion, loosened, motion_of, same_vertices
-from bem.panels.transport import transported
+from bem.panels.transport import Other, transported
 from bem.scene.scene import Scene
 
 
@@ -81,17 +81,20 @@ class Counterparts:
             loosened(surface) if isinstance(motion, ByFaces) and motion.loose else surface
             for surface, motion in zip(self.first.surfaces, self.motions, strict=True)
         ]
-        mesh = Mesh.start(surfaces, self.hollow[0], accept)
+        mesh = Mesh.start(surfaces, self.hollow[0], accept, self.first.planes)
         return replace(mesh, bodies=_bodies(self.first, self.hollow[0]))
 
     def carry(self, mesh: Mesh) -> Mesh:
         """The panels of the first scene carried over to the second."""
         motions = [motion for motion in self.motions if motion is not None]
-        return transported(mesh, motions, _bodies(self.second, self.hollow[1]))
+        bodies = _bodies(self.second, self.hollow[1])
+        return transported(mesh, Other(motions, bodies, self.second.planes))
 
 
 def _bodies(scaled: ScaledScene, hollow: list[int]) -> tuple[Body, ...]:
-    return tuple(Body.of(surface, k in hollow) for k, surface in enumerate(scaled.surfaces))
+    return tuple(
+        Body.of(surface, k in hollow, scaled.planes) for k, surface in enumerate(scaled.surfaces)
+    )
 
 
 def _shells(scene: Scene) -> list[int]:

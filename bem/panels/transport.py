@@ -7,11 +7,12 @@ them is wrong alike in both scenes and drops out of the difference.
 from __future__ import annotations
 
 from dataclasses import replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
 from bem.geometry.flat_faces import FLATNESS
+from bem.geometry.planes import NO_PLANES, Planes
 from bem.panels.flat import FlatFamily
 from bem.panels.mesh import Body, Mesh
 from bem.panels.motion import Affine, ByFaces, Motion, Recurved
@@ -22,23 +23,33 @@ if TYPE_CHECKING:
     from bem.panels.mesh import Family
 
 
-def transported(mesh: Mesh, motions: list[Motion], bodies: tuple[Body, ...]) -> Mesh:
-    """The panels of ``mesh`` where the motions of their conductors take them.
+class Other(NamedTuple):
+    """The scene that panels are carried to: how, what its conductors are, and its planes.
 
     Args:
-        mesh: of the one scene.
         motions: one per conductor.
-        bodies: what the conductors of the other scene are.
+        bodies: one per conductor.
+        planes: grounded and mirror planes.
     """
+
+    motions: list[Motion]
+    bodies: tuple[Body, ...]
+    planes: Planes = NO_PLANES
+
+
+def transported(mesh: Mesh, other: Other) -> Mesh:
+    """The panels of ``mesh`` where the motions of their conductors take them."""
     families = tuple(
-        _carried(family, owner, motions)
+        _carried(family, owner, other.motions)
         for family, owner in zip(mesh.families, mesh.owners, strict=True)
     )
-    return replace(mesh, families=families, bodies=bodies)
+    return replace(mesh, families=families, bodies=other.bodies, planes=other.planes)
 
 
 def unmoved(before: Mesh, after: Mesh) -> np.ndarray:
-    """(n,) bool: panels that are the same to the last bit in both meshes."""
+    """(n,) bool: panels that are the same to the last bit in both meshes, images included."""
+    if before.planes != after.planes:
+        return np.zeros(len(before.conductor), dtype=bool)
     return (before.corners == after.corners).all(axis=(1, 2))
 
 
