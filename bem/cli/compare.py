@@ -25,9 +25,10 @@ if TYPE_CHECKING:
     from bem.results.comparison import Comparison
 
 _EPILOG = """\
-A and B have the same names of conductors. Panels are made once and carried over,
-so that errors which are the same on both sides cancel; with a saved result, or
-where a body is drawn anew in another way, they do not, and the report says so.
+A and B have the same names of conductors. Panels are made once and carried
+over, so that errors which are the same on both sides cancel; with a saved
+result, or where a body is drawn in another way, they do not, and the report
+says so.
 
 examples:
   bem compare probe.toml probe_longer.toml
