@@ -8,28 +8,29 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from typing import NamedTuple
 
 import numpy as np
 
 from bem.errors import UsageError
-from bem.geometry.revolved import Piece, Position, Revolution, Segment, arc_through
+from bem.geometry import shape_values as need
+from bem.geometry.outlines import Hole
+from bem.geometry.revolved import Piece, Revolution
+from bem.geometry.steps import (
+    AROUND,
+    ArcTo,
+    Step,
+    Wording,
+    check_crossing,
+    corners_of,
+    pieces_between,
+    polygon,
+    read_steps,
+)
 from bem.geometry.surface import NO_CORNER, Surface
 
-AROUND = 48
-"""Facets around the axis in the faceting of a round shape."""
-SNAP = 1e-12
-"""Profile points this near to the axis, or to the first point at the end, count as there;
-relative to the largest coordinate."""
+PROFILE = Wording("profile", ("r", "z"))
 
 Point = tuple[float, float, float]
-
-
-class ArcTo(NamedTuple):
-    """A step of a profile: along a circle by way of ``via`` to ``to``, both (r, z)."""
-
-    via: Position
-    to: Position
 
 
 def box(lx: float, ly: float, lz: float, center: Point = (0.0, 0.0, 0.0)) -> Surface:
@@ -44,27 +45,42 @@ def box(lx: float, ly: float, lz: float, center: Point = (0.0, 0.0, 0.0)) -> Sur
     Raises:
         UsageError: a length is not positive and finite, or the center is not finite.
     """
-    half = 0.5 * np.array([_length("lx", lx), _length("ly", ly), _length("lz", lz)])
+    half = 0.5 * np.array([need.length("lx", lx), need.length("ly", ly), need.length("lz", lz)])
     low_high = np.array([-half, half])
     vertices = [[low_high[i, 0], low_high[j, 1], low_high[k, 2]] for k, j, i in np.ndindex(2, 2, 2)]
     faces = [[0, 2, 3, 1], [4, 5, 7, 6], [0, 1, 5, 4], [2, 6, 7, 3], [0, 4, 6, 2], [1, 3, 7, 5]]
-    return Surface(np.array(vertices) + _point("center", center), np.array(faces))
+    return Surface(np.array(vertices) + need.point("center", center), np.array(faces))
 
 
-def plate(lx: float, ly: float, center: Point = (0.0, 0.0, 0.0)) -> Surface:
+def plate(
+    lx: float,
+    ly: float,
+    center: Point = (0.0, 0.0, 0.0),
+    holes: Sequence[Hole] = (),
+    around: int = AROUND,
+) -> Surface:
     """Rectangular sheet without thickness, parallel to the xy-plane.
 
     Args:
         lx: length along x.
         ly: length along y.
         center: of the rectangle.
+        holes: round ones as ``{"center": (x, y), "radius": r}``, others as points (x, y) and
+            ``ArcTo`` steps, all counted from the center of the rectangle.
+        around: facets that the rim of a round hole is cut into, their corners on it.
 
     Raises:
-        UsageError: a length is not positive and finite, or the center is not finite.
+        UsageError: a length is not positive and finite, the center is not finite, or a hole
+            does not lie inside or meets another one.
     """
-    x, y = 0.5 * _length("lx", lx), 0.5 * _length("ly", ly)
-    vertices = np.array([[-x, -y, 0.0], [x, -y, 0.0], [x, y, 0.0], [-x, y, 0.0]])
-    return Surface(vertices + _point("center", center), np.array([[0, 1, 2, 3]]))
+    x, y = 0.5 * need.length("lx", lx), 0.5 * need.length("ly", ly)
+    middle = need.point("center", center)
+    rim = [(-x, -y), (x, -y), (x, y), (-x, y)]
+    if holes:
+        from bem.geometry.extrusions import sheet
+
+        return sheet(rim, holes, around).placed(np.eye(3), middle)
+    return Surface(np.array([(*at, 0.0) for at in rim]) + middle, np.array([[0, 1, 2, 3]]))
 
 
 def disc(radius: float) -> Surface:
@@ -73,7 +89,7 @@ def disc(radius: float) -> Surface:
     Raises:
         UsageError: the radius is not positive and finite.
     """
-    return revolve([(0.0, 0.0), (_length("radius", radius), 0.0)])
+    return revolve([(0.0, 0.0), (need.length("radius", radius), 0.0)])
 
 
 def annulus(inner: float, outer: float) -> Surface:
@@ -86,7 +102,7 @@ def annulus(inner: float, outer: float) -> Surface:
     Raises:
         UsageError: a radius is not positive and finite, or inner is not below outer.
     """
-    inner, outer = _increasing("inner", inner, "outer", outer)
+    inner, outer = need.increasing("inner", inner, "outer", outer)
     return revolve([(inner, 0.0), (outer, 0.0)])
 
 
@@ -96,7 +112,7 @@ def tube(radius: float, length: float) -> Surface:
     Raises:
         UsageError: a length is not positive and finite.
     """
-    r, z = _length("radius", radius), 0.5 * _length("length", length)
+    r, z = need.length("radius", radius), 0.5 * need.length("length", length)
     return revolve([(r, -z), (r, z)])
 
 
@@ -106,7 +122,7 @@ def bowl(radius: float) -> Surface:
     Raises:
         UsageError: the radius is not positive and finite.
     """
-    r = _length("radius", radius)
+    r = need.length("radius", radius)
     return revolve([(0.0, -r), _quarter_up(r)])
 
 
@@ -116,7 +132,7 @@ def sphere(radius: float) -> Surface:
     Raises:
         UsageError: the radius is not positive and finite.
     """
-    r = _length("radius", radius)
+    r = need.length("radius", radius)
     return revolve([(0.0, -r), ArcTo((r, 0.0), (0.0, r))])
 
 
@@ -126,7 +142,7 @@ def spheroid(radius: float, half_length: float) -> Surface:
     Raises:
         UsageError: a length is not positive and finite.
     """
-    r, z = _length("radius", radius), _length("half_length", half_length)
+    r, z = need.length("radius", radius), need.length("half_length", half_length)
     return _scaled_sphere(r, r, z)
 
 
@@ -136,7 +152,7 @@ def ellipsoid(a: float, b: float, c: float) -> Surface:
     Raises:
         UsageError: a half-axis is not positive and finite.
     """
-    return _scaled_sphere(_length("a", a), _length("b", b), _length("c", c))
+    return _scaled_sphere(need.length("a", a), need.length("b", b), need.length("c", c))
 
 
 def cylinder(radius: float, length: float) -> Surface:
@@ -145,7 +161,7 @@ def cylinder(radius: float, length: float) -> Surface:
     Raises:
         UsageError: a length is not positive and finite.
     """
-    r, z = _length("radius", radius), 0.5 * _length("length", length)
+    r, z = need.length("radius", radius), 0.5 * need.length("length", length)
     return revolve([(0.0, -z), (r, -z), (r, z), (0.0, z)])
 
 
@@ -155,7 +171,7 @@ def hemisphere(radius: float) -> Surface:
     Raises:
         UsageError: the radius is not positive and finite.
     """
-    r = _length("radius", radius)
+    r = need.length("radius", radius)
     return revolve([(0.0, -r), _quarter_up(r), (0.0, 0.0)])
 
 
@@ -169,13 +185,64 @@ def torus(major: float, minor: float) -> Surface:
     Raises:
         UsageError: a radius is not positive and finite, or minor is not below major.
     """
-    minor, major = _increasing("minor", minor, "major", major)
+    minor, major = need.increasing("minor", minor, "major", major)
     inside, outside = (major - minor, 0.0), (major + minor, 0.0)
     below, above = (major, -minor), (major, minor)
     return revolve([outside, ArcTo(above, inside), ArcTo(below, outside)])
 
 
-def revolve(steps: Sequence[Position | ArcTo], around: int = AROUND) -> Surface:
+def ring(
+    major: float | None = None,
+    minor: float | None = None,
+    *,
+    inner: float | None = None,
+    outer: float | None = None,
+    height: float | None = None,
+) -> Surface:
+    """Solid ring about the z-axis, centred at the origin, with round or rectangular section.
+
+    Args:
+        major: radius of the circle that the middle of a round wire follows, and
+        minor: radius of that wire; or else
+        inner: radius of the hole of a ring with rectangular section,
+        outer: its outer radius, and
+        height: its length along z.
+
+    Raises:
+        UsageError: neither set of arguments is complete, both are given, or a length does
+            not fit.
+    """
+    wire = {"major": major, "minor": minor}
+    bar = {"inner": inner, "outer": outer, "height": height}
+    given = {key: size for key, size in (wire | bar).items() if size is not None}
+    if given.keys() == wire.keys():
+        return torus(given["major"], given["minor"])
+    if given.keys() == bar.keys():
+        return _washer(given["inner"], given["outer"], given["height"])
+    found = ", ".join(given) or "no sizes"
+    raise UsageError(f"ring: found {found}; give major and minor, or inner, outer and height")
+
+
+def cone(radius: float, height: float, top_radius: float = 0.0) -> Surface:
+    """Solid cone along z, its base at -height/2 and its tip, or flat top, at +height/2.
+
+    Args:
+        radius: of the base.
+        height: length along z.
+        top_radius: of the flat top of a truncated cone; 0 for a pointed one.
+
+    Raises:
+        UsageError: a length is not positive and finite, or top_radius is negative.
+    """
+    r, z = need.length("radius", radius), 0.5 * need.length("height", height)
+    top = need.number("top_radius", top_radius)
+    if top < 0.0:
+        raise UsageError(f"top_radius: found {top_radius!r}; a radius must not be negative")
+    side = [(0.0, -z), (r, -z), (top, z)]
+    return revolve([*side, (0.0, z)] if top else side)
+
+
+def revolve(steps: Sequence[Step], around: int = AROUND) -> Surface:
     """Surface of revolution about the z-axis from a profile of lines and arcs.
 
     A profile from axis to axis, or back to its first point, makes a closed body; any other
@@ -192,9 +259,8 @@ def revolve(steps: Sequence[Position | ArcTo], around: int = AROUND) -> Surface:
     """
     profile = _profile(steps)
     _check_axis(profile)
-    parts = [_corners(piece, AROUND)[:-1] for piece in profile]
-    outline = np.vstack([*parts, profile[-1].end])
-    _check_crossing(outline)
+    outline = polygon(profile)
+    check_crossing(outline, PROFILE)
     curve = Revolution(profile, np.eye(3), np.zeros(3))
     if not any(curve.free_rims) and _swept_volume(outline) < 0.0:
         backwards = tuple(piece.reversed() for piece in profile[::-1])
@@ -206,102 +272,27 @@ def _scaled_sphere(a: float, b: float, c: float) -> Surface:
     return sphere(1.0).placed(np.diag([a, b, c]), np.zeros(3))
 
 
+def _washer(inner: float, outer: float, height: float) -> Surface:
+    low, high = need.increasing("inner", inner, "outer", outer)
+    z = 0.5 * need.length("height", height)
+    return revolve([(low, -z), (high, -z), (high, z), (low, z), (low, -z)])
+
+
 def _quarter_up(r: float) -> ArcTo:
     return ArcTo((r * math.sqrt(0.5), -r * math.sqrt(0.5)), (r, 0.0))
 
 
-def _length(name: str, value: float) -> float:
-    size = _number(name, value)
-    if size <= 0.0:
-        raise UsageError(f"{name}: found {value!r}; a length must be positive and finite")
-    return size
-
-
-def _number(name: str, value: float) -> float:
-    try:
-        number = float(value)
-    except (TypeError, ValueError):
-        number = math.nan
-    if not math.isfinite(number):
-        raise UsageError(f"{name}: found {value!r}; give a finite number")
-    return number
-
-
-def _increasing(low: str, small: float, high: str, large: float) -> tuple[float, float]:
-    small, large = _length(low, small), _length(high, large)
-    if small >= large:
-        raise UsageError(f"{low}: found {small!r}; it must be below {high}, which is {large!r}")
-    return small, large
-
-
-def _point(name: str, value: Point) -> np.ndarray:
-    numbers = _numbers(name, value)
-    if len(numbers) != 3:
-        raise UsageError(f"{name}: found {value!r}; give three numbers (x, y, z)")
-    return np.array(numbers)
-
-
-def _position(name: str, value: Position) -> Position:
-    numbers = _numbers(name, value)
-    if len(numbers) != 2:
-        raise UsageError(f"{name}: found {value!r}; give two numbers (r, z) or an ArcTo")
-    return numbers[0], numbers[1]
-
-
-def _numbers(name: str, value: Sequence[float]) -> list[float]:
-    if isinstance(value, str) or not hasattr(value, "__iter__"):
-        raise UsageError(f"{name}: found {value!r}; give its coordinates as a tuple of numbers")
-    return [_number(name, x) for x in value]
-
-
-def _profile(steps: Sequence[Position | ArcTo]) -> tuple[Piece, ...]:
+def _profile(steps: Sequence[Step]) -> tuple[Piece, ...]:
     """Pieces from each step to the next, in the order given."""
-    steps = list(steps) if hasattr(steps, "__iter__") else []
-    if len(steps) < 2:
-        raise UsageError(f"profile: found {len(steps)} points; give at least two")
-    if isinstance(steps[0], ArcTo):
-        raise UsageError("profile: the first step is an ArcTo; start with a point (r, z)")
-    names = [f"profile point {k}" for k in range(1, len(steps) + 1)]
-    vias = [_via(name, step) for name, step in zip(names, steps, strict=True)]
-    stops = [_stop(name, step) for name, step in zip(names, steps, strict=True)]
-    stops = _snapped(stops, SNAP * max(abs(x) for stop in stops for x in stop))
-    for name, stop in zip(names, stops, strict=True):
-        if stop[0] < 0.0:
-            raise UsageError(f"{name}: found r = {stop[0]!r}; the profile must stay at r >= 0")
-    return tuple(map(_piece, names[1:], stops[:-1], vias[1:], stops[1:]))
-
-
-def _stop(name: str, step: Position | ArcTo) -> Position:
-    return _position(name, step.to if isinstance(step, ArcTo) else step)
-
-
-def _via(name: str, step: Position | ArcTo) -> Position | None:
-    return _position(name, step.via) if isinstance(step, ArcTo) else None
-
-
-def _snapped(stops: list[Position], tolerance: float) -> list[Position]:
-    """Points almost on the axis put onto it, and a last one almost at the first put there."""
-    stops = [(0.0 if abs(r) <= tolerance else r, z) for r, z in stops]
-    if math.dist(stops[0], stops[-1]) <= tolerance:
-        stops[-1] = stops[0]
-    return stops
-
-
-def _piece(name: str, here: Position, via: Position | None, there: Position) -> Piece:
-    if there == here:
-        raise UsageError(
-            f"{name}: found {there!r} twice in a row; leave one out, or give a full circle as "
-            f"two arcs"
-        )
-    if via is None:
-        return Segment(here, there)
-    arc = arc_through(here, via, there)
-    if arc is None:
-        raise UsageError(
-            f"{name}: found an arc from {here!r} by {via!r} to {there!r}, which are in line; "
-            f"give a straight step"
-        )
-    return arc
+    stops = read_steps(steps, PROFILE)
+    tolerance = stops.tolerance
+    ends = [(0.0 if abs(r) <= tolerance else r, z) for r, z in stops.ends]
+    if math.dist(ends[0], ends[-1]) <= tolerance:
+        ends[-1] = ends[0]
+    for name, end in zip(stops.names, ends, strict=True):
+        if end[0] < 0.0:
+            raise UsageError(f"{name}: found r = {end[0]!r}; the profile must stay at r >= 0")
+    return pieces_between(stops._replace(ends=ends))
 
 
 def _check_axis(profile: tuple[Piece, ...]) -> None:
@@ -319,42 +310,6 @@ def _check_axis(profile: tuple[Piece, ...]) -> None:
             )
 
 
-def _check_crossing(outline: np.ndarray) -> None:
-    """Refuse a profile whose outline touches itself other than where its ends meet."""
-    a, b = outline[:-1], outline[1:]
-    beside = _side(a[:, None], b[:, None], a) * _side(a[:, None], b[:, None], b) <= 0.0
-    count = len(a)
-    apart = np.subtract.outer(np.arange(count), np.arange(count)) > 1
-    apart[-1, 0] &= not np.array_equal(outline[0], outline[-1])
-    touching = beside & beside.T & apart & _boxes_meet(a, b)
-    touching[range(1, count), range(count - 1)] = _turns_back(b - a)
-    if touching.any():
-        r, z = a[np.argwhere(touching)[0, 0]]
-        raise UsageError(
-            f"profile: found touching or crossing itself near r = {r:.4g}, z = {z:.4g}; "
-            f"give an outline that does not"
-        )
-
-
-def _side(a: np.ndarray, b: np.ndarray, p: np.ndarray) -> np.ndarray:
-    """Twice the signed area of a, b, p."""
-    ab, ap = b - a, p - a
-    return ab[..., 0] * ap[..., 1] - ab[..., 1] * ap[..., 0]
-
-
-def _boxes_meet(a: np.ndarray, b: np.ndarray) -> np.ndarray:
-    low, high = np.minimum(a, b), np.maximum(a, b)
-    return np.all((low[:, None] <= high) & (low <= high[:, None]), axis=-1)
-
-
-def _turns_back(steps: np.ndarray) -> np.ndarray:
-    """Whether each step after the first retraces the one before."""
-    before, after = steps[:-1], steps[1:]
-    onward = np.sum(before * after, axis=1)
-    aside = before[:, 0] * after[:, 1] - before[:, 1] * after[:, 0]
-    return (onward < 0.0) & (np.abs(aside) <= 1e-9 * np.abs(onward))
-
-
 def _swept_volume(outline: np.ndarray) -> float:
     """Volume inside, positive if the outline has the body on its left (by Pappus)."""
     r = outline[:, 0]
@@ -362,25 +317,17 @@ def _swept_volume(outline: np.ndarray) -> float:
     return float(np.sum(dz * (r[:-1] ** 2 + r[:-1] * r[1:] + r[1:] ** 2)) * math.pi / 3.0)
 
 
-def _corners(piece: Piece, around: int) -> np.ndarray:
-    """(m, 2): the ends of a piece, and for an arc points between as dense as ``around``."""
-    count = max(1, math.ceil(around * piece.bend / (2.0 * math.pi) - 1e-9))
-    return piece.at(np.arange(count + 1) / count)
-
-
 def _levels(curve: Revolution, around: int) -> np.ndarray:
     """Parameters s of the rings of vertices."""
     levels = [0.0]
     for k, piece in enumerate(curve.profile):
-        count = len(_corners(piece, around)) - 1
+        count = len(corners_of(piece, around)) - 1
         levels += [k + j / count for j in range(1, count + 1)]
     return np.array(levels)
 
 
 def _faceted(curve: Revolution, around: int) -> Surface:
-    if not isinstance(around, int) or around < 3:
-        raise UsageError(f"around: found {around!r}; give a whole number of facets, 3 or more")
-    levels = _levels(curve, around)
+    levels = _levels(curve, need.facets("around", around))
     rings = np.arange(len(levels) * around).reshape(len(levels), around)
     if curve.loops:
         rings[-1] = rings[0]

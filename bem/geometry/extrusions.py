@@ -1,0 +1,71 @@
+"""Sheets and prisms with any outline and holes.
+
+The corners of facets that stand for an arc lie on it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from bem.geometry import shape_values as need
+from bem.geometry.outlines import Hole, Region, region
+from bem.geometry.steps import AROUND, Step
+from bem.geometry.surface import NO_CORNER, Surface
+
+
+def sheet(outline: Sequence[Step], holes: Sequence[Hole] = (), around: int = AROUND) -> Surface:
+    """Sheet without thickness in the xy-plane, with any outline and holes.
+
+    Args:
+        outline: the first step is a point (x, y); each further one is a point, reached in a
+            straight line, or an ``ArcTo``. The last is joined to the first.
+        holes: each given like an outline, or as ``{"center": (x, y), "radius": r}``.
+        around: facets that a full circle is cut into.
+
+    Raises:
+        UsageError: an outline meets itself or another one, a hole does not lie inside, or a
+            number is not finite.
+    """
+    flat = region(outline, holes, around)
+    return Surface(_lifted(flat.points, 0.0), _with_three_corners(flat.triangles()))
+
+
+def extrude(
+    outline: Sequence[Step], height: float, holes: Sequence[Hole] = (), around: int = AROUND
+) -> Surface:
+    """Solid prism from z = 0 to ``height`` with any outline and holes through it.
+
+    Args:
+        outline: the first step is a point (x, y); each further one is a point, reached in a
+            straight line, or an ``ArcTo``. The last is joined to the first.
+        height: length along z.
+        holes: each given like an outline, or as ``{"center": (x, y), "radius": r}``.
+        around: facets that a full circle is cut into.
+
+    Raises:
+        UsageError: an outline meets itself or another one, a hole does not lie inside, or a
+            number is not finite.
+    """
+    top = need.length("height", height)
+    flat = region(outline, holes, around)
+    vertices = np.concatenate([_lifted(flat.points, 0.0), _lifted(flat.points, top)])
+    return Surface(vertices, _prism(flat))
+
+
+def _prism(flat: Region) -> np.ndarray:
+    """(f, 4) faces outward: the bottom, the top and the walls."""
+    bottom, count = flat.triangles(), len(flat.points)
+    here, there = flat.sides().T
+    walls = np.stack([here, there, there + count, here + count], axis=1)
+    ends = _with_three_corners(np.concatenate([bottom[:, ::-1], bottom + count]))
+    return np.concatenate([ends, walls])
+
+
+def _lifted(points: np.ndarray, z: float) -> np.ndarray:
+    return np.column_stack([points, np.full(len(points), z)])
+
+
+def _with_three_corners(triangles: np.ndarray) -> np.ndarray:
+    return np.column_stack([triangles, np.full(len(triangles), NO_CORNER)])
