@@ -265,7 +265,7 @@ def revolve(steps: Sequence[Step], around: int = AROUND) -> Surface:
     if not any(curve.free_rims) and _swept_volume(outline) < 0.0:
         backwards = tuple(piece.reversed() for piece in profile[::-1])
         curve = Revolution(backwards, np.eye(3), np.zeros(3))
-    return _faceted(curve, around)
+    return faceted(curve, around)
 
 
 def _scaled_sphere(a: float, b: float, c: float) -> Surface:
@@ -326,7 +326,7 @@ def _levels(curve: Revolution, around: int) -> np.ndarray:
     return np.array(levels)
 
 
-def _faceted(curve: Revolution, around: int) -> Surface:
+def faceted(curve: Revolution, around: int) -> Surface:
     levels = _levels(curve, need.facets("around", around))
     rings = np.arange(len(levels) * around).reshape(len(levels), around)
     if curve.loops:
