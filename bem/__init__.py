@@ -8,6 +8,8 @@ from __future__ import annotations
 from importlib import import_module
 from typing import Any
 
+from bem.geometry.kinds import SHAPES
+
 __version__ = "0.1.0"
 
 _HOME = {
@@ -15,11 +17,8 @@ _HOME = {
     "Place": "bem.scene.scene",
     "load_scene": "bem.scene.scene_file",
     "Surface": "bem.geometry.surface",
-    "box": "bem.geometry.shapes",
-    "plate": "bem.geometry.shapes",
-    "disc": "bem.geometry.shapes",
-    "sphere": "bem.geometry.shapes",
-    "cylinder": "bem.geometry.shapes",
+    "ArcTo": "bem.geometry.steps",
+    **SHAPES,
     "extract": "bem.extraction.extract",
     "compare": "bem.extraction.compare",
     "CapacitanceResult": "bem.results.result",

@@ -68,7 +68,7 @@ def test_what_may_be_left_out(folder):
 
 
 ROD = '[[conductor]]\nname = "rod"\nmesh = "rod.stl"\n'
-KNOWN = "known are name, mesh, part, unit, body, place, state, node"
+KNOWN = "known are name, mesh, shape, part, unit, body, place, state, node"
 
 
 @pytest.mark.parametrize(
@@ -95,7 +95,7 @@ KNOWN = "known are name, mesh, part, unit, body, place, state, node"
         ('unit = "mm"\n[conductor]\nname = "rod"\n',
          "conductor: found a single value or [conductor]; write [[conductor]]"),
         ('unit = "mm"\nconductor = [1]\n', "conductor 1: found 1, needs a table with "
-         "name and mesh and part and unit and body and place and state and node"),
+         "name and mesh and shape and part and unit and body and place and state and node"),
         ('unit = "mm"\n[[conductor]]\nmesh = "rod.stl"\n', "conductor 1: name: missing"),
         ('unit = "mm"\n[[conductor]]\nname = "rod"\n', 'conductor 1 ("rod"): mesh: missing'),
         ('unit = "mm"\n[[conductor]]\nname = 7\nmesh = "rod.stl"\n',

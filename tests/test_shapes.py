@@ -7,6 +7,7 @@ from collections.abc import Callable
 
 import numpy as np
 import pytest
+from shape_measures import area, side_counts, volume
 
 from bem.errors import UsageError
 from bem.geometry import shapes
@@ -26,7 +27,11 @@ SOLIDS = {
     "torus": (shapes.torus(3.0, 1.0), 6.0 * math.pi**2),
     "washer": (shapes.revolve(WASHER), 3.0 * math.pi),
     "washer, other way round": (shapes.revolve(WASHER[::-1]), 3.0 * math.pi),
-    "cone": (shapes.revolve([(0.0, 0.0), (1.0, 0.0), (0.0, 2.0)]), 2.0 * math.pi / 3.0),
+    "cone": (shapes.cone(1.0, 2.0), 2.0 * math.pi / 3.0),
+    "frustum": (shapes.cone(2.0, 3.0, top_radius=1.0), 7.0 * math.pi),
+    "funnel": (shapes.cone(1.0, 3.0, top_radius=2.0), 7.0 * math.pi),
+    "ring of round section": (shapes.ring(3.0, 1.0), 6.0 * math.pi**2),
+    "ring of rectangular section": (shapes.ring(inner=1.0, outer=2.0, height=2.0), 6.0 * math.pi),
 }
 
 SHEETS = {
@@ -39,23 +44,6 @@ SHEETS = {
 CURVES = {name: surface.curve for name, (surface, _) in (SOLIDS | SHEETS).items()}
 
 each_curve = pytest.mark.parametrize("curve", CURVES.values(), ids=CURVES)
-
-
-def volume(surface: Surface) -> float:
-    a, b, c = np.moveaxis(surface.vertices[surface.triangles], 1, 0)
-    return float(np.einsum("ij,ij->", a, np.cross(b, c))) / 6.0
-
-
-def area(surface: Surface) -> float:
-    a, b, c = np.moveaxis(surface.vertices[surface.triangles], 1, 0)
-    return 0.5 * float(np.linalg.norm(np.cross(b - a, c - a), axis=1).sum())
-
-
-def side_counts(surface: Surface) -> np.ndarray:
-    """How many faces share each side."""
-    rows = [row[row >= 0] for row in surface.faces]
-    ends = np.concatenate([np.stack([row, np.roll(row, -1)], axis=1) for row in rows])
-    return np.unique(np.sort(ends, axis=1), axis=0, return_counts=True)[1]
 
 
 def parameters(curve: Revolution) -> tuple[np.ndarray, np.ndarray]:
@@ -84,6 +72,12 @@ def test_box_and_plate_are_where_they_should_be() -> None:
     assert plate.bounds.tolist() == [[-0.5, -1.0, 3.0], [0.5, 1.0, 3.0]]
     assert box.curve is None
     assert plate.curve is None
+
+
+def test_cone_stands_on_its_base_about_the_origin() -> None:
+    assert shapes.cone(2.0, 3.0).bounds.tolist() == [[-2.0, -2.0, -1.5], [2.0, 2.0, 1.5]]
+    at_top = shapes.cone(2.0, 3.0, top_radius=1.0).vertices
+    assert np.hypot(*at_top[at_top[:, 2] == 1.5][:, :2].T).max() == pytest.approx(1.0)
 
 
 @each_curve
@@ -190,6 +184,21 @@ BAD_CALLS: dict[str, tuple[Callable[[], Surface], str]] = {
     "not a number": (lambda: shapes.disc("wide"), "radius: found 'wide'; give a finite number"),
     "wide hole": (lambda: shapes.annulus(2.0, 1.0), "inner: found 2.0; it must be below outer"),
     "thick ring": (lambda: shapes.torus(1.0, 1.0), "minor: found 1.0; it must be below major"),
+    "flag": (lambda: shapes.sphere(True), "radius: found True; give a finite number"),
+    "half a ring": (lambda: shapes.ring(2.0), "ring: found major; give major and minor, or inner"),
+    "two rings": (
+        lambda: shapes.ring(2.0, 1.0, inner=1.0),
+        "ring: found major, minor, inner; give major and minor, or inner, outer and height",
+    ),
+    "no ring": (lambda: shapes.ring(), "ring: found no sizes"),
+    "ring inside out": (
+        lambda: shapes.ring(inner=2.0, outer=1.0, height=1.0),
+        "inner: found 2.0; it must be below outer",
+    ),
+    "cone through its tip": (
+        lambda: shapes.cone(1.0, 1.0, -0.5),
+        "top_radius: found -0.5; a radius must not be negative",
+    ),
     "flat center": (lambda: shapes.plate(1.0, 1.0, (0.0, 0.0)), "center: found .* three numbers"),
     "lost center": (
         lambda: shapes.box(1.0, 1.0, 1.0, (0.0, math.nan, 0.0)),

@@ -141,7 +141,7 @@ def _check_inside(hole: Contour, rim: Contour) -> None:
         place = hole.line[0]
     if place is not None:
         raise UsageError(
-            f"{hole.name}: reaches {rim.name} or lies outside, near {_at(place)}; keep it inside"
+            f"{hole.name}: reaches the outline or lies outside near {_at(place)}; keep it inside"
         )
 
 

@@ -327,6 +327,15 @@ def _levels(curve: Revolution, around: int) -> np.ndarray:
 
 
 def faceted(curve: Revolution, around: int) -> Surface:
+    """Surface of revolution with facets whose corners lie on it.
+
+    Args:
+        curve: the true surface, which the result keeps.
+        around: facets around the axis, and as dense along arcs of the profile.
+
+    Raises:
+        UsageError: ``around`` is no whole number from 3.
+    """
     levels = _levels(curve, need.facets("around", around))
     rings = np.arange(len(levels) * around).reshape(len(levels), around)
     if curve.loops:

@@ -96,11 +96,12 @@ def table(where: str, value: Any, known: tuple[str, ...]) -> dict[str, Any]:
     for key in value:
         if key not in known:
             start = f"{where}: " if where else ""
-            raise InputError(f"{start}unknown key {shown(key)}{_near(key, known)}")
+            raise InputError(f"{start}unknown key {shown(key)}{near(key, known)}")
     return value
 
 
-def _near(key: str, known: Iterable[str]) -> str:
-    near = difflib.get_close_matches(key.lower(), known, n=1, cutoff=0.5)
-    hint = f"; did you mean {shown(near[0])}?" if near else ";"
+def near(key: str, known: Iterable[str]) -> str:
+    """End of a message about an unknown word: the nearest known one, and all of them."""
+    found = difflib.get_close_matches(key.lower(), known, n=1, cutoff=0.5)
+    hint = f"; did you mean {shown(found[0])}?" if found else ";"
     return f"{hint} known are {', '.join(known)}"

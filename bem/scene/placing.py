@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 
+from bem.errors import InputError
 from bem.scene import checks
 
 _QUARTERS = {0.0: (1.0, 0.0), 90.0: (0.0, 1.0), 180.0: (-1.0, 0.0), 270.0: (0.0, -1.0)}
@@ -65,6 +66,23 @@ def place_or_refuse(where: str, value: Any) -> Place:
     if not isinstance(value, Place):
         raise checks.refuse(where, value, "a Place")
     return value.checked(where)
+
+
+def place_of(where: str, value: Any) -> Place:
+    """Place of a table of a scene file; its numbers are checked where it is used.
+
+    Raises:
+        InputError: no such table, or a key is unknown or missing.
+    """
+    entries = checks.table(where, value, ("shift", "turn", "scale"))
+    given: dict[str, Any] = {key: entries[key] for key in ("shift", "scale") if key in entries}
+    if "turn" in entries:
+        turn = checks.table(f"{where}.turn", entries["turn"], ("axis", "degrees"))
+        for key in ("axis", "degrees"):
+            if key not in turn:
+                raise InputError(f"{where}.turn.{key}: missing")
+        given |= {"turn_axis": turn["axis"], "turn_degrees": turn["degrees"]}
+    return Place(**given)
 
 
 def rotation(axis: tuple[float, float, float], degrees: float) -> np.ndarray:

@@ -11,7 +11,7 @@ A scene file::
     x = 0.0
     [[conductor]]
     name = "probe rod"
-    mesh = "probe_rod.stl"         # relative to this file
+    mesh = "probe_rod.stl"         # relative to this file; or a shape, see bem.scene.shape_entry
     part = "rod"                   # optional: a named portion of the file
     unit = "mm"                    # optional: of the mesh file, if not the scene's
     body = "solid"                 # optional: or "shell", hollow
@@ -33,13 +33,13 @@ from bem.errors import BemError, InputError, UsageError
 from bem.geometry.planes import AXES
 from bem.geometry.wording import counted, listed
 from bem.scene import checks
-from bem.scene.placing import Place
+from bem.scene.placing import place_of
 from bem.scene.scene import Scene, entry_name
 from bem.scene.states import check_terminals
 from bem.units import METRES_PER
 
 _TOP = ("unit", "surroundings", "ground_plane", "mirror_plane", "conductor")
-_CONDUCTOR = ("name", "mesh", "part", "unit", "body", "place", "state", "node")
+_CONDUCTOR = ("name", "mesh", "shape", "part", "unit", "body", "place", "state", "node")
 _POSITION = re.compile(r"\(at (line \d+, column \d+|end of document)\)")
 
 
@@ -175,21 +175,12 @@ def _add(scene: Scene, number: int, entry: Any) -> None:
     name = entry.get("name") if isinstance(entry, dict) else None
     where = entry_name(number, name)
     keys = dict(checks.table(where, entry, _CONDUCTOR))
-    for key in ("name", "mesh"):
-        if key not in keys:
-            raise InputError(f"{where}: {key}: missing")
+    if "name" not in keys:
+        raise InputError(f"{where}: name: missing")
+    if "shape" in keys:
+        from bem.scene.shape_entry import shape_of
+
+        keys["shape"] = shape_of(f"{where}: shape", keys["shape"])
     if "place" in keys:
-        keys["place"] = _place(f"{where}: place", keys["place"])
+        keys["place"] = place_of(f"{where}: place", keys["place"])
     scene.add_conductor(**keys)
-
-
-def _place(where: str, value: Any) -> Place:
-    entries = checks.table(where, value, ("shift", "turn", "scale"))
-    given: dict[str, Any] = {key: entries[key] for key in ("shift", "scale") if key in entries}
-    if "turn" in entries:
-        turn = checks.table(f"{where}.turn", entries["turn"], ("axis", "degrees"))
-        for key in ("axis", "degrees"):
-            if key not in turn:
-                raise InputError(f"{where}.turn.{key}: missing")
-        given |= {"turn_axis": turn["axis"], "turn_degrees": turn["degrees"]}
-    return Place(**given)
