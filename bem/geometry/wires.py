@@ -143,13 +143,12 @@ def _between(
 
 def _graded(length: float, width: float) -> np.ndarray:
     """Parts of a length, in (0, 1), where facets of it end: small at its ends, longer amid."""
-    steps, size = [width], width
-    while 2.0 * sum(steps) < length:
-        size = min(GROWTH * size, LONGEST * width)
-        steps.append(size)
-    if 2.0 * width >= length:
+    if length <= width:
         return np.empty(0)
-    levels = np.cumsum([*steps[:-1], *steps[-2::-1]])
+    steps = [width]
+    while 2.0 * sum(steps) < length:
+        steps.append(min(GROWTH * steps[-1], LONGEST * width))
+    levels = np.cumsum([*steps, *steps[::-1]])
     return levels[:-1] / levels[-1]
 
 
