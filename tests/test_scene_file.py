@@ -97,7 +97,8 @@ KNOWN = "known are name, mesh, shape, part, unit, body, place, state, node"
         ('unit = "mm"\nconductor = [1]\n', "conductor 1: found 1, needs a table with "
          "name and mesh and shape and part and unit and body and place and state and node"),
         ('unit = "mm"\n[[conductor]]\nmesh = "rod.stl"\n', "conductor 1: name: missing"),
-        ('unit = "mm"\n[[conductor]]\nname = "rod"\n', 'conductor 1 ("rod"): mesh: missing; give the name of a mesh file, or a shape'),
+        ('unit = "mm"\n[[conductor]]\nname = "rod"\n',
+         'conductor 1 ("rod"): mesh: missing; give the name of a mesh file, or a shape'),
         ('unit = "mm"\n[[conductor]]\nname = 7\nmesh = "rod.stl"\n',
          "conductor 1: name: found 7, needs text that is not blank"),
         ('unit = "mm"\n' + ROD + ROD, 'conductor 2 ("rod"): name: already that of conductor 1; '
