@@ -83,7 +83,8 @@ KNOWN = "known are name, mesh, shape, part, unit, body, place, state, node"
          "known are unit, surroundings, ground_plane, mirror_plane, conductor"),
         ('unit = "mm"\n[[conductors]]\n', 'unknown key "conductors"; did you mean "conductor"? '
          "known are unit, surroundings, ground_plane, mirror_plane, conductor"),
-        ('unit = "mm"\nxyz = 1\n', 'unknown key "xyz"; known are unit, surroundings, ground_plane, mirror_plane, conductor'),
+        ('unit = "mm"\nxyz = 1\n', 'unknown key "xyz"; '
+         'known are unit, surroundings, ground_plane, mirror_plane, conductor'),
         ('unit = "mm"\nsurroundings = 2\n' + ROD, "surroundings: found 2, "
          "needs a table with relative_permittivity"),
         ('unit = "mm"\n[surroundings]\npermittivity = 2\n' + ROD, "surroundings: unknown key "
