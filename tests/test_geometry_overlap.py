@@ -84,6 +84,18 @@ def test_the_search_misses_nothing():
     assert len(coplanar) > 10 and len(crossing) > 20
 
 
+@pytest.mark.parametrize("few", [0, 200])
+def test_few_triangles_and_many_agree_with_all_pairs(few, monkeypatch):
+    monkeypatch.setattr("bem.geometry.overlap.FEW", few)
+    corners = np.random.default_rng(8).uniform(size=(80, 3, 3))
+    corners[:, :, 2] = np.random.default_rng(9).integers(0, 4, size=(80, 1))
+    corners[:, :, :2] = corners[:, :1, :2] + 0.2 * corners[:, :, :2]
+    piece = np.zeros(80, dtype=np.int64)
+    found = find_overlaps(corners, piece, 1e-9, 1e-6)
+    assert {tuple(p) for p in found.coplanar.tolist()} == all_pairs(corners, piece, 1e-6)[0]
+    assert len(found.coplanar) > 10
+
+
 def test_neighbours_on_a_body_do_not_overlap():
     corners = soup(turned(ball(1.0, 24), 7))
     found = find_overlaps(corners, np.zeros(len(corners), dtype=np.int64), 1e-7, 1e-6)

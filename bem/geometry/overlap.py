@@ -19,6 +19,9 @@ from bem.geometry.vectors import Vector, cross, dot, minus, norm, row
 
 COPLANAR, CROSSING = 0, 1
 
+FEW = 200
+"""Up to this many triangles all pairs are looked at."""
+
 
 class Overlaps(NamedTuple):
     """Pairs of triangles of one body.
@@ -48,10 +51,37 @@ def find_overlaps(corners: np.ndarray, piece: np.ndarray, flat: float, depth: fl
         flat: the smaller triangle keeps this close to the plane of the larger one, metres.
         depth: triangles that overlap or pierce less deeply only touch, metres.
     """
+    limits = _Limits(flat, depth)
+    if len(corners) <= FEW and not _may_cross(corners, piece):
+        return Overlaps(_few_coplanar(corners, limits), np.empty((0, 2), dtype=np.int64))
     tree = build_tree(corners)
-    found = _search(tree, piece[tree.order], _Limits(flat, depth))
+    found = _search(tree, piece[tree.order], limits)
     pairs, kind = np.sort(tree.order[found[:, :2]], axis=1), found[:, 2]
     return Overlaps(pairs[kind == COPLANAR], pairs[kind == CROSSING])
+
+
+def _may_cross(corners: np.ndarray, piece: np.ndarray) -> bool:
+    """Whether the bounding boxes of two triangles of different pieces meet."""
+    low, high = corners.min(axis=1), corners.max(axis=1)
+    meet = (low[:, None] <= high[None, :]).all(axis=2)
+    return bool((meet & meet.T & (piece[:, None] != piece[None, :])).any())
+
+
+def _few_coplanar(corners: np.ndarray, limits: _Limits) -> np.ndarray:
+    """Pairs (n, 2) that overlap in a plane, from all pairs, with nothing to be compiled."""
+    normals = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
+    normals /= np.linalg.norm(normals, axis=1)[:, None]
+    heights = np.einsum("ijkx,ix->ijk", corners[None, :] - corners[:, None, :1], normals)
+    flat = np.abs(heights).max(axis=2) <= limits.flat
+    i, j = np.nonzero(np.triu(flat | flat.T, 1))
+    base = np.where(flat[i, j][:, None], normals[i], normals[j])
+    sides = np.roll(corners, -1, axis=1) - corners
+    axes = np.cross(base[:, None], np.concatenate([sides[i], sides[j]], axis=1))
+    axes /= np.linalg.norm(axes, axis=2)[:, :, None]
+    one, two = (np.einsum("pkx,pax->pak", corners[k], axes) for k in (i, j))
+    shared = np.minimum(one.max(axis=2), two.max(axis=2)) - np.maximum(one.min(2), two.min(2))
+    deep = shared.min(axis=1, initial=np.inf) > limits.depth
+    return np.stack([i, j], axis=1)[deep]
 
 
 @njit(cache=True)
@@ -65,7 +95,7 @@ def _off_plane(t: Triangle, other: Triangle, n: Vector) -> float:
 
 @njit(cache=True)
 def _shared_width(one: Triangle, two: Triangle, n: Vector) -> float:
-    """Least overlap of two coplanar triangles across any side of the first."""
+    """Least overlap of two coplanar triangles across sides of the first, until one parts them."""
     least = math.inf
     for k in range(3):
         edge = minus(one[(k + 1) % 3], one[k])
@@ -78,6 +108,8 @@ def _shared_width(one: Triangle, two: Triangle, n: Vector) -> float:
             x = sign * dot(minus(two[m], one[k]), across) / length
             low, high = min(low, x), max(high, x)
         least = min(least, min(high, abs(top)) - max(low, 0.0))
+        if least <= 0.0:
+            return least
     return least
 
 
@@ -87,7 +119,8 @@ def coplanar_depth(one: Triangle, two: Triangle, n: Vector) -> float:
 
     By separating axes: for convex outlines in a plane the normals of their sides suffice.
     """
-    return min(_shared_width(one, two, n), _shared_width(two, one, n))
+    least = _shared_width(one, two, n)
+    return least if least <= 0.0 else min(least, _shared_width(two, one, n))
 
 
 @njit(cache=True)
