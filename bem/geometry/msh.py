@@ -1,37 +1,33 @@
-"""Gmsh MSH 2.2 and 4.1, text and binary, through meshio; physical groups become parts."""
+"""Gmsh MSH 2.2, 4.0 and 4.1, text and binary, through meshio; physical groups become parts."""
 
 from __future__ import annotations
 
-import contextlib
-import io
 import tempfile
-import warnings
-from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
 from bem.errors import InputError
+from bem.geometry.cell_mesh import cell_mesh
 from bem.geometry.mesh_data import MeshData
 from bem.geometry.msh_sections import (
+    SURFACE,
+    VOLUME,
     MshFormat,
     file_format,
-    groups_of_surfaces,
+    group_names,
+    groups_of_entities,
     split_sections,
-    surface_names,
 )
-from bem.geometry.surface import NO_CORNER
-from bem.geometry.wording import counted
-
-_CORNERS = {"triangle": 3, "quad": 4}
-_VOLUMES = ("tetra", "hexahedron", "wedge", "pyramid")
+from bem.geometry.quiet import quiet
 
 
 def read_msh(path: Path) -> MeshData:
-    """Surface cells of an MSH file, with its surface groups as parts.
+    """Surface cells of an MSH file, with its surface and volume groups as parts.
 
-    A group without a name is called "group N".
+    A group without a name is called "group N". The named ones stand for a body each: those
+    of surface cells, or of volume cells in a file that has no others.
 
     Raises:
         InputError: the file is damaged or of another version.
@@ -43,31 +39,30 @@ def read_msh(path: Path) -> MeshData:
         if name not in sections:
             raise InputError(f"has no section ${name}; export the mesh again")
     mesh = _read(sections, form)
-    kept = [i for i, block in enumerate(mesh.cells) if _kind(block.type) is not None]
-    faces = [_faces(mesh.cells[i]) for i in kept]
-    names = surface_names(sections.get("PhysicalNames", b""))
-    parts = _parts(names, _members(sections, form, mesh, kept))
-    return MeshData(
-        np.asarray(mesh.points, dtype=np.float64),
-        np.concatenate([np.empty((0, 4), dtype=np.int64), *faces]),
-        parts,
-        tuple(name for name in parts if name in names.values()),
-        tuple(_changes(mesh)),
-    )
+    blocks = [(block.type, _nodes(block)) for block in mesh.cells]
+    groups, named = {}, set()
+    for dimension in (SURFACE, VOLUME):
+        names = group_names(sections.get("PhysicalNames", b""), dimension)
+        here = _groups(names, _members(sections, form, mesh, dimension))
+        groups |= {name: np.union1d(groups.get(name, cells), cells) for name, cells in here.items()}
+        named |= set(names.values())
+    points = np.asarray(mesh.points, dtype=np.float64)
+    return cell_mesh(points, blocks, groups, named)
 
 
 def _read(sections: dict[str, bytes], form: MshFormat) -> Any:
     """Give meshio a file with nothing but format, nodes and elements."""
     import meshio
 
+    bare = sections | {"MeshFormat": _written_out(sections["MeshFormat"], form)}
     with tempfile.TemporaryDirectory() as folder:
-        bare = Path(folder) / "bare.msh"
-        with bare.open("wb") as out:
+        file = Path(folder) / "bare.msh"
+        with file.open("wb") as out:
             for name in ("MeshFormat", "Nodes", "Elements"):
-                out.write(b"$%s\n%s$End%s\n" % (name.encode(), sections[name], name.encode()))
+                out.write(b"$%s\n%s$End%s\n" % (name.encode(), bare[name], name.encode()))
         try:
-            with _silent():
-                return meshio.gmsh.read(bare)
+            with quiet():
+                return meshio.gmsh.read(file)
         except Exception as problem:
             said = " ".join(str(problem).split()) if isinstance(problem, meshio.ReadError) else ""
             reason = said or "its nodes or elements are damaged"
@@ -76,80 +71,55 @@ def _read(sections: dict[str, bytes], form: MshFormat) -> Any:
             ) from None
 
 
-@contextlib.contextmanager
-def _silent() -> Iterator[None]:
-    """Keep a library from printing, and turn its warnings into errors."""
-    sink = io.StringIO()
-    with warnings.catch_warnings(), np.errstate(all="ignore"):
-        warnings.simplefilter("error")
-        with contextlib.redirect_stdout(sink), contextlib.redirect_stderr(sink):
-            yield
+def _written_out(section: bytes, form: MshFormat) -> bytes:
+    """The section $MeshFormat with version 4.0 not called 4, which the library takes for 4.1."""
+    return section.replace(b"4 ", b"4.0 ", 1) if form.version == "4" else section
 
 
-def _kind(cell: str) -> str | None:
-    """Return "triangle" or "quad" for surface cells of any order."""
-    return next((kind for kind in _CORNERS if cell.startswith(kind)), None)
-
-
-def _faces(block: Any) -> np.ndarray:
-    kind = _kind(block.type)
-    corners = np.asarray(block.data, dtype=np.int64)[:, : _CORNERS[kind] if kind else 0]
-    if corners.size and corners.min() < 0:
+def _nodes(block: Any) -> np.ndarray:
+    nodes = np.asarray(block.data, dtype=np.int64)
+    if nodes.size and nodes.min() < 0:
         raise InputError("an element uses a node that $Nodes does not list; export it again")
-    faces = np.full((len(corners), 4), NO_CORNER)
-    faces[:, : corners.shape[1]] = corners
-    return faces
+    return nodes
 
 
-def _changes(mesh: Any) -> list[str]:
-    curved = sum(
-        len(block.data)
-        for block in mesh.cells
-        if (kind := _kind(block.type)) and block.data.shape[1] > _CORNERS[kind]
-    )
-    volume = sum(len(block.data) for block in mesh.cells if block.type.startswith(_VOLUMES))
-    lines = []
-    if curved:
-        lines.append(f"{counted(curved, 'cell')} of higher order reduced to the corners")
-    if volume:
-        lines.append(f"{counted(volume, 'volume cell')} left out")
-    return lines
-
-
-def _parts(names: dict[int, str], members: dict[int, np.ndarray]) -> dict[str, np.ndarray]:
-    """Cells (indices) of each group by name; groups of one name are one part."""
-    parts: dict[str, np.ndarray] = {}
+def _groups(names: dict[int, str], members: dict[int, np.ndarray]) -> dict[str, np.ndarray]:
+    """Cells (numbers) of each group by name; groups of one name are one."""
+    groups: dict[str, np.ndarray] = {}
     for number in sorted(members):
         name = names.get(number, f"group {number}")
-        parts[name] = np.union1d(parts.get(name, members[number]), members[number])
-    return parts
+        groups[name] = np.union1d(groups.get(name, members[number]), members[number])
+    return groups
 
 
 def _members(
-    sections: dict[str, bytes], form: MshFormat, mesh: Any, kept: list[int]
+    sections: dict[str, bytes], form: MshFormat, mesh: Any, dimension: int
 ) -> dict[int, np.ndarray]:
-    """Cells (indices) of each group that has any."""
+    """Cells (numbers) of each group of a dimension that has any."""
+    key = "gmsh:geometrical" if form.version.startswith("4") else "gmsh:physical"
+    tags = np.abs(_tags(mesh, key, dimension))
     if form.version.startswith("4"):
-        entity = _tags(mesh, "gmsh:geometrical", kept)
-        groups = groups_of_surfaces(sections.get("Entities", b""), form)
-        return _by_group(entity, groups)
-    group = np.abs(_tags(mesh, "gmsh:physical", kept))
-    return {int(tag): np.flatnonzero(group == tag) for tag in np.unique(group[group > 0])}
+        groups = groups_of_entities(sections.get("Entities", b""), form, dimension)
+        return _by_group(tags, groups)
+    return {int(tag): np.flatnonzero(tags == tag) for tag in np.unique(tags[tags > 0])}
 
 
-def _tags(mesh: Any, key: str, kept: list[int]) -> np.ndarray:
-    """Tag of each kept cell (f,), 0 for all if the file gives none."""
+def _tags(mesh: Any, key: str, dimension: int) -> np.ndarray:
+    """Tag of each cell (c,); 0 for those without one, or of another dimension."""
     blocks = mesh.cell_data.get(key)
-    sizes = [len(mesh.cells[i].data) for i in kept]
-    if blocks is None or not kept:
-        return np.zeros(sum(sizes), dtype=np.int64)
-    if [len(blocks[i]) for i in kept] != sizes:
-        raise InputError("some elements have a group number and others none; export it again")
-    return np.concatenate([np.asarray(blocks[i], dtype=np.int64) for i in kept])
+    tags = []
+    for number, block in enumerate(mesh.cells):
+        if blocks is None or block.dim != dimension:
+            tags.append(np.zeros(len(block.data), dtype=np.int64))
+        elif len(blocks[number]) != len(block.data):
+            raise InputError("some elements have a group number and others none; export it again")
+        else:
+            tags.append(np.asarray(blocks[number], dtype=np.int64))
+    return np.concatenate([np.empty(0, dtype=np.int64), *tags])
 
 
 def _by_group(entity: np.ndarray, groups: dict[int, list[int]]) -> dict[int, np.ndarray]:
-    """Cells (indices) of each group, from the entity of each cell."""
+    """Cells (numbers) of each group, from the entity of each cell."""
     entities: dict[int, list[int]] = {}
     for tag, numbers in groups.items():
         for number in numbers:

@@ -17,10 +17,10 @@ from bem.errors import InputError
 _START = re.compile(rb"^\$(\w+)[ \t]*\r?\n", re.MULTILINE)
 _NAME = re.compile(rb'^\s*(\d+)\s+(-?\d+)\s+"(.*)"\s*$', re.MULTILINE)
 
-SURFACE = 2
-"""Dimension of a surface among Gmsh's entities and groups."""
+SURFACE, VOLUME = 2, 3
+"""Dimensions among Gmsh's entities and groups."""
 
-VERSIONS = ("2", "2.1", "2.2", "4.1")
+VERSIONS = ("2", "2.0", "2.1", "2.2", "4", "4.0", "4.1")
 
 
 @dataclass(frozen=True)
@@ -38,6 +38,8 @@ def split_sections(data: bytes) -> dict[str, bytes]:
     Raises:
         InputError: not an MSH file, or a section without its end.
     """
+    if data.lstrip()[:4] == b"$NOD":
+        raise InputError("is MSH version 1; save it as version 2.2 or 4.1")
     sections: dict[str, bytes] = {}
     place = 0
     while (start := _START.search(data, place)) is not None:
@@ -65,12 +67,12 @@ def file_format(section: bytes) -> MshFormat:
     return MshFormat(version, words[1] == b"1", int(words[2]))
 
 
-def surface_names(section: bytes) -> dict[int, str]:
-    """Names of the surface groups by number, from the section $PhysicalNames."""
+def group_names(section: bytes, dimension: int) -> dict[int, str]:
+    """Names of the groups of a dimension by number, from the section $PhysicalNames."""
     return {
         int(number): name.decode("utf-8", "replace")
-        for dimension, number, name in _NAME.findall(section)
-        if int(dimension) == SURFACE
+        for of, number, name in _NAME.findall(section)
+        if int(of) == dimension
     }
 
 
@@ -102,8 +104,8 @@ class _Numbers:
         self._take(count, "<f8")
 
 
-def groups_of_surfaces(section: bytes, form: MshFormat) -> dict[int, list[int]]:
-    """Group numbers of each surface entity, from the section $Entities of version 4.1.
+def groups_of_entities(section: bytes, form: MshFormat, dimension: int) -> dict[int, list[int]]:
+    """Group numbers of each entity of a dimension, from the section $Entities of version 4.
 
     Raises:
         InputError: the section ends early or holds words where numbers belong.
@@ -114,18 +116,19 @@ def groups_of_surfaces(section: bytes, form: MshFormat) -> dict[int, list[int]]:
     try:
         counts = [numbers.size() for _ in range(4)]
         groups = {}
-        for dimension in range(SURFACE + 1):
-            found = [_entity(numbers, dimension) for _ in range(counts[dimension])]
+        for lower in range(dimension + 1):
+            reals = 3 if lower == 0 and form.version == "4.1" else 6
+            found = [_entity(numbers, lower, reals) for _ in range(counts[lower])]
             groups = dict(found)
     except ValueError:
         raise InputError("has a damaged section $Entities; export it again") from None
     return groups
 
 
-def _entity(numbers: _Numbers, dimension: int) -> tuple[int, list[int]]:
+def _entity(numbers: _Numbers, dimension: int, reals: int) -> tuple[int, list[int]]:
     """Read number and groups of the next entity (a group's sign tells orientation only)."""
     (tag,) = numbers.ints(1)
-    numbers.skip_reals(3 if dimension == 0 else 6)
+    numbers.skip_reals(reals)
     groups = [abs(group) for group in numbers.ints(numbers.size())]
     if dimension > 0:
         numbers.ints(numbers.size())
