@@ -32,9 +32,9 @@ class Stage:
         self.calls["load"] = path
         return self._scene(7.0)
 
-    def scene_from_files(self, paths: list[str], unit: str) -> Any:
+    def scene_from_files(self, paths: list[str], unit: str, split: bool = False) -> Any:
         """Play the reader of mesh files."""
-        self.calls["load"] = (paths, unit)
+        self.calls["load"] = (paths, unit, "split") if split else (paths, unit)
         return self._scene(1.0)
 
     def extract(self, scene: Any, tolerance: float, **options: Any) -> Any:

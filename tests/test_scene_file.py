@@ -68,7 +68,7 @@ def test_what_may_be_left_out(folder):
 
 
 ROD = '[[conductor]]\nname = "rod"\nmesh = "rod.stl"\n'
-KNOWN = "known are name, mesh, shape, part, unit, body, place, state, node"
+KNOWN = "known are name, mesh, shape, part, unit, body, place, state, node, split"
 
 
 @pytest.mark.parametrize(
@@ -96,7 +96,7 @@ KNOWN = "known are name, mesh, shape, part, unit, body, place, state, node"
         ('unit = "mm"\n[conductor]\nname = "rod"\n',
          "conductor: found a single value or [conductor]; write [[conductor]]"),
         ('unit = "mm"\nconductor = [1]\n', "conductor 1: found 1, needs a table with "
-         "name and mesh and shape and part and unit and body and place and state and node"),
+         "name and mesh and shape and part and unit and body and place and state and node and split"),
         ('unit = "mm"\n[[conductor]]\nmesh = "rod.stl"\n', "conductor 1: name: missing"),
         ('unit = "mm"\n[[conductor]]\nname = "rod"\n',
          'conductor 1 ("rod"): mesh: missing; give the name of a mesh file, or a shape'),
@@ -215,11 +215,11 @@ def refused(kind, paths, unit="mm") -> str:
 def test_refused_mesh_files(folder, monkeypatch):
     monkeypatch.chdir(folder)
     write_cube(folder / "bodies" / "rod.stl")
-    assert refused(UsageError, []) == ("no mesh files given; name at least one STL or MSH file")
+    assert refused(UsageError, []) == ("no mesh files given; name at least one mesh file")
     assert refused(UsageError, ["rod.stl"], "ft").startswith("unit: found 'ft'")
     assert refused(InputError, ["none.stl"]) == "none.stl: no such file"
-    assert refused(InputError, ["rod.step"]) == (
-        "rod.step: unknown kind of mesh file (.step); known are .stl, .msh"
+    assert refused(InputError, ["rod.dwg"]).startswith(
+        "rod.dwg: unknown kind of mesh file (.dwg); known are .stl, .msh, "
     )
     assert refused(InputError, ["rod.stl", "bodies/rod.stl"]) == (
         'two conductors would be called "rod" (from rod.stl and bodies/rod.stl); '

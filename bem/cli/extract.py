@@ -112,7 +112,7 @@ def _add_output_options(parser: argparse.ArgumentParser) -> None:
 def run(args: argparse.Namespace) -> int:
     """Extract, deliver, and tell how it went by the exit code."""
     check_outputs(args, args.files)
-    check_files(args.files, args.unit)
+    check_files(args.files, args.unit, args.split)
     scene = _load(args)
     pairs = match_pairs(args.pair, [conductor.name for conductor in scene.conductors])
     result = _extract(scene, pairs, args)
@@ -122,7 +122,7 @@ def run(args: argparse.Namespace) -> int:
 
 
 def _load(args: argparse.Namespace) -> Scene:
-    scene = load(args.files, args.unit)
+    scene = load(args.files, args.unit, args.split)
     if args.surroundings_permittivity is not None:
         scene.relative_permittivity = args.surroundings_permittivity
     return scene

@@ -38,8 +38,8 @@ def add_parser(subparsers: Any) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Inspect, print all findings, and tell by the exit code whether the scene can be solved."""
-    check_files(args.files, args.unit)
-    scene = load(args.files, args.unit)
+    check_files(args.files, args.unit, args.split)
+    scene = load(args.files, args.unit, args.split)
     return _inspect(scene)
 
 

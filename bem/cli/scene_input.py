@@ -21,6 +21,11 @@ def add_files(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--unit", metavar="UNIT", help=f"unit of mesh coordinates: {', '.join(METRES_PER)}"
     )
+    parser.add_argument(
+        "--split",
+        action="store_true",
+        help="each body in a mesh file that names none is a conductor of its own",
+    )
 
 
 def is_scene(name: str) -> bool:
@@ -28,7 +33,7 @@ def is_scene(name: str) -> bool:
     return name.lower().endswith(".toml")
 
 
-def check_files(files: Sequence[str], unit: str | None) -> None:
+def check_files(files: Sequence[str], unit: str | None, split: bool = False) -> None:
     """Refuse files and a unit that do not go together.
 
     Raises:
@@ -50,11 +55,13 @@ def check_files(files: Sequence[str], unit: str | None) -> None:
             f"--unit {unit}: a scene file states its own unit; "
             f"drop the option or change the unit in {scenes[0]}"
         )
+    if scenes and split:
+        raise UsageError(f"--split: goes with mesh files; write split = true in {scenes[0]}")
     if unit is not None:
         metres_per(unit)
 
 
-def load(files: Sequence[str], unit: str | None) -> Scene:
+def load(files: Sequence[str], unit: str | None, split: bool = False) -> Scene:
     """Load the scene of files that ``check_files`` let pass.
 
     Raises:
@@ -64,4 +71,4 @@ def load(files: Sequence[str], unit: str | None) -> Scene:
 
     if unit is None:
         return load_scene(files[0])
-    return scene_from_files(files, unit)
+    return scene_from_files(files, unit, split=split)

@@ -64,7 +64,8 @@ def read_surface(
         _check_unit(mesh.unit, metres_per_unit)
         faces = mesh.faces_of(part)
         surface, changes = weld(Surface(mesh.vertices * metres_per_unit, faces))
-    return replace(surface, rounding=mesh.rounding * metres_per_unit), [*mesh.changes_of(part), *changes]
+    surface = replace(surface, rounding=mesh.rounding * metres_per_unit)
+    return surface, [*mesh.changes_of(part), *changes]
 
 
 def _check_unit(stated: str | None, metres_per_unit: float) -> None:

@@ -11,6 +11,7 @@ import importlib
 import re
 from dataclasses import replace
 from pathlib import Path
+from types import SimpleNamespace
 from typing import Any
 
 import numpy as np
@@ -20,6 +21,7 @@ from bem.geometry.cell_mesh import cell_mesh
 from bem.geometry.mesh_data import MeshData
 from bem.geometry.quiet import quiet
 from bem.geometry.stl import HALF_SINGLE
+from bem.geometry.vtk_legacy import VtkMesh, read_legacy
 
 KINDS = {
     ".vtk": "vtk",
@@ -44,6 +46,9 @@ MOST_VALUES = 1000
 """A cell array with more values than this numbers something other than parts."""
 
 _UNKNOWN_CELL = re.compile(r"cannot handle \(type (\d+)\)")
+_MARKER = re.compile(
+    r"^\s*MARKER_TAG\s*=[ \t]*(.*?)[ \t]*$(?:\s*MARKER_ELEMS\s*=\s*(\d+))?", re.MULTILINE
+)
 _LINES_AND_POINTS = {2, 4}
 """Numbers of VTK's chains of lines and sets of points, which the library does not know."""
 
@@ -57,7 +62,9 @@ def read_general(path: Path) -> MeshData:
     """
     with path.open("rb"):
         pass
-    return _mesh_data(_read(path, KINDS[path.suffix.lower()]))
+    kind = KINDS[path.suffix.lower()]
+    legacy = read_legacy(path) if kind == "vtk" else None
+    return _mesh_data(_read(path, kind) if legacy is None else _as_mesh(legacy))
 
 
 def _read(path: Path, kind: str) -> Any:
@@ -85,12 +92,25 @@ def _read(path: Path, kind: str) -> Any:
 
 def _with_markers(mesh: Any, path: Path) -> Any:
     """Mesh of an SU2 file with its markers as sets; the library numbers them from 1."""
-    names = re.findall(r"^\s*MARKER_TAG\s*=\s*(.*?)\s*$", path.read_text(), re.MULTILINE)
     tags = mesh.cell_data.pop("su2:tag", [])
-    for number, name in enumerate(names, 1):
-        found = int(name) if name.lstrip("-").isdigit() else number
-        mesh.cell_sets[name] = [np.flatnonzero(np.asarray(block) == found) for block in tags]
+    for number, (name, count) in enumerate(_MARKER.findall(path.read_text()), 1):
+        tag = int(name) if name.lstrip("-").isdigit() else number
+        found = [np.flatnonzero(np.asarray(block) == tag) for block in tags]
+        mesh.cell_sets[name] = found
+        if sum(map(len, found)) != int(count or -1):
+            raise InputError(f"is cut short: marker {name} lacks cells; export it again")
     return mesh
+
+
+def _as_mesh(found: VtkMesh) -> Any:
+    """Mesh as the library would make it, without checks."""
+    ends = np.cumsum([len(nodes) for _, nodes in found.blocks])[:-1]
+    return SimpleNamespace(
+        points=found.points,
+        cells=[SimpleNamespace(type=kind, data=nodes) for kind, nodes in found.blocks],
+        cell_data={name: np.split(array, ends) for name, array in found.arrays.items()},
+        cell_sets={},
+    )
 
 
 def _reason(problem: Exception) -> str:
@@ -105,7 +125,7 @@ def _mesh_data(mesh: Any) -> MeshData:
     blocks = [(block.type, np.asarray(block.data, dtype=np.int64)) for block in mesh.cells]
     points = np.asarray(mesh.points, dtype=np.float64)
     if points.ndim != 2 or points.shape[1] not in (2, 3):
-        raise InputError("its points have neither two nor three coordinates; export it again")
+        raise InputError("lists no points with two or three coordinates; export it again")
     points = np.pad(points, ((0, 0), (0, 3 - points.shape[1])))
     sets = _sets(mesh)
     found = cell_mesh(points, blocks, sets | _values(mesh), set(sets))
@@ -119,8 +139,8 @@ def _sets(mesh: Any) -> dict[str, np.ndarray]:
     first = _first(mesh)
     sets: dict[str, np.ndarray] = {}
     for name, members in mesh.cell_sets.items():
-        cells = [start + np.asarray(m) for start, m in zip(first, members, strict=True) if len(m)]
-        sets[name.strip()] = np.concatenate([np.empty(0), *cells]).astype(np.int64)
+        found = [start + np.asarray(m) for start, m in zip(first, members, strict=True) if len(m)]
+        sets[name.strip()] = np.concatenate([np.empty(0), *found]).astype(np.int64)
     tags = _whole_numbers(mesh, "cell_tags")
     for number, names in getattr(mesh, "cell_tags", {}).items():
         for name in names if tags is not None else ():
@@ -152,4 +172,4 @@ def _whole_numbers(mesh: Any, array: str) -> np.ndarray | None:
     blocks = mesh.cell_data.get(array, [])
     numbers = [np.asarray(block) for block in blocks]
     flat = [n.reshape(-1) for n in numbers if n.dtype.kind in "iu" and n.size == len(n)]
-    return np.concatenate(flat) if numbers and len(flat) == len(numbers) else None
+    return np.concatenate(flat) if flat and len(flat) == len(numbers) else None

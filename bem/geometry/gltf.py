@@ -68,7 +68,8 @@ def _chunks(data: bytes) -> tuple[dict[str, Any], bytes]:
         raise InputError(
             f"is cut short: {length:,} bytes announced, found {len(data):,}; export it again"
         )
-    found, place = {}, 12
+    found: dict[int, bytes] = {}
+    place = 12
     while place + 8 <= length:
         size, kind = struct.unpack_from("<II", data, place)
         found.setdefault(kind, data[place + 8 : place + 8 + size])
@@ -132,8 +133,10 @@ def _bare(header: dict[str, Any], buffers: list[bytes]) -> tuple[dict[str, Any],
         view | {"buffer": 0, "byteOffset": starts[view["buffer"]] + view.get("byteOffset", 0)}
         for view in header.get("bufferViews", [])
     ]
-    nodes = [{key: node[key] for key in _PLACE if key in node} for node in header.get("nodes", [])]
     meshes = [_bare_mesh(number, mesh) for number, mesh in enumerate(header.get("meshes", []))]
+    nodes = [{key: node[key] for key in _PLACE if key in node} for node in header.get("nodes", [])]
+    if not all(_is_sound(node, len(meshes)) for node in nodes):
+        raise _damaged()
     every = sum(len(mesh["primitives"]) for mesh in header.get("meshes", []))
     bare = {
         "asset": {"version": "2.0"},
@@ -146,6 +149,12 @@ def _bare(header: dict[str, Any], buffers: list[bytes]) -> tuple[dict[str, Any],
         "buffers": [{"byteLength": starts[-1]}],
     }
     return bare, every - sum(len(mesh["primitives"]) for mesh in meshes)
+
+
+def _is_sound(node: dict[str, Any], meshes: int) -> bool:
+    """Whether a node's mesh exists and its place is finite; the library would drop it if not."""
+    place = [number for key in _PLACE[:4] for number in node.get(key, ())]
+    return node.get("mesh", -1) < meshes and bool(np.isfinite(place).all())
 
 
 def _bare_mesh(number: int, mesh: dict[str, Any]) -> dict[str, Any]:

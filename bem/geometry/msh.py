@@ -40,7 +40,8 @@ def read_msh(path: Path) -> MeshData:
             raise InputError(f"has no section ${name}; export the mesh again")
     mesh = _read(sections, form)
     blocks = [(block.type, _nodes(block)) for block in mesh.cells]
-    groups, named = {}, set()
+    groups: dict[str, np.ndarray] = {}
+    named: set[str] = set()
     for dimension in (SURFACE, VOLUME):
         names = group_names(sections.get("PhysicalNames", b""), dimension)
         here = _groups(names, _members(sections, form, mesh, dimension))

@@ -5,14 +5,12 @@ from __future__ import annotations
 import re
 from pathlib import Path
 
-import numpy as np
-
 from bem.errors import InputError
 from bem.geometry.mesh_data import MeshData
 from bem.geometry.polygons import Polygons, cut_polygons
 from bem.geometry.text_numbers import numbers
 
-_HEADER = re.compile(rb"\s*((?:ST)?C?N?OFF)\b")
+_HEADER = re.compile(rb"\s*(?:ST|C|N)*OFF\b")
 _COMMENT = re.compile(rb"#[^\r\n]*")
 
 

@@ -70,7 +70,9 @@ def cut_polygons(vertices: np.ndarray, polygons: Polygons) -> Cut:
         faces[start[rows], :size] = polygons.corners[first[rows, None] + np.arange(size)]
     for row in large:
         corners = polygons.corners[first[row] : first[row] + sizes[row]]
-        faces[start[row] : start[row] + count[row], :3] = corners[_ears(vertices[corners], row)]
+        faces[start[row] : start[row] + count[row], :3] = corners[
+            _ears(vertices[corners], int(row))
+        ]
     lines = [f"{counted(len(large), 'polygon')} with more than four corners cut into triangles"]
     return Cut(faces, source, tuple(lines[: len(large)]))
 
@@ -89,19 +91,44 @@ def _check(vertices: int, polygons: Polygons) -> None:
 def _ears(points: np.ndarray, number: int) -> np.ndarray:
     """Triangles (n - 2, 3) of the corners (n, 3) of polygon ``number``."""
     flat = _in_plane(points, number)
+    if _crosses_itself(flat):
+        raise _crossed(points, number)
     ring = list(range(len(points)))
     ears: list[list[int]] = []
     k: int | None = 0
     while len(ring) > 3:
         k = _next_ear(flat, ring, (k or 0) + 1)
         if k is None:
-            raise InputError(
-                f"the sides of face {number + 1}, a polygon with {len(points)} corners, cross each "
-                "other; export it as triangles"
-            )
+            raise _crossed(points, number)
         ears.append([ring[k - 1], ring[k], ring[(k + 1) % len(ring)]])
         del ring[k]
     return np.array([*ears, ring])
+
+
+def _crossed(points: np.ndarray, number: int) -> InputError:
+    return InputError(
+        f"the sides of face {number + 1}, a polygon with {len(points)} corners, cross each other; "
+        "export it as triangles"
+    )
+
+
+def _crosses_itself(flat: np.ndarray) -> bool:
+    """Whether any two sides of a polygon (n, 2) cross at inner points."""
+    after = np.roll(flat, -1, axis=0)
+    for start, stop in zip(flat, after, strict=True):
+        d, others = stop - start, after - flat
+        here = _sides_of(d, flat - start) * _sides_of(d, after - start)
+        there = _sides_of(others, start - flat) * _sides_of(others, stop - flat)
+        if ((here < 0) & (there < 0)).any():
+            return True
+    return False
+
+
+def _sides_of(d: np.ndarray, to: np.ndarray) -> np.ndarray:
+    """On which side of the direction ``d`` the vectors ``to`` point: -1, 0 or 1."""
+    area2 = d[..., 0] * to[..., 1] - d[..., 1] * to[..., 0]
+    size = np.linalg.norm(d, axis=-1) * np.linalg.norm(to, axis=-1)
+    return np.sign(area2) * (np.abs(area2) > STRAIGHT * size)
 
 
 def _in_plane(points: np.ndarray, number: int) -> np.ndarray:
@@ -150,6 +177,5 @@ def _holds_any(t: np.ndarray, points: np.ndarray) -> bool:
     """Whether any of the points but its own corners lies in the triangle or on its rim."""
     own = (points[:, None] == t[None]).all(axis=2).any(axis=1)
     sides = np.roll(t, -1, axis=0) - t
-    to = points[:, None] - t[None]
-    left = sides[:, 0] * to[..., 1] - sides[:, 1] * to[..., 0]
-    return bool(((left >= 0.0).all(axis=1) & ~own).any())
+    inside = (_sides_of(sides, points[:, None] - t[None]) >= 0).all(axis=1)
+    return bool((inside & ~own).any())

@@ -33,6 +33,8 @@ _UNIT = re.compile(
     rb"SI_UNIT\s*\(\s*(\$|\.\w+\.)\s*,\s*\.METRE\.\s*\)|CONVERSION_BASED_UNIT\s*\(\s*('\w+)",
     re.IGNORECASE,
 )
+_TEXT = re.compile(rb"'[^']*'|/\*.*?\*/", re.DOTALL)
+_USED, _DEFINED = re.compile(rb"#(\d+)"), re.compile(rb"#(\d+)\s*=")
 _NAMES = {
     "$": "m", ".CENTI.": "cm", ".MILLI.": "mm", ".MICRO.": "um", ".NANO.": "nm",
     "'INCH": "in", "'MIL": "mil",
@@ -48,7 +50,9 @@ def read_step(path: Path) -> MeshData:
         InputError: the extra is missing, or the file is damaged or holds no body.
         OSError: the file cannot be opened.
     """
-    unit = _unit(path.read_bytes())
+    data = path.read_bytes()
+    _check(data)
+    unit = _unit(data)
     if importlib.util.find_spec("gmsh") is None:
         raise InputError(
             "is a STEP file, which needs an extra: pip install 'bem-capacitance[step]'"
@@ -59,12 +63,21 @@ def read_step(path: Path) -> MeshData:
     return assembled(leaves, unit)
 
 
-def _unit(data: bytes) -> str:
-    """Unit of the file's lengths; mm if it states several, or one that is unknown here."""
+def _check(data: bytes) -> None:
+    """Refuse what the CAD kernel would read in part without a word."""
     if b"ISO-10303-21" not in data[:1000]:
         raise InputError("is not STEP: it does not start with ISO-10303-21; export it again")
     if b"END-ISO-10303-21" not in data:
         raise InputError("is cut short: it does not end with END-ISO-10303-21; export it again")
+    bare = _TEXT.sub(b"", data)
+    lost = set(_USED.findall(bare)) - set(_DEFINED.findall(bare))
+    if lost:
+        number = min(map(int, lost))
+        raise InputError(f"is damaged: it uses #{number}, which it does not hold; export it again")
+
+
+def _unit(data: bytes) -> str:
+    """Unit of the file's lengths; mm if it states several, or one that is unknown here."""
     found = {(metric or other).decode().upper() for metric, other in _UNIT.findall(data)}
     lengths = found.intersection(_CONVERTED) or {name for name in found if name[0] != "'"}
     return _NAMES.get(lengths.pop(), "mm") if len(lengths) == 1 else "mm"
@@ -80,13 +93,14 @@ def _leaves(path: Path, per_millimetre: float) -> list[Leaf]:
             tags, places = arrays["tags"][order], per_millimetre * arrays["places"][order]
             corners = [np.searchsorted(tags, arrays[f"body{k}"]) for k in range(len(names))]
     return [
-        Leaf(_levels(name, number), places[(used := np.unique(triangles))], _renumbered(triangles))
+        Leaf(_levels(name, number), places[np.unique(triangles)], _renumbered(triangles))
         for number, (name, triangles) in enumerate(zip(names, corners, strict=True), 1)
     ]
 
 
 def _renumbered(triangles: np.ndarray) -> np.ndarray:
-    used, place = np.unique(triangles, return_inverse=True)
+    """Triangles as faces of the nodes that they use."""
+    _, place = np.unique(triangles, return_inverse=True)
     return as_faces(place.reshape(-1, 3).astype(np.int64))
 
 

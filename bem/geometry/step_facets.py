@@ -32,7 +32,7 @@ def main(path: str, folder: str, angle: str, chord: str) -> None:
     gmsh.option.setNumber("Mesh.StlLinearDeflectionRelative", 1)
     gmsh.option.setNumber("Mesh.StlLinearDeflection", float(chord))
     gmsh.option.setNumber("Mesh.StlAngularDeflection", 2.0 * float(angle))
-    gmsh.model.occ.importShapes(path)
+    gmsh.model.occ.importShapes(path, highestDimOnly=False)
     gmsh.model.occ.synchronize()
     gmsh.model.mesh.importStl()
     _write(gmsh.model, Path(folder))
@@ -45,12 +45,11 @@ def _write(model: Any, folder: Path) -> None:
     sheets = _shells(model, [tag for _, tag in model.getEntities(2) if tag not in inner])
     bodies = [*solids, *(([(2, tag) for tag in faces], faces) for faces in sheets)]
     tags, places, _ = model.mesh.getNodes()
-    np.savez(
-        folder / "arrays.npz",
-        tags=tags,
-        places=places.reshape(-1, 3),
-        **{f"body{k}": _triangles(model, faces) for k, (_, faces) in enumerate(bodies)},
-    )
+    arrays: dict[str, Any] = {
+        f"body{k}": _triangles(model, faces) for k, (_, faces) in enumerate(bodies)
+    }
+    with (folder / "arrays.npz").open("wb") as file:
+        np.savez(file, tags=tags, places=places.reshape(-1, 3), **arrays)
     names = [_name(model, entities) for entities, _ in bodies]
     (folder / "names.json").write_text(json.dumps(names))
 

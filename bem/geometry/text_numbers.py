@@ -19,9 +19,10 @@ def numbers(words: Sequence[bytes], kind: type, kind_of_file: str) -> np.ndarray
         return np.array(words, dtype="S").astype(np.dtype(kind))
     except (ValueError, OverflowError):
         bad = next((word for word in words if not _is(word, kind)), b"?")
+        shown = bad[:30].decode("ascii", "replace")
         raise InputError(
-            f"cannot be read as {kind_of_file}: found {bad[:30].decode('ascii', 'replace')!r} where "
-            "a number belongs; export it again"
+            f"cannot be read as {kind_of_file}: found {shown!r} where a number belongs; "
+            "export it again"
         ) from None
 
 

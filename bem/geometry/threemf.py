@@ -128,7 +128,7 @@ def _leaves(archive: _Archive, link: _Link, above: tuple[str, ...]) -> Iterator[
         raise InputError("is 3MF with objects that hold themselves; export it again")
     thing = archive.model(link.model).objects.get(link.number)
     if thing is None:
-        raise InputError(f"is 3MF that places object {link.number}, which it lacks; export it again")
+        raise InputError(f"places object {link.number}, which it lacks; export it again")
     names = (*above, thing.name or _nearest(above) or f"object {link.number}")
     if len(thing.triangles):
         places = thing.vertices @ link.matrix[:3] + link.matrix[3]

@@ -69,8 +69,8 @@ def text(where: str, value: Any) -> str:
     return value
 
 
-def one_of(where: str, value: Any, allowed: tuple[str, ...]) -> str:
-    """Return one of the allowed words.
+def one_of(where: str, value: Any, allowed: tuple[Any, ...]) -> Any:
+    """Return one of the allowed words or values.
 
     Raises:
         InputError: it is none; the message lists those allowed.

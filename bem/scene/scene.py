@@ -102,19 +102,21 @@ class Scene:
         unit: str | None = None,
         state: str = TERMINAL,
         node: str | None = None,
+        split: bool = False,
     ) -> Scene:
         """Add a conductor from a shape or a mesh file; returns the scene itself.
 
         Args:
             name: unique in the scene.
             shape: faces in the scene's unit; or else
-            mesh: STL or Gmsh MSH file, and
+            mesh: a file of a kind in ``bem.geometry.files.SUFFIXES``, and
             part: a named portion of it.
             place: scaled first, then turned about the origin, then shifted.
             body: "solid" (a closed surface is solid metal) or "shell" (hollow).
             unit: of the numbers in the mesh file, if not the scene's.
             state: "terminal" of the matrix, "grounded", or "floating" with no net charge.
             node: conductors with one node are tied, and have one state.
+            split: each body in the mesh file is a conductor of its own, "NAME 1", "NAME 2", ...
 
         Raises:
             InputError: a value does not fit, or the file cannot be used.
@@ -125,7 +127,9 @@ class Scene:
         checks.one_of(f"{entry}: body", body, BODIES)
         check_wiring(entry, (name, state, node), self.conductors)
         where = place_or_refuse(f"{entry}: place", place)
-        _check_choice(entry, {"shape": shape, "mesh": mesh, "part": part, "unit": unit})
+        checks.one_of(f"{entry}: split", split, (False, True))
+        given = {"mesh": mesh, "shape": shape, "part": part, "unit": unit, "split": split or None}
+        _check_choice(entry, given)
         try:
             if mesh is None:
                 surface, source = self._from_shape(shape)
@@ -136,7 +140,13 @@ class Scene:
             raise type(problem)(f"{entry}: {problem}") from None
         if where != Place():
             surface = surface.placed(where.matrix, metres_per(self.unit) * np.array(where.shift))
-        self.conductors.append(Conductor(name, surface, body, source, state, node))
+        whole = Conductor(name, surface, body, source, state, node)
+        return self._append(entry, _pieces(whole) if split else [whole])
+
+    def _append(self, entry: str, conductors: list[Conductor]) -> Scene:
+        for conductor in conductors:
+            self._check_name(entry, conductor.name)
+        self.conductors += conductors
         return self
 
     def set_ground_plane(
@@ -214,6 +224,25 @@ def _repaired(surface: Surface, source: Source, body: str) -> tuple[Surface, Sou
     return surface, replace(source, changes=(*source.changes, *changes))
 
 
+def _pieces(whole: Conductor) -> list[Conductor]:
+    """One conductor for each body of a surface."""
+    from bem.geometry.split import split_bodies
+
+    surfaces = split_bodies(whole.surface)
+    return [
+        replace(
+            whole,
+            name=f"{whole.name} {number}",
+            surface=surface,
+            source=replace(
+                whole.source,
+                changes=(*whole.source.changes, f"piece {number} of {len(surfaces)}"),
+            ),
+        )
+        for number, surface in enumerate(surfaces, 1)
+    ]
+
+
 def entry_name(number: int, name: Any) -> str:
     """Name an entry as messages do: 'conductor 2 ("probe rod")'."""
     return f'conductor {number} ("{name}")' if isinstance(name, str) else f"conductor {number}"
@@ -225,7 +254,7 @@ def _check_choice(entry: str, given: dict[str, Any]) -> None:
         raise InputError(f"{entry}: found a shape and a mesh; give one of them")
     if given["shape"] is None and given["mesh"] is None:
         raise InputError(f"{entry}: mesh: missing; give the name of a mesh file, or a shape")
-    for key in ("part", "unit"):
+    for key in ("part", "unit", "split"):
         if given["mesh"] is None and given[key] is not None:
             raise InputError(f"{entry}: {key}: goes with a mesh file only; drop it for a shape")
     if given["part"] is not None:

@@ -13,6 +13,7 @@ A scene file::
     name = "probe rod"
     mesh = "probe_rod.stl"         # relative to this file; or a shape, see bem.scene.shape_entry
     part = "rod"                   # optional: a named portion of the file
+    split = true                   # optional: each body in it is a conductor, "probe rod 1", ...
     unit = "mm"                    # optional: of the mesh file, if not the scene's
     body = "solid"                 # optional: or "shell", hollow
     state = "grounded"             # optional: or "floating", "terminal"
@@ -39,7 +40,7 @@ from bem.scene.states import check_terminals
 from bem.units import METRES_PER
 
 _TOP = ("unit", "surroundings", "ground_plane", "mirror_plane", "conductor")
-_CONDUCTOR = ("name", "mesh", "shape", "part", "unit", "body", "place", "state", "node")
+_CONDUCTOR = ("name", "mesh", "shape", "part", "unit", "body", "place", "state", "node", "split")
 _POSITION = re.compile(r"\(at (line \d+, column \d+|end of document)\)")
 
 
@@ -62,19 +63,22 @@ def load_scene(path: str | Path) -> Scene:
 
 
 def scene_from_files(
-    paths: Sequence[str | Path], unit: str, relative_permittivity: float = 1.0
+    paths: Sequence[str | Path],
+    unit: str,
+    relative_permittivity: float = 1.0,
+    split: bool = False,
 ) -> Scene:
     """Scene of mesh files alone.
 
-    Each STL file is one conductor, named after the file; an MSH file gives one conductor
-    for each named surface group, or a single one named after the file if it names none.
+    A file that names bodies gives one conductor for each of them; any other file, such as
+    STL, is one conductor named after the file, or one for each of its bodies if ``split``.
 
     Raises:
         UsageError: no files, or the unit is unknown.
         InputError: a file cannot be used, or two conductors would have one name.
     """
     if not paths:
-        raise UsageError("no mesh files given; name at least one STL or MSH file")
+        raise UsageError("no mesh files given; name at least one mesh file")
     scene = Scene(unit, relative_permittivity)
     origin: dict[str, Path] = {}
     for path in map(Path, paths):
@@ -85,7 +89,7 @@ def scene_from_files(
                     f'{path}); name them in a scene file: [[conductor]] name = "...", mesh = "..."'
                 )
             origin[name] = path
-            scene.add_conductor(name, mesh=path, part=part)
+            scene.add_conductor(name, mesh=path, part=part, split=split and part is None)
     return scene
 
 
