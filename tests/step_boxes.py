@@ -52,10 +52,14 @@ class StepWriter:
             kind = "MANIFOLD_SURFACE_SHAPE_REPRESENTATION"
         return self._shape(name, [item], kind)
 
-    def solid(self, corners: np.ndarray) -> str:
+    def bodies(self, name: str, items: list[str]) -> None:
+        """Add a product of several solids."""
+        self._shape(name, items, "ADVANCED_BREP_SHAPE_REPRESENTATION")
+
+    def solid(self, corners: np.ndarray, name: str = "") -> str:
         """Add a box with corners numbered x + 2 y + 4 z."""
         shell = self.add(f"CLOSED_SHELL('',({self._faces(corners, 6)}))")
-        return self.add(f"MANIFOLD_SOLID_BREP('',{shell})")
+        return self.add(f"MANIFOLD_SOLID_BREP('{name}',{shell})")
 
     def sheet(self, corners: np.ndarray, faces: int) -> str:
         """Add an open surface of the first few faces of a box."""

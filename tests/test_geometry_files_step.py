@@ -61,6 +61,22 @@ def test_a_surface_that_belongs_to_no_solid(tmp_path):
     assert surface.bounds == pytest.approx(MM * np.array([[0, 0, 5], [4, 4, 9]]))
 
 
+def test_bodies_of_one_product(tmp_path):
+    """Solids of one product keep their names; those without are numbered after it."""
+    boxes = [box((0, 0, 0), (1, 1, 1)), box((3, 0, 0), (4, 2, 1))]
+    for names, found in (
+        (("rod", "pin \\X2\\00B5\\X0\\''s"), ("rod", "pin \u00b5's")),
+        (("", ""), ("part 1", "part 2")),
+    ):
+        writer = StepWriter()
+        solids = [writer.solid(b, name) for b, name in zip(boxes, names, strict=True)]
+        writer.bodies("part", solids)
+        path = save(tmp_path / "two.step", writer.text())
+        assert bodies_in(path) == Bodies(found, 0)
+        check_boxes(path, "mm", part=found[1])
+        assert len(read_surface(path, MM, "part")[0].faces) == 24
+
+
 @pytest.fixture
 def round_bodies(tmp_path):
     """A long thin cylinder and a large ball, written by the CAD kernel itself."""

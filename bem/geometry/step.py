@@ -23,6 +23,7 @@ from bem.geometry import step_facets
 from bem.geometry.assembly import Leaf, assembled
 from bem.geometry.cells import as_faces
 from bem.geometry.mesh_data import MeshData
+from bem.geometry.step_names import completed
 from bem.units import METRES_PER
 
 FACETS_PER_TURN = 48
@@ -57,7 +58,7 @@ def read_step(path: Path) -> MeshData:
         raise InputError(
             "is a STEP file, which needs an extra: pip install 'bem-capacitance[step]'"
         )
-    leaves = _leaves(path, 1e-3 / METRES_PER[unit])
+    leaves = _leaves(path, data, 1e-3 / METRES_PER[unit])
     if not leaves:
         raise InputError("is STEP without a solid or a surface; export it again")
     return assembled(leaves, unit)
@@ -83,11 +84,11 @@ def _unit(data: bytes) -> str:
     return _NAMES.get(lengths.pop(), "mm") if len(lengths) == 1 else "mm"
 
 
-def _leaves(path: Path, per_millimetre: float) -> list[Leaf]:
+def _leaves(path: Path, data: bytes, per_millimetre: float) -> list[Leaf]:
     """Bodies of a file, their coordinates times a factor."""
     with tempfile.TemporaryDirectory() as folder:
         _run(path, folder)
-        names = json.loads((Path(folder) / "names.json").read_text())
+        names = completed(json.loads((Path(folder) / "names.json").read_text()), data)
         with np.load(Path(folder) / "arrays.npz") as arrays:
             order = np.argsort(arrays["tags"])
             tags, places = arrays["tags"][order], per_millimetre * arrays["places"][order]
