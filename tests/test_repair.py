@@ -315,3 +315,50 @@ def test_a_box_on_a_larger_one_in_a_shell_keeps_the_wall_once():
     both = joined(box((0, 0, 0), (2, 2, 1)), box((0.5, 0.5, 1), (1, 1, 1.5)))
     laid, _ = mended(both, solid=False)
     assert area(laid) == pytest.approx(2 * 4 + 8 + 4 * 0.25 + 0.25)
+
+
+# at random, against counted cells
+
+
+def lattice_boxes(seed: int) -> tuple[Surface, np.ndarray]:
+    """Some boxes with corners on a lattice, as one body, and the cells that they fill."""
+    random = np.random.default_rng(seed)
+    cells, boxes = np.zeros((7, 7, 7), dtype=bool), []
+    for _ in range(random.integers(2, 6)):
+        low = random.integers(0, 4, 3)
+        high = np.minimum(low + random.integers(1, 3, 3), 5)
+        cells[tuple(slice(a + 1, b + 1) for a, b in zip(low, high, strict=True))] = True
+        boxes.append(box(tuple(low.astype(float)), tuple(high.astype(float))))
+    return joined(*boxes), cells
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_boxes_on_a_lattice_become_their_union(seed):
+    body, cells = lattice_boxes(seed)
+    report = inspect(bem.Scene("m").add_conductor("a", body)).bodies[0]
+    outside = sum(int(np.diff(cells.astype(int), axis=k).astype(bool).sum()) for k in range(3))
+    assert report.volume == pytest.approx(cells.sum())
+    assert report.area == pytest.approx(outside)
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_turned_rectangles_on_a_lattice_become_their_union(seed):
+    """In two parallel planes, turned and in single precision."""
+    random = np.random.default_rng(seed)
+    cells, sheets = np.zeros((2, 6, 6), dtype=bool), []
+    for _ in range(8):
+        low, plane = random.integers(0, 4, 2), int(random.integers(0, 2))
+        high = low + random.integers(1, 3, 2)
+        cells[plane, low[0] : high[0], low[1] : high[1]] = True
+        sheets.append(rectangle(tuple(low.astype(float)), tuple(high.astype(float)), plane))
+    sheet = turned(joined(*sheets), seed)
+    rounded = Surface(sheet.vertices.astype(np.float32).astype(float), sheet.faces)
+    assert area(mended(rounded)[0]) == pytest.approx(cells.sum(), rel=1e-5)
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_a_patch_whose_corners_lie_on_sides(seed):
+    """Rounding puts them just beside: the largest facet must not be kept whole under it."""
+    body = turned(BODIES["ball"], seed)
+    laid, _ = mended(damages.with_a_patch(body))
+    assert area(laid) == pytest.approx(area(body), rel=1e-9)

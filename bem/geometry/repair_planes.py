@@ -17,6 +17,7 @@ from scipy.sparse.csgraph import connected_components
 from bem.geometry.quads import triangle_owners
 from bem.geometry.repair_pieces import with_triangles
 from bem.geometry.surface import Surface
+from bem.geometry.topology import corners_on
 
 
 def overlay(surface: Surface, pairs: np.ndarray, piece: np.ndarray, snap: float) -> Surface:
@@ -63,8 +64,9 @@ def _regions(corners: np.ndarray, piece: np.ndarray, snap: float) -> np.ndarray:
     side, normal = side / np.linalg.norm(side), normals[base] / size[base]
     axes = np.stack([side, np.cross(normal, side)])
     scale = float(np.ptp(corners.reshape(-1, 3), axis=0).max())
-    flat = (corners - corners[base, 0]) @ axes.T / scale
-    cut = _laid_over([_section(flat[piece == k]) for k in np.unique(piece)])
+    rims = [(rim - corners[base, 0]) @ axes.T / scale for rim in _rims(corners, snap)]
+    layers = [[rims[t] for t in np.flatnonzero(piece == k)] for k in np.unique(piece)]
+    cut = _laid_over([_section(layer) for layer in layers])
     points = np.concatenate([_meshed(region) for region in cut]).reshape(-1, 2)
     lifted = corners[base, 0] + scale * points @ axes
     off, nearest = cKDTree(corners.reshape(-1, 3)).query(lifted)
@@ -72,14 +74,34 @@ def _regions(corners: np.ndarray, piece: np.ndarray, snap: float) -> np.ndarray:
     return lifted.reshape(-1, 3, 3)
 
 
-def _section(triangles: np.ndarray) -> Any:
-    """Union of triangles (t, 3, 2) as a polygon of the library."""
+def _rims(corners: np.ndarray, snap: float) -> list[np.ndarray]:
+    """Rim (n, 3) of each triangle with the corners of others that lie on it.
+
+    Without these, rounding would leave such corners just off the side that they lie on.
+    """
+    points, index = np.unique(corners.reshape(-1, 3), axis=0, return_inverse=True)
+    index = index.reshape(-1, 3)
+    ends = np.stack([index, np.roll(index, -1, axis=1)], axis=2).reshape(-1, 2)
+    side, point = corners_on(points, ends, snap)
+    far = np.linalg.norm(points[point] - points[ends[side, 0]], axis=1)
+    side = np.concatenate([np.arange(len(ends)), side])
+    order = np.lexsort([np.concatenate([np.zeros(len(ends)), far]), side])
+    rim = np.concatenate([ends[:, 0], point])[order]
+    starts = np.searchsorted(side[order] // 3, np.arange(1, len(corners)))
+    return np.split(points[rim], starts)
+
+
+def _section(rims: list[np.ndarray]) -> Any:
+    """Union of polygons, each (n, 2), as one of the library."""
     from manifold3d import CrossSection, FillRule
 
-    u, v = triangles[:, 1] - triangles[:, 0], triangles[:, 2] - triangles[:, 0]
-    left = u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0] > 0.0
-    turned = np.where(left[:, None, None], triangles, triangles[:, ::-1])
-    return CrossSection(list(turned), FillRule.NonZero)
+    return CrossSection([rim if _is_left(rim) else rim[::-1] for rim in rims], FillRule.NonZero)
+
+
+def _is_left(rim: np.ndarray) -> bool:
+    """Whether a polygon runs counterclockwise."""
+    after = np.roll(rim, -1, axis=0)
+    return float((rim[:, 0] * after[:, 1] - rim[:, 1] * after[:, 0]).sum()) > 0.0
 
 
 def _laid_over(layers: list[Any]) -> list[Any]:
