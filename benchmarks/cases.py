@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 import sys
 from collections.abc import Callable
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 import numpy as np
@@ -69,6 +69,8 @@ class Case:
         like: name of another case whose truth is this one's too.
         gap: smallest gap, m, which tells how rounded coordinates move the truth.
         may_refuse: whether an error in place of a result is acceptable.
+        grounded: whether the plane z = 0 is at potential zero.
+        mirrors: axes of mirror planes through the origin, as in "xy".
     """
 
     name: str
@@ -77,6 +79,8 @@ class Case:
     like: str | None = None
     gap: float = math.inf
     may_refuse: bool = False
+    grounded: bool = False
+    mirrors: str = ""
 
     @property
     def flat(self) -> bool:
@@ -86,6 +90,10 @@ class Case:
     def scene(self) -> bem.Scene:
         """Make the scene."""
         scene = bem.Scene(unit="m")
+        if self.grounded:
+            scene.set_ground_plane(z=0.0)
+        for axis in self.mirrors:
+            scene.add_mirror_plane(**{axis: 0.0})
         for part in self.parts:
             scene.add_conductor(part.name, part.surface, body=part.body)
         return scene
@@ -154,16 +162,48 @@ def _published_case(record: Reference) -> Case:
     slack = np.full((n, n + 1), record.uncertainty)
     slack[:, -1] *= n
     parts = tuple(_part(k + 1, described) for k, described in enumerate(record.bodies))
-    return Case(record.name, parts, Truth(columns(record.matrix), slack, True))
+    truth = Truth(columns(record.matrix), slack, True)
+    return Case(record.name, parts, truth, grounded=record.grounded)
 
 
 def published_cases() -> list[Case]:
-    """Every value from outside that needs neither dielectric nor plane, as shapes."""
+    """Every value from outside that needs no dielectric, as shapes."""
     return [_published_case(r) for r in REFERENCES if _has_shape(r)]
 
 
 def _has_shape(record: Reference) -> bool:
     return all(described.kind in _SHAPES for described in record.bodies)
+
+
+FLAT_TO_Z = (
+    "sphere", "spheroid", "ellipsoid", "torus", "box", "plate", "disc", "annulus", "tube",
+    "cylinder",
+)  # fmt: skip
+"""Kinds that are their own mirror image in the plane z = 0."""
+
+
+def mirrored_cases() -> list[Case]:
+    """The same with two mirror planes and, for single bodies, with three."""
+    cases = []
+    for record in filter(_has_shape, REFERENCES):
+        single = len(record.bodies) == 1 and record.bodies[0].kind in FLAT_TO_Z
+        for mirrors in ("xy", "xyz") if single and not record.grounded else ("xy",):
+            case = _published_case(record)
+            cases.append(replace(case, name=f"{case.name}, mirrors {mirrors}", mirrors=mirrors))
+    return cases
+
+
+def plates_over_a_plane() -> list[Case]:
+    """A plate over a grounded plane has C11 - C12 of the pair at twice the distance."""
+    cases = []
+    for record in REFERENCES:
+        if record.name.startswith("two unit plates"):
+            gap = record.bodies[1].centre[2]
+            own = record.matrix[0, 0] - record.matrix[0, 1]
+            truth = Truth(np.full((1, 2), own), np.full((1, 2), 2.0 * record.uncertainty), True)
+            plate = Part("plate", moved(shapes.plate(1.0, 1.0), 0, 0, 0.5 * gap))
+            cases.append(Case(f"plate {0.5 * gap:g} over a plane", (plate,), truth, grounded=True))
+    return cases
 
 
 def _coaxial(length: float) -> Case:
@@ -181,6 +221,7 @@ def slopes() -> list[Slope]:
 
 LEFT_OUT: dict[str, str] = {
     "two spheres in contact": "no shape is two spheres; as two conductors they touch",
+    "wire and strip over a plane": "slopes with end effects: checked by the tests",
     "two wires": "open ends are felt as 1/length: a slope to 1e-4 needs wires 1e4 radii long",
     "cross-capacitance of quarter shells": "slits without width: conductors that touch are refused",
     **{record.name: record.reason for record in NOT_IN_TABLES},
@@ -279,4 +320,4 @@ def table_cases() -> list[Case]:
 
 def all_cases() -> list[Case]:
     """All matrices, each name once."""
-    return published_cases() + table_cases()
+    return published_cases() + plates_over_a_plane() + mirrored_cases() + table_cases()

@@ -1,4 +1,4 @@
-"""Capacitances of conductors in free space known from outside the package, as plain data.
+"""Capacitances of conductors in one medium known from outside the package, as plain data.
 
 Values are lengths L = C / (4 pi eps0) in the unit of the sizes: a sphere of radius 1 has L = 1.
 Maxwell signs. Bodies are described by numbers only; whoever uses a record maps its kinds to
@@ -60,6 +60,7 @@ class Reference:
         uncertainty: half width, in L, of what the printed digits and their source leave open.
         mark: T, P, M or N.
         source: author, title or method.
+        grounded: whether the plane z = 0 is at potential zero.
     """
 
     name: str
@@ -68,6 +69,7 @@ class Reference:
     uncertainty: float
     mark: str
     source: str
+    grounded: bool = False
 
     @property
     def matrix(self) -> np.ndarray:
@@ -185,7 +187,7 @@ def _remembered() -> list[Reference]:
     one("solid hemisphere", body("half ball", radius=1.0), 0.845299461620748, memory)
     cited = "Helsing & Perfekt, Appl. Comput. Harmon. Anal. 34, 445 (2013), from memory"
     one("unit cube", body("box", x=1.0, y=1.0, z=1.0), 0.66067815409957, cited, 1e-8)
-    return shelf.records + _spheres() + _discs()
+    return shelf.records + _spheres() + _discs() + _over_a_plane()
 
 
 def _spheres() -> list[Reference]:
@@ -203,6 +205,23 @@ def _spheres() -> list[Reference]:
         two = (body("sphere", radius=1.0), at_height("sphere", distance, radius=radius))
         shelf.pair(name, two, values, source, 1e-12)
     return shelf.records
+
+
+def _over_a_plane() -> list[Reference]:
+    """C of one body is C11 - C12 of it and its mirror image."""
+    source = "C11 - C12 of two spheres (Maxwell, Treatise, from memory)"
+    return [
+        Reference(
+            f"sphere over a plane, height {height:g}",
+            (at_height("sphere", height, radius=1.0),),
+            ((exact,),),
+            1e-12,
+            "M",
+            source,
+            grounded=True,
+        )
+        for height, exact in ((1.1, 2.1550861170132), (2.0, 1.3410598130784))
+    ]
 
 
 def _discs() -> list[Reference]:
@@ -279,6 +298,16 @@ PER_LENGTH: tuple[PerLength, ...] = (
     ),
     PerLength("coaxial line", {"inner": 1.0, "outer": 2.0}, 9.06472028365439, "T", "2 pi / ln 2"),
     PerLength(
+        "wire over a plane", {"radius": 1.0, "height": 2.0}, 4.7709841915609, "M", "2 pi / acosh 2"
+    ),
+    PerLength(
+        "strip over a plane, in air",
+        {"width": 1.0, "height": 1.0},
+        2.9798986509,
+        "N",
+        "graded Galerkin",
+    ),
+    PerLength(
         "cross-capacitance of quarter shells",
         {"radius": 1.0},
         0.220635600152652,
@@ -289,9 +318,8 @@ PER_LENGTH: tuple[PerLength, ...] = (
 """Cross-sections of long bodies."""
 
 LEFT_OUT: tuple[LeftOut, ...] = (
-    LeftOut("sphere over an earthed plane", "needs a plane; equals C11 - C12 of a mirrored pair"),
-    LeftOut("wire over a plane", "needs a plane; twice that of two wires at twice the height"),
-    LeftOut("stripline and microstrip", "need planes without end"),
+    LeftOut("stripline", "needs two planes without end"),
+    LeftOut("microstrip on a substrate", "needs a dielectric"),
     LeftOut("coats, half-spaces, cube in a coat, layered plates", "need dielectrics"),
     LeftOut("forces on spheres and discs", "a derivative of the matrix, not an entry of it"),
     LeftOut("Kirchhoff's discs and Smythe's fit", "approximations: checked against the records"),

@@ -73,7 +73,8 @@ def scene_of(surfaces: Iterable[Surface], shells: tuple[int, ...] = ()) -> bem.S
 def scene_of_reference(record: Reference) -> bem.Scene:
     """Scene of a record, its bodies in order."""
     hollow = tuple(k for k, b in enumerate(record.bodies) if "shell" in b.kind)
-    return scene_of([shape_of(b) for b in record.bodies], hollow)
+    scene = scene_of([shape_of(b) for b in record.bodies], hollow)
+    return scene.set_ground_plane(z=0.0) if record.grounded else scene
 
 
 def in_lengths(farads: np.ndarray) -> np.ndarray:

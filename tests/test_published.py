@@ -54,6 +54,8 @@ RECORDS = (
     "two unit plates, gap 1",
     "two thick discs",
     "guard ring",
+    "sphere over a plane, height 1.1",
+    "sphere over a plane, height 2",
 )
 CUBES = {
     "12 triangles": cube(),

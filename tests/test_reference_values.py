@@ -150,23 +150,25 @@ def test_small_gap_formula_falls_short_of_the_integral_equation(
     assert low == pytest.approx(shortfall, rel=0.05)
 
 
-@pytest.mark.parametrize(("height", "exact"), [(1.1, 2.1550861170132), (2.0, 1.3410598130784)])
-def test_sphere_over_a_plane_from_its_mirrored_pair(height: float, exact: float) -> None:
+@pytest.mark.parametrize("height", [1.1, 2.0])
+def test_sphere_over_a_plane_from_its_mirrored_pair(height: float) -> None:
     own, mutual = formulas.two_spheres(1.0, 1.0, 2.0 * height)[0]
-    assert own - mutual == pytest.approx(exact, rel=3e-13)
+    known = by_name(f"sphere over a plane, height {height:g}")
+    assert own - mutual == pytest.approx(known, rel=3e-13)
 
 
 def test_per_length_values_follow_from_their_formulas() -> None:
     computed = {
         "two wires": formulas.two_wires(1.0, 4.0),
         "coaxial line": formulas.coaxial_line(2.0),
+        "wire over a plane": formulas.wire_over_plane(2.0),
         "cross-capacitance of quarter shells": formulas.cross_capacitance(),
     }
-    assert computed == pytest.approx({x.name: x.exact for x in PER_LENGTH}, rel=1e-13)
+    known = {x.name: x.exact for x in PER_LENGTH if x.mark != "N"}
+    assert computed == pytest.approx(known, rel=1e-13)
 
 
 def test_wire_over_a_plane_is_twice_two_wires() -> None:
-    assert formulas.wire_over_plane(2.0) == pytest.approx(4.7709841915609, rel=1e-13)
     assert formulas.wire_over_plane(2.0) == pytest.approx(2.0 * formulas.two_wires(1.0, 4.0))
 
 
