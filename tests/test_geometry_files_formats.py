@@ -187,6 +187,14 @@ def test_damaged_obj(tmp_path, text, message, capfd):
     assert capfd.readouterr() == ("", "")
 
 
+def test_coordinates_without_end(tmp_path, recwarn):
+    text = VERTICES.replace("1 1 0", "1e300 1 0") + "f 1 2 3\n"
+    assert refused(save(tmp_path / "far.obj", text)) == (
+        "the coordinates are too large to compute with; check the unit"
+    )
+    assert len(recwarn) == 0
+
+
 # PLY and OFF
 
 
@@ -446,14 +454,14 @@ def test_names_of_nodes_and_meshes(tmp_path):
     assert last.bounds.tolist() == [[0, 0, 9], [2, 4, 11]]
 
 
-def test_strips_and_lines(tmp_path):
-    """Strips of triangles are faces; points and lines are counted as left out."""
+def test_meshes_of_several_sets(tmp_path):
+    """All triangles of a node are one body; points and lines are counted as left out."""
     header, binary = gltf_header(PAIR)
-    strip = [{"attributes": {"POSITION": 0}, "mode": 5}, {"attributes": {"POSITION": 0}, "mode": 1}]
-    header["meshes"][0]["primitives"] = strip
+    sets = [*header["meshes"][0]["primitives"], *header["meshes"][1]["primitives"]]
+    header["meshes"][0]["primitives"] = [*sets, {"attributes": {"POSITION": 0}, "mode": 1}]
     surface, changes = read_surface(save(tmp_path / "two.glb", glb(header, binary)), 1.0, "rod")
-    assert len(surface.faces) == 6
-    assert changes == ["1 set of points or lines left out"]
+    assert len(surface.faces) == 12 + 10, "ten of those two boxes share no side"
+    assert changes[0] == "1 set of points or lines left out"
 
 
 def test_a_file_in_metres_that_is_asked_for_in_millimetres(tmp_path):
@@ -481,8 +489,10 @@ GLTF = "cannot be read as glTF: its meshes or nodes are damaged; export it again
          "extension KHR_draco_mesh_compression; export it without compression"),
         (lambda h: h["accessors"][0].update(sparse={}),
          "holds sparse glTF accessors; export it without them"),
+        (lambda h: h["meshes"][0]["primitives"][0].update(mode=5),
+         "holds strips or fans of triangles; export it with plain triangles"),
         (lambda h: h["meshes"][0]["primitives"][0].update(mode=6),
-         "holds fans of triangles; export it with plain triangles"),
+         "holds strips or fans of triangles; export it with plain triangles"),
         (lambda h: h["accessors"][1].update(count=99), GLTF),
         (lambda h: h["accessors"][0].update(count=7),
          'mesh "rod" uses a corner beyond the 7 listed; mesh it again'),

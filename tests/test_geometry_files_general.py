@@ -5,6 +5,7 @@ The files in ``tests/files`` were written by other libraries (see the README the
 
 from __future__ import annotations
 
+import sys
 from pathlib import Path
 
 import meshio
@@ -44,6 +45,13 @@ def test_msh_of_every_version(version):
     assert "metal" in refused(path, "x")
 
 
+def test_a_count_below_zero(tmp_path):
+    text = (FILES / "gmsh_4.0_txt.msh").read_text().replace("$Entities\n16 ", "$Entities\n-16 ")
+    assert refused(save(tmp_path / "two.msh", text)) == (
+        "has a damaged section $Entities; export it again"
+    )
+
+
 @pytest.mark.parametrize("header", ["2", "2.0", "2.1"])
 def test_msh_2_under_its_other_numbers(tmp_path, header):
     text = (FILES / "gmsh_2.2_txt.msh").read_text().replace("2.2 0 8", f"{header} 0 8")
@@ -71,6 +79,7 @@ def test_volume_groups_are_bodies_if_there_is_no_surface():
     [
         ("gmsh_volume.inp", "can"),
         ("gmsh_volume.mesh", "ref 2"),
+        ("gmsh_volume.med", "can"),
         ("gmsh_volume.vtk", "CellEntityIds 2"),
         ("gmsh.su2", "can"),
         ("pyvista.vtk", "material 7"),
@@ -271,11 +280,19 @@ def test_damaged_vtk(tmp_path, text, message, capfd):
     assert capfd.readouterr() == ("", "")
 
 
+def test_a_kind_that_needs_a_package(monkeypatch):
+    monkeypatch.setitem(sys.modules, "h5py", None)
+    assert refused(FILES / "gmsh_volume.med") == (
+        "is a .med file, which needs the package h5py; install it: pip install h5py"
+    )
+
+
 # damage in all kinds
 
 SAMPLES = {
     ".vtk": "pyvista_surface.vtk", ".vtu": "pyvista.vtu", ".inp": "gmsh_volume.inp",
     ".mesh": "gmsh_volume.mesh", ".su2": "gmsh.su2",
+    ".med": "gmsh_volume.med",
 }  # fmt: skip
 
 

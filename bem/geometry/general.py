@@ -34,11 +34,8 @@ KINDS = {
     ".meshb": "medit",
     ".su2": "su2",
     ".ugrid": "ugrid",
-    ".vol": "netgen",
     ".avs": "avsucd",
-    ".dat": "tecplot",
     ".med": "med",
-    ".xdmf": "xdmf",
 }
 """Endings of names, and what meshio calls such files."""
 

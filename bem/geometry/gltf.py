@@ -162,11 +162,10 @@ def _bare_mesh(number: int, mesh: dict[str, Any]) -> dict[str, Any]:
     kept = []
     for one in mesh["primitives"]:
         mode = one.get("mode", _TRIANGLES)
-        if mode == _FAN:
-            raise InputError("holds fans of triangles; export it with plain triangles")
-        if mode in (_TRIANGLES, _STRIP):
-            place = {"POSITION": one["attributes"]["POSITION"]}
-            kept.append({"attributes": place, "mode": mode})
+        if mode in (_STRIP, _FAN):
+            raise InputError("holds strips or fans of triangles; export it with plain triangles")
+        if mode == _TRIANGLES:
+            kept.append({"attributes": {"POSITION": one["attributes"]["POSITION"]}})
             kept[-1] |= {"indices": one["indices"]} if "indices" in one else {}
     return {"name": str(number), "primitives": kept}
 

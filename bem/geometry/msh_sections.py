@@ -120,7 +120,7 @@ def groups_of_entities(section: bytes, form: MshFormat, dimension: int) -> dict[
             reals = 3 if lower == 0 and form.version == "4.1" else 6
             found = [_entity(numbers, lower, reals) for _ in range(counts[lower])]
             groups = dict(found)
-    except ValueError:
+    except (ValueError, OverflowError):
         raise InputError("has a damaged section $Entities; export it again") from None
     return groups
 

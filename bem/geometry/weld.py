@@ -39,7 +39,8 @@ def weld(surface: Surface, relative: float = WELD) -> tuple[Surface, list[str]]:
         InputError: no face is left, the vertices crowd together, or numbers overflow.
     """
     surface = _compact(surface)
-    tolerance = relative * float(np.linalg.norm(np.ptp(surface.vertices, axis=0)))
+    with np.errstate(over="ignore"):
+        tolerance = relative * float(np.linalg.norm(np.ptp(surface.vertices, axis=0)))
     if not np.isfinite(tolerance):
         raise InputError("the coordinates are too large to compute with; check the unit")
     joined, changes = _join(surface, tolerance)
