@@ -71,7 +71,7 @@ def change_sums(
     Args:
         before: of the first scene.
         after: of the second.
-        redrawn: (k,) bool, conductors whose numbers are not the same in both.
+        redrawn: (k,) bool, conductors whose numbers were rounded anew.
     """
     (first, sums_first), (second, sums_second) = before, after
     far = np.abs(_far_effect(second) - _far_effect(first))
@@ -79,7 +79,7 @@ def change_sums(
     return ChangeSums(
         value=sums_second.value - sums_first.value,
         signed=sums_second.signed - sums_first.signed,
-        absolute=_product_changes(first.residual, second.residual),
+        absolute=product_changes(first.residual, second.residual),
         quadrature=rows + FAR_CHANGE * far,
         faceting=sums_second.faceting - sums_first.faceting,
         rounding=_rounding(first, redrawn) + _rounding(second, redrawn),
@@ -87,7 +87,7 @@ def change_sums(
 
 
 def _rounding(solution: Solution, redrawn: np.ndarray) -> np.ndarray:
-    """Effect of the rounded input of those conductors that are not the same in both scenes."""
+    """Effect of the rounded input of those conductors that were rounded anew."""
     bodies = tuple(
         body if fresh else replace(body, rounding=0.0)
         for body, fresh in zip(solution.mesh.bodies, redrawn, strict=True)
@@ -104,7 +104,7 @@ def _far_effect(solution: Solution) -> np.ndarray:
     return 2.0 * operator.far_error * operator.magnitude(density, with_all(density))
 
 
-def _product_changes(before: np.ndarray, after: np.ndarray) -> np.ndarray:
+def product_changes(before: np.ndarray, after: np.ndarray) -> np.ndarray:
     """(k, k + 1) sum of |b_i b_j - a_i a_j| over panels and tests of residuals (4, n, k)."""
     a, b = (w.reshape(-1, w.shape[-1]) for w in (before, after))
     all_a, all_b = with_all(a), with_all(b)

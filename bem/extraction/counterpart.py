@@ -11,7 +11,7 @@ from bem.errors import UsageError
 from bem.extraction.scaled import ScaledScene
 from bem.geometry.wording import listed
 from bem.panels.mesh import Body, Mesh
-from bem.panels.motion import ByFaces, Motion, loosened, motion_of, same_vertices
+from bem.panels.motion import ByFaces, Motion, loosened, motion_of, redrawn
 from bem.panels.transport import Other, transported
 from bem.scene.scene import Scene
 
@@ -67,9 +67,8 @@ class Counterparts:
 
     @property
     def redrawn(self) -> np.ndarray:
-        """(k,) bool, conductors whose numbers are not the same in both scenes."""
-        pairs = zip(self.first.surfaces, self.second.surfaces, strict=True)
-        return np.array([not same_vertices(a, b) for a, b in pairs])
+        """(k,) bool, conductors whose numbers were rounded anew for the second scene."""
+        return np.array(list(map(redrawn, self.first.surfaces, self.second.surfaces, self.motions)))
 
     def start(self, accept: Callable[[int], None]) -> Mesh:
         """Starting mesh of the first scene, of panels that can be carried over.

@@ -26,7 +26,7 @@ class Carrier:
 
     Args:
         carry: takes the panels of the first scene to those of the second.
-        redrawn: (k,) bool, conductors whose numbers are not the same in both.
+        redrawn: (k,) bool, conductors whose numbers were rounded anew.
         accuracy: every bar of a change at most this times the largest change.
     """
 
@@ -67,8 +67,7 @@ class Lockstep(Run):
 
     def _shared(self, first: Solution, moved: Mesh, origin: np.ndarray | None) -> Reuse:
         """What the first scene's operator, or the second one's before, can give."""
-        radius = first.panels.radius
-        same = np.where(unmoved(first.mesh, moved), np.arange(len(radius)), -1)
+        same = np.where(unmoved(first.mesh, moved), np.arange(first.operator.size), -1)
         giver = first.operator
         if origin is not None and (origin >= 0).sum() > (same >= 0).sum():
             earlier = self.other.rounds[-1].solution.operator
@@ -76,7 +75,7 @@ class Lockstep(Run):
                 giver, same = earlier, origin
         if not isinstance(giver, DenseOperator):
             raise TypeError("scenes are compared with dense operators only")
-        return Reuse(giver, same, radius)
+        return Reuse(giver, same)
 
     def _store(self, before: RoundState, after: RoundState) -> None:
         """Keep a round of both scenes and of their difference; all of it is known before."""

@@ -30,12 +30,10 @@ class Reuse:
     Args:
         operator: of the mesh before.
         origin: (n,) index in it of the same panel, or -1.
-        choice: (n,) radii by which the row of each pair is chosen, if not the panels' own.
     """
 
     operator: DenseOperator
     origin: np.ndarray
-    choice: np.ndarray | None = None
 
 
 def far_reach(tolerance: float, cancellation: float = 1.0) -> float:
@@ -72,8 +70,7 @@ class DenseOperator:
     ) -> None:
         n = len(targets.weights)
         self.sources = sources
-        choice = None if reuse is None else reuse.choice
-        self.radius = sources.panels.radius[:n] if choice is None else choice
+        self.radius = sources.panels.radius[:n]
         self.matrices = _empty(n)
         known = reuse.operator.matrices if reuse is not None else _empty(0)
         origin = reuse.origin if reuse is not None else np.full(n, -1)

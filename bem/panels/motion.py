@@ -27,6 +27,8 @@ FIT = 1e-9
 """Vertices may miss a map by this part of the body's size, and by the rounding of both files."""
 SNAP = 1e-9
 """A map this near to one that turns nothing counts as that."""
+SAME = 1e-12
+"""Vertices that miss a map by no more than this part of the body's size are the same drawing."""
 LARGEST_SWEEP = 2.0
 """Arcs whose angles differ by more than this factor are of different kinds."""
 
@@ -92,9 +94,17 @@ def motion_of(before: Surface, after: Surface) -> Motion | None:
     return _by_outlines(before, after, slack)
 
 
-def same_vertices(before: Surface, after: Surface) -> bool:
-    """Whether both hold the same numbers, so that errors of their input are the same too."""
-    return np.array_equal(before.vertices, after.vertices)
+def redrawn(before: Surface, after: Surface, motion: Motion | None) -> bool:
+    """Whether the numbers of both were rounded each in its own way.
+
+    A body that is placed elsewhere is the same drawing: what rounding did to it moves along.
+    """
+    if np.array_equal(before.vertices, after.vertices):
+        return False
+    if not isinstance(motion, Affine) or before.vertices.shape != after.vertices.shape:
+        return True
+    off = np.abs(motion(before.vertices) - after.vertices).max()
+    return bool(off > SAME * max(before.extent, after.extent))
 
 
 def _recurved(before: Revolution, after: Revolution) -> Recurved | None:
