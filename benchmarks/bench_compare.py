@@ -22,8 +22,8 @@ from changes import FARAD, PAIRS, Pair  # noqa: E402
 import bem  # noqa: E402
 from bem.results.comparison import Comparison  # noqa: E402
 
-TOLERANCES = (1e-2, 1e-3, 2e-4)
-TIGHT, MOST = 1e-5, 3500
+TOLERANCES = (1e-2, 1e-3, 3e-4)
+TIGHT, MOST = 1e-5, 2500
 SHOWN = 1e-3
 """Tolerance of the table by pair."""
 

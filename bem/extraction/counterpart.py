@@ -81,18 +81,21 @@ class Counterparts:
             for surface, motion in zip(self.first.surfaces, self.motions, strict=True)
         ]
         mesh = Mesh.start(surfaces, self.hollow[0], accept, self.first.planes)
-        return replace(mesh, bodies=_bodies(self.first, self.hollow[0]))
+        return replace(mesh, bodies=_bodies(mesh, self.first, self.hollow[0]))
 
     def carry(self, mesh: Mesh) -> Mesh:
         """The panels of the first scene carried over to the second."""
         motions = [motion for motion in self.motions if motion is not None]
-        bodies = _bodies(self.second, self.hollow[1])
+        bodies = _bodies(mesh, self.second, self.hollow[1])
         return transported(mesh, Other(motions, bodies, self.second.planes))
 
 
-def _bodies(scaled: ScaledScene, hollow: list[int]) -> tuple[Body, ...]:
+def _bodies(mesh: Mesh, scaled: ScaledScene, hollow: list[int]) -> tuple[Body, ...]:
+    """The bodies of a mesh, with what the surfaces of a scene say of them."""
+    true = [Body.of(s, k in hollow, scaled.planes) for k, s in enumerate(scaled.surfaces)]
     return tuple(
-        Body.of(surface, k in hollow, scaled.planes) for k, surface in enumerate(scaled.surfaces)
+        replace(body, solid=other.solid, rounding=other.rounding)
+        for body, other in zip(mesh.bodies, true, strict=True)
     )
 
 

@@ -101,7 +101,6 @@ class Comparison:
         if not 0.0 < limit < np.inf:
             raise UsageError(f"limit: found {limit!r}, needs a fraction above 0, such as 0.01")
         size, bar = np.abs(self.change) / self.scale, self.change_error / self.scale
-        rows = [(i, j) for i, j in zip(*np.triu_indices(len(size)), strict=True)]
         found = [
             Excess(
                 (self.conductors[i], self.conductors[j]),
@@ -109,7 +108,7 @@ class Comparison:
                 float(bar[i, j]),
                 bool(size[i, j] - bar[i, j] > limit),
             )
-            for i, j in rows
+            for i, j in zip(*np.triu_indices(len(size)), strict=True)
             if not size[i, j] + bar[i, j] <= limit
         ]
         return sorted(found, key=lambda excess: -excess.change - excess.bar)
