@@ -25,6 +25,7 @@ def spectral(*points: tuple[float, float]) -> np.ndarray:
 
 
 REVOLVED = {
+    "cone": (bem.cone(1.0, 2.0), spectral((PINHOLE, -1), (1, -1), (PINHOLE, 1 - 2 * PINHOLE))),
     "frustum": (
         bem.cone(1.0, 1.0, top_radius=0.5),
         spectral((PINHOLE, -0.5), (1, -0.5), (0.5, 0.5), (PINHOLE, 0.5)),

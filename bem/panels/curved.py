@@ -24,6 +24,7 @@ from typing import NamedTuple
 import numpy as np
 
 from bem.geometry.revolved import Revolution
+from bem.panels.edges import edge_turns, square_over_mean
 
 BULGE = 0.25
 """Largest distance of a hanging point from its straight side, in widths of the leaf."""
@@ -324,6 +325,7 @@ class Panels(NamedTuple):
     offset: np.ndarray
     rim_offset: np.ndarray
     rim_width: np.ndarray
+    crowding: np.ndarray
 
     def joined(self, other: Panels) -> Panels:
         """Panels of both, the other's last."""
@@ -348,7 +350,19 @@ def _measured(grid: Grid, nodes: np.ndarray) -> Panels:
         unit = normal[at] / area[at, None]
         beyond[at] = _area_beyond(grid.surface, chord, unit) / area[at]
         width[at] = _reach(chord, corners[at])
-    return Panels(corners, volume / area, beyond, width)
+    return Panels(corners, volume / area, beyond, width, _crowding(grid, nodes))
+
+
+def _crowding(grid: Grid, nodes: np.ndarray) -> np.ndarray:
+    """(n,) mean square over squared mean of the density on solids, by the edges beside panels."""
+    at_edge = square_over_mean(edge_turns(grid.surface)) - 1.0
+    levels = np.append(0, np.cumsum(grid.cells)) * grid.unit
+    crowding = np.ones(len(nodes))
+    for first, last in ((0, 1), (2, 3)):
+        (u, s), (v, t) = nodes[:, first].T, nodes[:, last].T
+        edge = np.minimum(np.searchsorted(levels, s), grid.surface.pieces)
+        crowding += np.where((s == t) & (u != v) & (levels[edge] == s), at_edge[edge], 0.0)
+    return crowding
 
 
 def _bilinear() -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
@@ -428,6 +442,8 @@ class CurvedFamily:
             side and the rim over the panel's area, positive if the sheet extends beyond the
             panel; 0 for all others.
         rim_width: (n,) width of such a panel across its side on the rim; 0 for all others.
+        crowding: (n,) mean square over squared mean of the density if the surface bounds a solid:
+            1, but for panels with a side on a sharp edge.
         grid: parameters of the surface.
         box: (l, 4) the leaves.
         pattern: (l,) what hangs on their sides.
@@ -438,6 +454,7 @@ class CurvedFamily:
     offset: np.ndarray
     rim_offset: np.ndarray
     rim_width: np.ndarray
+    crowding: np.ndarray
     grid: Grid
     box: np.ndarray
     pattern: np.ndarray
@@ -492,7 +509,7 @@ class CurvedFamily:
         kept = np.flatnonzero(now[self.leaf] >= 0)
         fresh = np.flatnonzero(~same)
         nodes, owner = _nodes(self.grid, leaves.box[fresh], pattern[fresh])
-        mine = Panels(self.corners, self.offset, self.rim_offset, self.rim_width)
+        mine = Panels(self.corners, self.offset, self.rim_offset, self.rim_width, self.crowding)
         panels = mine.taken(kept).joined(_measured(self.grid, nodes))
         leaf = np.concatenate([now[self.leaf[kept]], fresh[owner]])
         return CurvedFamily(*panels, self.grid, leaves.box, pattern, leaf), kept

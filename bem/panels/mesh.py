@@ -166,7 +166,8 @@ class Faceting:
     """Distance of the true surface from the panels, per panel.
 
     Args:
-        offset: (n,) mean outward distance of the true surface from the panel.
+        offset: (n,) mean outward distance of the true surface from the panel, weighted where the
+            density grows towards a sharp edge of a solid.
         rim_offset: (n,) part of the panel's area that is missing at a curved free rim.
         rim_width: (n,) width of such a panel across the rim, 0 for all others.
         sheet: (n,) bool, panels of open or hollow surfaces, with field on both sides.
@@ -188,7 +189,8 @@ def _faceting(family: Family, sheet: bool) -> tuple[np.ndarray, ...]:
     if isinstance(family, FlatFamily):
         zero = np.zeros(count)
         return zero, zero, zero, zero.astype(bool)
-    return family.offset, family.rim_offset, family.rim_width, np.full(count, sheet)
+    offset = family.offset if sheet else family.offset * family.crowding
+    return offset, family.rim_offset, family.rim_width, np.full(count, sheet)
 
 
 def _curved(surface: Revolution) -> CurvedFamily:
