@@ -104,7 +104,8 @@ def test_slivers_and_holes_are_noted():
     assert notes[0].startswith('"torn" is almost closed: 3 open edges, the first at (')
     assert notes[0].endswith(" mm; it counts as a sheet, not as solid metal")
     assert notes[1] == '"thin" has slivers: one triangle is 5.0e+04 times as long as high'
-    assert len(notes) == 2
+    assert notes[2].startswith('facets of "torn" are up to ')
+    assert len(notes) == 3
 
 
 def test_repairs_are_reported(tmp_path):

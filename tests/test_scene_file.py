@@ -68,7 +68,10 @@ def test_what_may_be_left_out(folder):
 
 
 ROD = '[[conductor]]\nname = "rod"\nmesh = "rod.stl"\n'
-KNOWN = "known are name, mesh, shape, part, unit, body, place, state, node, split"
+KNOWN = (
+    "known are name, mesh, shape, part, unit, body, smooth, crease_degrees, place, state, node, "
+    "split"
+)
 
 
 @pytest.mark.parametrize(
@@ -96,8 +99,8 @@ KNOWN = "known are name, mesh, shape, part, unit, body, place, state, node, spli
         ('unit = "mm"\n[conductor]\nname = "rod"\n',
          "conductor: found a single value or [conductor]; write [[conductor]]"),
         ('unit = "mm"\nconductor = [1]\n', "conductor 1: found 1, needs a table with "
-         "name and mesh and shape and part and unit and body and place and state and node "
-         "and split"),
+         "name and mesh and shape and part and unit and body and smooth and crease_degrees "
+         "and place and state and node and split"),
         ('unit = "mm"\n[[conductor]]\nmesh = "rod.stl"\n', "conductor 1: name: missing"),
         ('unit = "mm"\n[[conductor]]\nname = "rod"\n',
          'conductor 1 ("rod"): mesh: missing; give the name of a mesh file, or a shape'),

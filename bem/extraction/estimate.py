@@ -1,13 +1,15 @@
 """The reported value and its error bar, from the rounds so far.
 
     X   = L + kappa S + F
-    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + FLOOR sqrt(L_ii L_jj) + r
+    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + FLOOR sqrt(L_ii L_jj)
+          + r + f
 
 S and Sabs are the signed and absolute summed indicator, F the faceting effect, q the
-quadrature effect, r that of rounded input. One kappa serves the whole matrix: the slope of L
-against S over the last rounds on the normalised trace, drawn toward its usual value. dX is
-the largest change of X over the last rounds, dk the distance of kappa from raw slopes. The
-coefficients were chosen on forty scenes; benchmarks/bench_bars.py reports how well they hold.
+quadrature effect, r that of rounded input, f that of facets in a file that may stand for a smooth
+surface. One kappa serves the whole matrix: the slope of L against S over the last rounds on the
+normalised trace, drawn toward its usual value. dX is the largest change of X over the last
+rounds, dk the distance of kappa from raw slopes. The coefficients were chosen on forty scenes;
+benchmarks/bench_bars.py reports how well they hold.
 """
 
 from __future__ import annotations
@@ -23,6 +25,8 @@ KAPPA_DRAW = 2.0
 KAPPA_LOW, KAPPA_HIGH = 0.6, 3.0
 SHARE, TREND, DOUBT, FACET = 0.2, 0.35, 0.4, 0.7
 """Factors of the parts of the bar, in the order of the formula above."""
+FILES = 1.5
+"""Factor on the first-order effect of facets that may stand for a smooth surface."""
 WEAK, WEAK_ROW, WIDEST = 0.03, 0.3, 2.5
 """Couplings below WEAK sqrt(C_ii C_jj), and row sums below WEAK_ROW C_ii, get wider bars: up to
 WIDEST times where they vanish beside it."""
@@ -132,6 +136,7 @@ def estimate(rounds: list[Sums]) -> Estimate:
         "trend": wide * trend,
         "quadrature": last.quadrature + floor,
         "input rounding": last.rounding,
+        "facets of the file": FILES * last.files,
         "faceting": wide * facets * np.abs(last.faceting),
     }
     return Estimate(value, sum(parts.values()), parts, kappa, facets, doubt)

@@ -14,6 +14,7 @@ import numpy as np
 from bem import __version__
 from bem.errors import SolutionError, UsageError
 from bem.extraction.audit import Audit, audit
+from bem.extraction.facets import facet_lines, facet_record
 from bem.extraction.loop import Limits, RoundState, Run
 from bem.extraction.marking import Goal
 from bem.extraction.memory import MemoryPlan
@@ -80,6 +81,7 @@ def extract(
         run.go(mesh)
         solved = time.perf_counter()
         findings = audited(run)
+    facets = facet_record(scene, scaled, run.rounds[-1].solution)
     ended = time.perf_counter()
     seconds = {
         "geometry": checked - started,
@@ -94,10 +96,10 @@ def extract(
         "relative_permittivity": scene.relative_permittivity,
         **planes_record(scene.planes),
         "operator": "dense",
+        "facets": facets,
     }
-    return result_of(
-        scene, scaled, run, findings, (seconds, settings, warnings_of(scene, inspection))
-    )
+    notes = warnings_of(scene, inspection) + tuple(facet_lines(scene, facets))
+    return result_of(scene, scaled, run, findings, (seconds, settings, notes))
 
 
 def audited(run: Run) -> Audit:

@@ -19,10 +19,12 @@ from bem.panels.mesh import Mesh
 
 MOST_ROUNDS = 60
 FINE_START, EARLY = 500, 0.3
-"""A mesh of so many panels may do at once, if its bar is below this part of what is allowed."""
+"""A mesh of so many panels may do at once, if its own bar is below this part of what is allowed."""
 BULK_FAR, BULK_NEAR = 0.85, 0.7
 """Part of the promise that is refined in one round, far from the goal and near it."""
 FAR_FROM_GOAL = 4.0
+_OF_THE_INPUT = {"input-rounding": "input rounding", "faceting": "facets of the file"}
+"""Parts of the bar that no refinement shrinks, by the reason they stop a run for."""
 
 
 @dataclass(frozen=True)
@@ -133,7 +135,7 @@ class Run:
         here = sums(solution)
         found = estimate([r.sums for r in self.rounds] + [here])
         worst = float(self.goal.worst(found).max())
-        fine = here.panels >= FINE_START and worst <= EARLY
+        fine = here.panels >= FINE_START and worst <= 1.0 and self._own(found) <= EARLY
         if len(self.rounds) + 1 < ROUNDS and not fine:
             worst = max(worst, 1.0 + 1e-9)
         return RoundState(solution, here, found, worst, self.elapsed)
@@ -142,15 +144,24 @@ class Run:
         """Add a round, and let go of the matrices of the one before."""
         self.rounds = [*(_light(r) for r in self.rounds), state]
 
-    def _held_up_by_input(self, last: RoundState) -> bool:
-        """Whether bars are too large only for the rounded numbers of the input."""
+    def _own(self, found: Estimate) -> float:
+        """Largest bar over what is allowed for it, without what no refinement shrinks."""
+        allowed = self.goal.allowance(found.value[:, : self.count])
+        given = sum(found.parts[part] for part in _OF_THE_INPUT.values())
+        return float(((found.bar - given)[:, : self.count] / allowed).max())
+
+    def _held_up_by_input(self, last: RoundState) -> str:
+        """What of the input alone keeps bars too large, "" if nothing does."""
         count = self.count
         allowed = self.goal.allowance(last.found.value[:, :count])
-        rounding = last.found.parts["input rounding"][:, :count]
-        rest = last.found.bar[:, :count] - rounding
-        return len(self.rounds) >= ROUNDS and bool(
-            (rounding > 0.9 * allowed).any() and (rest <= np.maximum(allowed, rounding)).all()
-        )
+        parts = {name: last.found.parts[part][:, :count] for name, part in _OF_THE_INPUT.items()}
+        given = sum(parts.values())
+        rest = last.found.bar[:, :count] - given
+        enough = 1.0 if len(self.rounds) >= ROUNDS else EARLY
+        small = rest <= enough * np.maximum(allowed, given)
+        if not ((given > 0.9 * allowed).any() and small.all()):
+            return ""
+        return max(parts, key=lambda name: float((parts[name] / allowed).max()))
 
     def _worst(self) -> float:
         """Largest bar over its allowance after the last round."""
@@ -165,8 +176,8 @@ class Run:
         panels = len(mesh.conductor)
         if worst <= 1.0:
             self.stopped_by = "tolerance"
-        elif self._held_up_by_input(last):
-            self.stopped_by = "input-rounding"
+        elif held_up := self._held_up_by_input(last):
+            self.stopped_by = held_up
         elif len(self.rounds) >= MOST_ROUNDS:
             self.stopped_by = "rounds"
         elif panels >= self.limits.max_panels:

@@ -106,6 +106,7 @@ class Sums:
         cancellation: energy of charges of one sign over that of the true ones, the largest.
         faceting: first-order effect of the true surface lying off the panels.
         rounding: largest effect of the rounded numbers of the input files.
+        files: largest effect of the smooth surface that facets of files may stand for.
     """
 
     panels: int
@@ -116,6 +117,7 @@ class Sums:
     cancellation: float
     faceting: np.ndarray
     rounding: np.ndarray
+    files: np.ndarray
 
 
 def sums(solution: Solution) -> Sums:
@@ -139,6 +141,7 @@ def sums(solution: Solution) -> Sums:
         cancellation=float((np.diagonal(magnitude) / np.diagonal(value)).max()),
         faceting=faceting_effect(solution),
         rounding=rounding_effect(solution),
+        files=file_facet_bound(solution),
     )
 
 
@@ -152,16 +155,52 @@ def faceting_effect(solution: Solution) -> np.ndarray:
     K_i K_j times the in-plane displacement (the energy release of a crack front, with the
     constant of the disk); a panel of width w at the rim has the mean density 2 K / sqrt(w).
     """
-    faceting, density, area = solution.mesh.faceting(), solution.density, solution.panels.area
+    faceting, density = solution.mesh.faceting(), solution.density
     count = density.shape[1]
     if faceting.exact:
         return np.zeros((count, count + 1))
-    normal = 4.0 * np.pi * area * faceting.offset
-    rim = 0.5 * np.pi**2 * solution.own * area * faceting.rim_offset * faceting.rim_width
+    normal, rim = _pushes(solution, faceting)
     excess = _side_difference(solution, faceting)
     change = density.T @ (normal[:, None] * excess)
     change = 0.5 * (change + change.T) + density.T @ (rim[:, None] * density)
     return with_all(change)
+
+
+def _pushes(solution: Solution, faceting: Faceting) -> tuple[np.ndarray, np.ndarray]:
+    """Factors (n,) of products of densities: for moves along the normal, and of a free rim."""
+    area = solution.panels.area
+    normal = 4.0 * np.pi * area * faceting.offset
+    rim = 0.5 * np.pi**2 * solution.own * area * faceting.rim_offset * faceting.rim_width
+    return normal, rim
+
+
+def file_facet_bound(solution: Solution) -> np.ndarray:
+    """Bound (k, k + 1) on the change of L if facets of files stand for a smooth surface.
+
+    The first-order formulas of ``faceting_effect`` with absolute values.
+    """
+    faceting, size = solution.mesh.doubtful(), np.abs(solution.density)
+    if faceting.exact:
+        return np.zeros((size.shape[1], size.shape[1] + 1))
+    normal, rim = (np.abs(push)[:, None] for push in _pushes(solution, faceting))
+    excess = np.abs(with_all(_side_difference(solution, faceting)))
+    bound = size.T @ (normal * excess + rim * np.abs(with_all(solution.density)))
+    bound[:, :-1] = 0.5 * (bound[:, :-1] + bound[:, :-1].T)
+    return bound
+
+
+def file_facet_shares(solution: Solution) -> np.ndarray:
+    """(k,) relative change of each L_ii if the facets of i became what they may stand for.
+
+    The outer side of a sheet is not known: there the sign only says what the most would be.
+    """
+    faceting, density = solution.mesh.doubtful(), solution.density
+    normal, rim = _pushes(solution, faceting)
+    own = incidence(solution.conductor, density.shape[1]) * density
+    excess = _side_difference(solution, faceting)
+    moved = normal[:, None] * np.where(faceting.sheet[:, None], np.abs(excess), excess)
+    change = (own * (moved + rim[:, None] * density)).sum(axis=0)
+    return change / (own * solution.panels.area[:, None]).sum(axis=0)
 
 
 def rounding_effect(solution: Solution) -> np.ndarray:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -33,7 +34,7 @@ def tidy_surface(shape: Any, metres_per_unit: float) -> tuple[Surface, list[str]
         MeshData(vertices, faces).check()
     except InputError as problem:
         raise InputError(f"shape: {problem}") from None
-    surface = Surface(vertices, faces, shape.curve)
+    surface = replace(shape, vertices=vertices, faces=faces)
     metres = surface.placed(metres_per_unit * np.eye(3), np.zeros(3))
     return (metres, []) if shape.curve is not None else weld(metres)
 

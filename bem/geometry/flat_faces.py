@@ -43,8 +43,9 @@ def sides_of(corners: np.ndarray) -> Sides:
     real = ends[:, 0] != ends[:, 1]
     ends, face = ends[real], face[real]
     pairs = np.sort(ends, axis=1)
-    _, group, count = np.unique(pairs, axis=0, return_inverse=True, return_counts=True)
-    return Sides(pairs, face, group.ravel(), count)
+    key = pairs[:, 0] * (int(corners.max()) + 1) + pairs[:, 1]
+    _, group, count = np.unique(key, return_inverse=True, return_counts=True)
+    return Sides(pairs, face, group, count)
 
 
 def _area_vectors(points: np.ndarray) -> np.ndarray:

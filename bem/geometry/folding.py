@@ -22,6 +22,11 @@ ON_PLANE = 1e-6
 ALIKE = 1e-2
 """Relative to the diagonal: how well a faceted body must be its own mirror image."""
 
+CUT_FACETS = (
+    "a smooth surface cannot be fitted to facets that the mirror plane across {axis} cuts; mesh "
+    "the body with edges in the plane, or leave smooth out"
+)
+
 
 def folded(surface: Surface, planes: Planes, solid: bool) -> Surface:
     """What is left of a body on the kept side of all mirror planes.
@@ -79,12 +84,20 @@ def reflected(surface: Surface, plane: Plane) -> Surface:
 
 def _kept_half(surface: Surface, mirror: Plane, solid: bool) -> Surface:
     tolerance = ON_PLANE * surface.extent
+    if surface.smooth and _cuts_facets(surface, mirror, tolerance):
+        raise GeometryError(CUT_FACETS.format(axis=AXES[mirror.axis]))
     kept = clipped(surface, mirror, tolerance, not solid)
     if side_of(surface, mirror) == 0:
         other = clipped(reflected(surface, mirror), mirror, tolerance, not solid)
         if not np.allclose(_measures(kept), _measures(other), rtol=0, atol=ALIKE * surface.extent):
             raise GeometryError(NOT_SYMMETRIC.format(axis=AXES[mirror.axis]))
     return kept
+
+
+def _cuts_facets(surface: Surface, mirror: Plane, tolerance: float) -> bool:
+    """Whether a plane runs through the middle of facets instead of along their edges."""
+    height = mirror.height(surface.vertices)[surface.triangles]
+    return bool(((height < -tolerance).any(axis=1) & (height > tolerance).any(axis=1)).any())
 
 
 def _measures(surface: Surface) -> np.ndarray:

@@ -6,6 +6,7 @@ their orientation carries no meaning for a conductor.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -14,6 +15,8 @@ import numpy as np
 if TYPE_CHECKING:
     from bem.geometry.revolved import Revolution
 
+CREASE_DEGREES = 40.0
+"""Edges that turn by more are sharp unless the user says otherwise."""
 NO_CORNER = -1
 """Stands in the fourth column of a triangle's row of ``Surface.faces``."""
 
@@ -28,12 +31,17 @@ class Surface:
         curve: the true surface that the faces approximate, for shapes that have one.
         rounding: how far a vertex may lie from where it was drawn because its file holds
             rounded numbers, metres.
+        smooth: whether the facets stand for a smooth surface: True refines onto one fitted to
+            them, False takes them for the shape, None takes them and doubts it.
+        crease: edges that turn by more than this stay sharp, radians.
     """
 
     vertices: np.ndarray
     faces: np.ndarray
     curve: Revolution | None = None
     rounding: float = 0.0
+    smooth: bool | None = None
+    crease: float = math.radians(CREASE_DEGREES)
 
     @property
     def is_triangle(self) -> np.ndarray:

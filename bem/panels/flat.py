@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -11,7 +12,8 @@ from bem.geometry.planes import NO_PLANES, Planes
 from bem.panels.arrangement import trapezoids
 from bem.panels.facing import FacingTable, Walls
 from bem.panels.planar import Patch
-from bem.panels.split import mean_sides, split
+from bem.panels.rims import Rims
+from bem.panels.split import mean_sides, split, split_sides
 
 MANY_PIECES = 400
 """Above this many pieces triangles are fine enough to start from as they are."""
@@ -33,12 +35,14 @@ class Pieces:
         conductor: (n,).
         gap: (n, 4) gap that the charge feels at each side, infinite inside a face.
         feature: (n,) size of the flat face that each lies on.
+        sagitta: (n,) how far off it the smooth surface is that it may stand for.
     """
 
     corners: np.ndarray
     conductor: np.ndarray
     gap: np.ndarray
     feature: np.ndarray
+    sagitta: np.ndarray
 
 
 @dataclass(frozen=True)
@@ -49,22 +53,53 @@ class FlatFamily:
         corners: (n, 4, 3), planar and convex; a triangle repeats its last corner.
         conductor: (n,) index of the owner.
         feature: (n,) size of the flat face that each lies on.
+        sagitta: (n,) mean distance from it, outward, of the smooth surface that the flat face
+            may stand for.
+        rim: (n, 4) the same, within the face, of the curve that each side may stand for.
     """
 
     corners: np.ndarray
     conductor: np.ndarray
     feature: np.ndarray
+    sagitta: np.ndarray
+    rim: np.ndarray
 
     @classmethod
-    def start(cls, patches: list[Patch], planes: Planes = NO_PLANES) -> FlatFamily:
-        """Starting mesh that knows outlines, and gaps to other bodies and to images."""
+    def start(
+        cls, patches: list[Patch], planes: Planes = NO_PLANES, rims: Sequence[Rims] = ()
+    ) -> FlatFamily:
+        """Starting mesh that knows outlines, and gaps to other bodies and to images.
+
+        Args:
+            patches: flat faces of all conductors.
+            planes: grounded and mirror planes.
+            rims: stretches of free rims that may stand for curves.
+        """
         pieces = _pieces(patches, planes)
         if len(pieces.corners) <= MANY_PIECES:
             pieces = _three_quads(pieces)
         if len(pieces.corners) <= FEW_PIECES:
             pieces = _subdivide(pieces)
         pieces = _grade(pieces)
-        return cls(pieces.corners, pieces.conductor, pieces.feature)
+        rim = np.zeros((len(pieces.corners), 4))
+        for curved in rims:
+            here = np.flatnonzero(pieces.conductor == curved.conductor)
+            rim[here] = curved.beyond(pieces.corners[here])
+        return cls(pieces.corners, pieces.conductor, pieces.feature, pieces.sagitta, rim)
+
+    def beyond_rims(self) -> tuple[np.ndarray, np.ndarray]:
+        """Area (n,) over that of each panel beyond its sides on curved rims, and its width there.
+
+        The width is across the side on the rim, the first if there are two, and 0 without one.
+        """
+        step = np.roll(self.corners, -1, axis=1) - self.corners
+        length, area = np.linalg.norm(step, axis=2), _areas(self.corners)
+        side = np.argmax(self.rim != 0.0, axis=1)
+        rows = np.arange(len(side))
+        reach = self.corners - self.corners[rows, side][:, None]
+        off = np.linalg.norm(np.cross(reach, step[rows, side][:, None]), axis=2).max(axis=1)
+        width = np.where(self.rim.any(axis=1), off / length[rows, side], 0.0)
+        return (self.rim * length).sum(axis=1) / area, width
 
     def refine(self, marked: np.ndarray, across: np.ndarray) -> tuple[FlatFamily, np.ndarray]:
         """Halve marked panels, ``across`` 0 or 1 each.
@@ -76,12 +111,16 @@ class FlatFamily:
         near, rest = split(self.corners[marked], across[marked], np.full(marked.sum(), 0.5))
         order = np.concatenate([kept, np.flatnonzero(marked), np.flatnonzero(marked)])
         corners = np.concatenate([self.corners[kept], near, rest])
-        return FlatFamily(corners, self.conductor[order], self.feature[order]), kept
+        rim = np.concatenate([self.rim[kept], *split_sides(self.rim[marked], across[marked], 0.0)])
+        conductor, feature, sagitta = (
+            x[order] for x in (self.conductor, self.feature, self.sagitta)
+        )
+        return FlatFamily(corners, conductor, feature, sagitta, rim), kept
 
 
 def _pieces(patches: list[Patch], planes: Planes) -> Pieces:
     table = FacingTable.of(patches, planes)
-    corners, owner, gaps, feature = [], [], [], []
+    corners, owner, gaps, feature, sagitta = [], [], [], [], []
     for k, patch in enumerate(patches):
         walls = table.walls(k)
         for piece in _patch_pieces(patch, walls):
@@ -89,11 +128,13 @@ def _pieces(patches: list[Patch], planes: Planes) -> Pieces:
             owner.append(patch.conductor)
             gaps.append(_side_gaps(piece, walls, FLATNESS * patch.size))
             feature.append(patch.size)
+            sagitta.append(patch.sagitta)
     return Pieces(
         np.array(corners).reshape(-1, 4, 3),
         np.array(owner, dtype=int),
         np.array(gaps).reshape(-1, 4),
         np.array(feature),
+        np.array(sagitta),
     )
 
 
@@ -200,9 +241,8 @@ def _three_quads(pieces: Pieces) -> Pieces:
     triangle = doubled.any(axis=1)
     height = 2.0 * _areas(c) / scale
     compact = triangle & (scale < SLENDER * height)
-    parts = [
-        (c[~compact], pieces.conductor[~compact], pieces.gap[~compact], pieces.feature[~compact])
-    ]
+    same = pieces.conductor, pieces.feature, pieces.sagitta
+    parts = [(c[~compact], pieces.gap[~compact], *(x[~compact] for x in same))]
     keep = np.array([np.flatnonzero(~row) for row in doubled[compact]], dtype=int).reshape(-1, 3)
     tri = np.take_along_axis(c[compact], keep[:, :, None], axis=1)
     gap = np.take_along_axis(pieces.gap[compact], keep, axis=1)
@@ -214,8 +254,9 @@ def _three_quads(pieces: Pieces) -> Pieces:
         )
         inner = np.full(len(tri), np.inf)
         flags = np.stack([gap[:, k], inner, inner, gap[:, (k + 2) % 3]], axis=1)
-        parts.append((quad, pieces.conductor[compact], flags, pieces.feature[compact]))
-    return Pieces(*(np.concatenate(column) for column in zip(*parts, strict=True)))
+        parts.append((quad, flags, *(x[compact] for x in same)))
+    corners, gaps, *rest = (np.concatenate(column) for column in zip(*parts, strict=True))
+    return Pieces(corners, rest[0], gaps, *rest[1:])
 
 
 def _areas(corners: np.ndarray) -> np.ndarray:
@@ -226,18 +267,16 @@ def _areas(corners: np.ndarray) -> np.ndarray:
 def _apply(pieces: Pieces, cut: np.ndarray, across: np.ndarray, part: np.ndarray) -> Pieces:
     """Cut the pieces of index ``cut``; new sides feel no gap."""
     near, rest = split(pieces.corners[cut], across, part)
-    gap_near, gap_rest = pieces.gap[cut].copy(), pieces.gap[cut].copy()
-    rows = np.arange(len(cut))
-    gap_near[rows, np.where(across == 0, 1, 2)] = np.inf
-    gap_rest[rows, np.where(across == 0, 3, 0)] = np.inf
+    gaps = split_sides(pieces.gap[cut], across, np.inf)
     stay = np.ones(len(pieces.corners), dtype=bool)
     stay[cut] = False
     order = np.concatenate([np.flatnonzero(stay), cut, cut])
     return Pieces(
         np.concatenate([pieces.corners[stay], near, rest]),
         pieces.conductor[order],
-        np.concatenate([pieces.gap[stay], gap_near, gap_rest]),
+        np.concatenate([pieces.gap[stay], *gaps]),
         pieces.feature[order],
+        pieces.sagitta[order],
     )
 
 

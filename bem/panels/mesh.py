@@ -3,25 +3,28 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 
+from bem.geometry.fit import fit_of
 from bem.geometry.flat_faces import FLATNESS, FlatFaces
 from bem.geometry.planes import NO_PLANES, Planes
 from bem.geometry.surface import Surface
 from bem.geometry.topology import edges_of
 from bem.panels.align import align_patches
+from bem.panels.fitted import FittedFamily
 from bem.panels.flat import FlatFamily
 from bem.panels.planar import patches_of
 from bem.panels.proximity import crowded
+from bem.panels.rims import Rims
 
 if TYPE_CHECKING:
     from bem.geometry.revolved import Revolution
     from bem.panels.curved import CurvedFamily
 
-    Family = FlatFamily | CurvedFamily
+    Family = FlatFamily | CurvedFamily | FittedFamily
 
 PROXIMITY_ROOM = 1000
 """The starting mesh may grow to twice its panels and this many for the sake of small neighbours."""
@@ -38,10 +41,12 @@ class Body:
     Args:
         solid: its closed surface bounds metal; otherwise there is field on both sides.
         rounding: how far its surface may lie from where it was drawn.
+        sagitta: largest distance of its facets from the smooth surface that they may stand for.
     """
 
     solid: bool
     rounding: float
+    sagitta: float = 0.0
 
     @classmethod
     def of(cls, surface: Surface, hollow: bool, planes: Planes = NO_PLANES) -> Body:
@@ -60,7 +65,7 @@ class Mesh:
     """Panels of all conductors, family after family.
 
     Args:
-        families: flat panels of the whole scene, then one family per curved body.
+        families: flat panels of the whole scene, then one family per curved or fitted body.
         owners: per family, the conductor (n_family,) of each panel.
         bodies: what each conductor is.
         planes: whose images of all panels count too.
@@ -90,20 +95,35 @@ class Mesh:
         """
         flat = {k: FlatFaces.of(s) for k, s in enumerate(surfaces) if s.curve is None}
         accept(sum(faces.count for faces in flat.values()))
-        patches = [patch for k, faces in flat.items() for patch in patches_of(faces, k)]
+        fits = {k: fit for k, faces in flat.items() if (fit := fit_of(surfaces[k], faces))}
+        fitted = [k for k in fits if surfaces[k].smooth]
+        patches = [
+            patch
+            for k, faces in flat.items()
+            if k not in fitted
+            for patch in patches_of(faces, k, fits[k].sagitta if k in fits else None)
+        ]
         families: list[Family] = []
         owners = []
         if patches:
+            rims = [Rims.of(fit, k) for k, fit in fits.items() if k not in fitted]
             aligned = align_patches(patches, max(s.extent for s in surfaces))
-            family = FlatFamily.start(aligned, planes)
-            families.append(family)
-            owners.append(_owners(family, 0))
+            families.append(FlatFamily.start(aligned, planes, rims))
+            owners.append(_owners(families[-1], 0))
         for k, surface in enumerate(surfaces):
             if surface.curve is not None:
                 families.append(_curved(surface.curve))
-                owners.append(_owners(families[-1], k))
+            elif k in fitted:
+                families.append(FittedFamily.start(fits[k]))
+            else:
+                continue
+            owners.append(_owners(families[-1], k))
         accept(sum(len(owner) for owner in owners))
         bodies = tuple(Body.of(s, k in set(hollow), planes) for k, s in enumerate(surfaces))
+        bodies = tuple(
+            replace(body, sagitta=fits[k].farthest) if k in fits else body
+            for k, body in enumerate(bodies)
+        )
         return _resolved(cls(tuple(families), tuple(owners), bodies, planes))
 
     @property
@@ -136,6 +156,15 @@ class Mesh:
         """How far the panels are from the true surface."""
         parts = [
             _faceting(family, not self.bodies[owner[0]].solid)
+            for family, owner in zip(self.families, self.owners, strict=True)
+        ]
+        return Faceting(*(np.concatenate(column) for column in zip(*parts, strict=True)))
+
+    def doubtful(self) -> Faceting:
+        """How far the facets of files, or the fits to them, may be from what they stand for."""
+        solid = np.array([body.solid for body in self.bodies])
+        parts = [
+            _doubtful(family, solid[owner])
             for family, owner in zip(self.families, self.owners, strict=True)
         ]
         return Faceting(*(np.concatenate(column) for column in zip(*parts, strict=True)))
@@ -191,6 +220,15 @@ def _faceting(family: Family, sheet: bool) -> tuple[np.ndarray, ...]:
         return zero, zero, zero, zero.astype(bool)
     offset = family.offset if sheet else family.offset * family.crowding
     return offset, family.rim_offset, family.rim_width, np.full(count, sheet)
+
+
+def _doubtful(family: Family, solid: np.ndarray) -> tuple[np.ndarray, ...]:
+    sheet = ~solid
+    if isinstance(family, FlatFamily):
+        return family.sagitta, *family.beyond_rims(), sheet
+    if isinstance(family, FittedFamily):
+        return family.doubt, family.rim_doubt, family.rim_width, sheet
+    return *np.zeros((3, len(sheet))), sheet
 
 
 def _curved(surface: Revolution) -> CurvedFamily:

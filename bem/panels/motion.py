@@ -87,9 +87,13 @@ def motion_of(before: Surface, after: Surface) -> Motion | None:
         return _recurved(before.curve, after.curve)
     if before.curve is not None or after.curve is not None:
         return None
+    if bool(before.smooth) != bool(after.smooth) or before.crease != after.crease:
+        return None
     slack = FIT * max(before.extent, after.extent) + 3.0 * (before.rounding + after.rounding)
     if np.array_equal(before.faces, after.faces):
         whole = _fitted(before.vertices, after.vertices, slack)
+        if before.smooth:
+            return whole
         return whole or _by_faces(before, after, slack) or _by_triangles(before, after, slack)
     return _by_outlines(before, after, slack)
 

@@ -20,6 +20,8 @@ class Patch:
         axes: (3, 3) rows: two in-plane directions and the normal.
         edges: (e, 2, 2) outline in the plane, as unordered segments (holes included).
         faces: (f, 4, 2) the original faces in the plane, a triangle repeating its last corner.
+        sagitta: mean distance of the smooth surface that it may stand for, along the normal
+            that leads outward.
     """
 
     conductor: int
@@ -27,6 +29,7 @@ class Patch:
     axes: np.ndarray
     edges: np.ndarray
     faces: np.ndarray
+    sagitta: float = 0.0
 
     def lift(self, xy: np.ndarray) -> np.ndarray:
         """Points (..., 2) of the plane in space (..., 3)."""
@@ -77,8 +80,9 @@ def _is_between(x: np.ndarray, a: np.ndarray, b: np.ndarray, limit: float) -> bo
     return 0.0 < t < 1.0 and float(np.linalg.norm(x - a - t * step)) <= limit
 
 
-def patches_of(faces: FlatFaces, conductor: int) -> list[Patch]:
-    """The flat faces of a body with their outlines."""
+def patches_of(faces: FlatFaces, conductor: int, sagitta: np.ndarray | None = None) -> list[Patch]:
+    """The flat faces of a body with their outlines, and the sagitta (count,) of each."""
+    bulge = np.zeros(faces.count) if sagitta is None else sagitta
     origin, normal = faces.planes()
     order = np.argsort(faces.label, kind="stable")
     starts = np.searchsorted(faces.label[order], np.arange(faces.count + 1))
@@ -88,6 +92,7 @@ def patches_of(faces: FlatFaces, conductor: int) -> list[Patch]:
             faces.corners[order[starts[g] : starts[g + 1]]],
             conductor,
             (origin[g], normal[g], faces.limit),
+            float(bulge[g]),
         )
         for g in range(faces.count)
     ]
@@ -98,7 +103,7 @@ def planar_patches(surface: Surface, conductor: int) -> list[Patch]:
     return patches_of(FlatFaces.of(surface), conductor)
 
 
-def _make_patch(vertices, corners, conductor, plane) -> Patch:
+def _make_patch(vertices, corners, conductor, plane, sagitta) -> Patch:
     origin, normal, limit = plane
     edges = sides_of(corners)
     rim = np.unique(edges.pairs[edges.count[edges.group] == 1], axis=0)
@@ -107,4 +112,4 @@ def _make_patch(vertices, corners, conductor, plane) -> Patch:
     axes = _in_plane_axes(vertices[rim], normal)
     down = axes[:2].T
     flat = (vertices[corners] - origin) @ down
-    return Patch(conductor, origin, axes, (vertices[rim] - origin) @ down, flat)
+    return Patch(conductor, origin, axes, (vertices[rim] - origin) @ down, flat, sagitta)

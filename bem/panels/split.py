@@ -30,6 +30,23 @@ def split(
     return near, rest
 
 
+def split_sides(
+    values: np.ndarray, across: np.ndarray, inner: float
+) -> tuple[np.ndarray, np.ndarray]:
+    """What is known of the sides (n, 4) of quadrilaterals, for both pieces of each.
+
+    Args:
+        values: of the whole ones.
+        across: (n,) as in ``split``.
+        inner: value of the new sides between the pieces.
+    """
+    near, rest = values.copy(), values.copy()
+    rows = np.arange(len(values))
+    near[rows, np.where(across == 0, 1, 2)] = inner
+    rest[rows, np.where(across == 0, 3, 0)] = inner
+    return near, rest
+
+
 def mean_sides(corners: np.ndarray) -> np.ndarray:
     """(n, 2) mean lengths along sides 0-1/3-2 and along sides 1-2/0-3."""
     length = np.linalg.norm(np.roll(corners, -1, axis=1) - corners, axis=2)

@@ -13,6 +13,7 @@ import numpy as np
 
 from bem.geometry.flat_faces import FLATNESS
 from bem.geometry.planes import NO_PLANES, Planes
+from bem.panels.fitted import FittedFamily
 from bem.panels.flat import FlatFamily
 from bem.panels.mesh import Body, Mesh
 from bem.panels.motion import Affine, ByFaces, Motion, Recurved
@@ -57,7 +58,17 @@ def _carried(family: Family, owner: np.ndarray, motions: list[Motion]) -> Family
     if isinstance(family, FlatFamily):
         return _carried_flat(family, motions)
     motion = motions[owner[0]]
-    return family if motion.still else _carried_curved(family, motion)
+    if motion.still:
+        return family
+    if isinstance(family, FittedFamily):
+        return _carried_fitted(family, motion)
+    return _carried_curved(family, motion)
+
+
+def _carried_fitted(family: FittedFamily, motion: Motion) -> FittedFamily:
+    if not isinstance(motion, Affine):
+        raise TypeError(f"a fitted surface cannot go by {type(motion).__name__}")
+    return family.placed(motion.matrix, motion.shift)
 
 
 def _carried_curved(family: CurvedFamily, motion: Motion) -> CurvedFamily:
@@ -67,14 +78,16 @@ def _carried_curved(family: CurvedFamily, motion: Motion) -> CurvedFamily:
 
 
 def _carried_flat(family: FlatFamily, motions: list[Motion]) -> FlatFamily:
-    corners = family.corners.copy()
+    corners, size = family.corners.copy(), np.ones(len(family.conductor))
     for k in np.unique(family.conductor):
         here, motion = family.conductor == k, motions[k]
         if isinstance(motion, ByFaces):
             corners[here] = _each_face(corners[here], motion)
         elif isinstance(motion, Affine) and not motion.still:
             corners[here] = motion(corners[here])
-    return replace(family, corners=corners)
+            size[here] = np.cbrt(abs(np.linalg.det(motion.matrix)))
+    sagitta, rim = family.sagitta * size, family.rim * size[:, None]
+    return replace(family, corners=corners, sagitta=sagitta, rim=rim)
 
 
 def _each_face(corners: np.ndarray, motion: ByFaces) -> np.ndarray:

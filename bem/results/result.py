@@ -65,7 +65,8 @@ class CapacitanceResult:
         tolerance: what was asked: every bar at most this times sqrt(C_ii C_jj).
         pairs: {(name, name): relative accuracy asked for that coupling}.
         converged: whether all that was asked was reached.
-        stopped_by: "tolerance", "max-panels", "memory", "rounds", "breakdown" or "interrupt".
+        stopped_by: "tolerance", "max-panels", "memory", "rounds", "breakdown",
+            "input-rounding", "faceting" or "interrupt".
         rounds: one record per round.
         budget: parts of the largest bars, {part name: (n, n) F}.
         audit: findings of the audit, {check name: {"value": float, "limit": float, "ok": bool}}.

@@ -40,6 +40,17 @@ def positive(where: str, value: Any) -> float:
     return float(value)
 
 
+def flag(where: str, value: Any) -> bool:
+    """Return true or false.
+
+    Raises:
+        InputError: it is neither.
+    """
+    if not isinstance(value, bool):
+        raise refuse(where, value, "true or false")
+    return value
+
+
 def triple(where: str, value: Any) -> tuple[float, float, float]:
     """Return three finite numbers.
 

@@ -11,6 +11,7 @@ from bem.geometry.planes import Planes
 from bem.geometry.repair import SEAMS
 from bem.geometry.wording import counted, metre_text, point_text
 from bem.scene.body import Body, body_of
+from bem.scene.facet_notes import facet_notes
 from bem.scene.pairs import ALL_PAIRS, CONTACT, PairReport, all_pairs
 from bem.scene.plane_checks import ground_gap, on_kept_side, plane_findings
 from bem.scene.scene import Scene
@@ -93,8 +94,12 @@ class Inspection:
     ground_gaps: tuple[float, ...] = ()
 
 
-def inspect(scene: Scene) -> Inspection:
+def inspect(scene: Scene, facets: bool = True) -> Inspection:
     """Look at every conductor and every pair of conductors.
+
+    Args:
+        scene: what to look at.
+        facets: also compare facets with the smooth surfaces that they may stand for.
 
     Raises:
         InputError: the scene has no conductors.
@@ -120,6 +125,7 @@ def inspect(scene: Scene) -> Inspection:
         warnings=warnings,
         notes=[
             *warnings,
+            *(facet_notes(scene.conductors) if facets else ()),
             *_junctions(bodies, scene.unit),
             *_pair_notes([p for p in pairs if p not in bad], len(bodies)),
         ],
@@ -133,7 +139,7 @@ def check_scene(scene: Scene) -> Inspection:
         GeometryError: conductors touch, cross, or lie in solid metal.
         InputError: the scene has no conductors.
     """
-    inspection = inspect(scene)
+    inspection = inspect(scene, facets=False)
     if inspection.fatal:
         more = len(inspection.fatal) - 1
         rest = f" (and {counted(more, 'more finding')}: see bem inspect)" if more else ""

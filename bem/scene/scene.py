@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any
@@ -18,6 +19,8 @@ from bem.units import metres_per
 
 __all__ = ["Conductor", "Place", "Scene", "Source", "rotation"]
 
+SHARPEST = 90.0
+"""Largest crease angle in degrees: no surface turns smoothly by more from facet to facet."""
 BODIES = ("solid", "shell")
 """What a closed surface may stand for: solid metal, or a hollow skin of metal."""
 
@@ -100,6 +103,8 @@ class Scene:
         place: Place | None = None,
         body: str = "solid",
         unit: str | None = None,
+        smooth: bool | None = None,
+        crease_degrees: float | None = None,
         state: str = TERMINAL,
         node: str | None = None,
         split: bool = False,
@@ -114,6 +119,10 @@ class Scene:
             place: scaled first, then turned about the origin, then shifted.
             body: "solid" (a closed surface is solid metal) or "shell" (hollow).
             unit: of the numbers in the mesh file, if not the scene's.
+            smooth: True refines onto a smooth surface fitted to the facets, False takes the
+                facets for the shape; left out, they are solved as they are, and the bar holds
+                what a smooth surface would change.
+            crease_degrees: edges that turn by more stay sharp, 40 if left out.
             state: "terminal" of the matrix, "grounded", or "floating" with no net charge.
             node: conductors with one node are tied, and have one state.
             split: each body in the mesh file is a conductor of its own, "NAME 1", "NAME 2", ...
@@ -140,6 +149,7 @@ class Scene:
             raise type(problem)(f"{entry}: {problem}") from None
         if where != Place():
             surface = surface.placed(where.matrix, metres_per(self.unit) * np.array(where.shift))
+        surface = _smoothing(entry, surface, smooth, crease_degrees)
         whole = Conductor(name, surface, body, source, state, node)
         return self._append(entry, _pieces(whole) if split else [whole])
 
@@ -246,6 +256,20 @@ def _pieces(whole: Conductor) -> list[Conductor]:
 def entry_name(number: int, name: Any) -> str:
     """Name an entry as messages do: 'conductor 2 ("probe rod")'."""
     return f'conductor {number} ("{name}")' if isinstance(name, str) else f"conductor {number}"
+
+
+def _smoothing(entry: str, surface: Surface, smooth: Any, crease_degrees: Any) -> Surface:
+    """Surface with what its user says of its facets."""
+    if smooth is not None:
+        surface = replace(surface, smooth=checks.flag(f"{entry}: smooth", smooth))
+    if crease_degrees is not None:
+        degrees = checks.positive(f"{entry}: crease_degrees", crease_degrees)
+        if degrees > SHARPEST:
+            raise checks.refuse(
+                f"{entry}: crease_degrees", degrees, f"an angle of at most {SHARPEST:g}"
+            )
+        surface = replace(surface, crease=math.radians(degrees))
+    return surface
 
 
 def _check_choice(entry: str, given: dict[str, Any]) -> None:

@@ -18,6 +18,8 @@ A scene file::
     body = "solid"                 # optional: or "shell", hollow
     state = "grounded"             # optional: or "floating", "terminal"
     node = "shield"                # optional: conductors with one node are tied
+    smooth = true                  # optional: refine onto a smooth surface fitted to the facets
+    crease_degrees = 40            # optional: edges that turn by more stay sharp
     place = { shift = [0, 0, 12.5], turn = { axis = [0, 0, 1], degrees = 90 }, scale = 1.0 }
 """
 
@@ -40,7 +42,10 @@ from bem.scene.states import check_terminals
 from bem.units import METRES_PER
 
 _TOP = ("unit", "surroundings", "ground_plane", "mirror_plane", "conductor")
-_CONDUCTOR = ("name", "mesh", "shape", "part", "unit", "body", "place", "state", "node", "split")
+_CONDUCTOR = (
+    *("name", "mesh", "shape", "part", "unit", "body", "smooth", "crease_degrees"),
+    *("place", "state", "node", "split"),
+)
 _POSITION = re.compile(r"\(at (line \d+, column \d+|end of document)\)")
 
 
