@@ -23,8 +23,8 @@ ALIKE = 1e-2
 """Relative to the diagonal: how well a faceted body must be its own mirror image."""
 
 CUT_FACETS = (
-    "a smooth surface cannot be fitted to facets that the mirror plane across {axis} cuts; mesh "
-    "the body with edges in the plane, or leave smooth out"
+    "has facets that the mirror plane {axis} cuts, and half a facet does not show the smooth "
+    "surface; mesh it with edges in the plane, or leave smooth = true out"
 )
 
 
