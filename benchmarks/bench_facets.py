@@ -1,6 +1,6 @@
 """Facets that stand for a smooth surface: true error and bar, left as they are and fitted.
 
-    python benchmarks/bench_facets.py [--tolerance 3e-3] [--max-panels 3000] [PART OF A NAME ...]
+    python benchmarks/bench_facets.py [--tolerance 3e-3] [--max-panels 6000] [PART OF A NAME ...]
 
 Truth: exact values of spheres, ellipsoids (elliptic integral) and discs, and of the open half
 sphere (Kelvin 1869, from memory); for cylinder, ring and annulus the shapes with a true surface
@@ -92,7 +92,7 @@ def main() -> None:
     parser = argparse.ArgumentParser()
     parser.add_argument("names", nargs="*")
     parser.add_argument("--tolerance", type=float, default=3e-3)
-    parser.add_argument("--max-panels", type=int, default=3000)
+    parser.add_argument("--max-panels", type=int, default=6000)
     args = parser.parse_args()
     print("| body | facets | smooth | true error | bar | of it facets | panels |")
     print("|---|---|---|---|---|---|---|")
