@@ -218,7 +218,9 @@ def _faceting(family: Family, sheet: bool) -> tuple[np.ndarray, ...]:
     if isinstance(family, FlatFamily):
         zero = np.zeros(count)
         return zero, zero, zero, zero.astype(bool)
-    offset = family.offset if sheet else family.offset * family.crowding
+    offset = family.offset
+    if not (sheet or isinstance(family, FittedFamily)):
+        offset = offset * family.crowding
     return offset, family.rim_offset, family.rim_width, np.full(count, sheet)
 
 
