@@ -23,7 +23,7 @@ def before(doubt: float = 0.1, facets: float = 0.0) -> Estimate:
 def of_round(value: float = 1e-3, absolute: float = 1e-5, **changes: np.ndarray) -> ChangeSums:
     """Sums of a round with one number in every entry."""
     one = np.ones((2, 3))
-    sums = ChangeSums(value * one, ZERO, absolute * one, ZERO, ZERO, ZERO)
+    sums = ChangeSums(value * one, ZERO, absolute * one, *[ZERO] * 4)
     return replace(sums, **changes)
 
 

@@ -10,8 +10,9 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from faceted_bodies import cylinder, disc, icosphere, uneven_sphere
+from faceted_bodies import bowl, cylinder, disc, icosphere, uneven_sphere
 from made_bodies import cube, soup, stl_binary, turned
+from reference_formulas import two_spheres
 from scenes import in_lengths
 
 import bem
@@ -22,6 +23,7 @@ from bem.panels.fitted import FittedFamily
 from bem.panels.flat import FlatFamily
 from bem.panels.mesh import Mesh
 from bem.panels.rims import Rims
+from bem.scene.placing import rotation
 
 PART = "facets of the file"
 DISC = 2.0 / np.pi
@@ -281,3 +283,46 @@ def test_inspection_stops_looking_at_very_many_facets(monkeypatch: pytest.Monkey
     monkeypatch.setattr(facet_notes, "MOST_FACETS", 700)
     lines = facet_notes.facet_notes(scene.conductors)
     assert len(lines) == 3 and lines[-1].startswith("facets of the last 1 conductor not compared")
+
+
+@pytest.mark.parametrize("count", [16, 32])
+def test_a_bowl_is_inside_its_bar(count: int) -> None:
+    """Open half sphere: a (1/2 + 1/pi) (Kelvin 1869, from memory)."""
+    result = solved(bowl(count), True, 3e-3)
+    assert result.converged
+    assert miss(result, 0.5 + 1.0 / np.pi) <= bar(result)
+
+
+def test_a_mirror_plane_along_edges_or_through_facets() -> None:
+    """Half of a cylinder is solved; a plane through the middle of its facets is refused."""
+    values = []
+    for mirrored in (False, True):
+        scene = bem.Scene(unit="m").add_conductor("rod", cylinder(24), smooth=True)
+        if mirrored:
+            scene.add_mirror_plane(x=0.0)
+        values.append(bem.extract(scene, 5e-3, threads=1))
+    whole, half = values
+    apart = abs(whole.capacitance[0, 0] - half.capacitance[0, 0])
+    assert apart <= whole.error[0, 0] + half.error[0, 0]
+    assert half.panels < 0.75 * whole.panels
+    turned_a_little = cylinder(24).placed(rotation((0.0, 0.0, 1.0), 7.5), np.zeros(3))
+    scene = bem.Scene(unit="m").add_conductor("rod", turned_a_little, smooth=True)
+    scene.add_mirror_plane(x=0.0)
+    with pytest.raises(bem.InputError, match="half a facet does not show the smooth surface"):
+        bem.extract(scene, 5e-3, threads=1)
+
+
+def test_fitted_bodies_go_over_to_another_scene() -> None:
+    """A gap that changes: both scenes on the same panels, so that nearly all errors cancel."""
+    scenes = []
+    for gap in (1.0, 1.01):
+        scene = bem.Scene(unit="m")
+        for k in range(2):
+            place = bem.Place(shift=((2.0 + gap) * k, 0.0, 0.0))
+            scene.add_conductor(f"ball {k}", icosphere(1), smooth=True, place=place)
+        scenes.append(scene)
+    found = bem.compare(*scenes, 2e-2, threads=1)
+    exact = [two_spheres(1.0, 1.0, 2.0 + gap) for gap in (1.0, 1.01)]
+    change = in_lengths(found.change[0, 1])
+    assert abs(change - (exact[1] - exact[0])[0, 1]) <= in_lengths(found.change_error[0, 1])
+    assert in_lengths(found.change_error[0, 1]) < 0.2 * abs(change)

@@ -16,7 +16,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from bem.extraction.estimate import ROUNDS, Estimate, widening
+from bem.extraction.estimate import FILES, ROUNDS, Estimate, widening
 from bem.extraction.solution import Solution, Sums, rounding_effect, with_all
 
 SHARE, TREND, DOUBT = 0.4, 0.5, 0.4
@@ -38,6 +38,7 @@ class ChangeSums:
         quadrature: change of the quadrature effect.
         faceting: change of the faceting effect.
         rounding: largest effect of rounded input on either side, where it is not the same.
+        files: change of the effect of a smooth surface that facets of files may stand for.
     """
 
     value: np.ndarray
@@ -46,6 +47,7 @@ class ChangeSums:
     quadrature: np.ndarray
     faceting: np.ndarray
     rounding: np.ndarray
+    files: np.ndarray
 
 
 @dataclass(frozen=True)
@@ -83,6 +85,7 @@ def change_sums(
         quadrature=rows + FAR_CHANGE * far,
         faceting=sums_second.faceting - sums_first.faceting,
         rounding=_rounding(first, redrawn) + _rounding(second, redrawn),
+        files=np.abs(sums_second.files - sums_first.files),
     )
 
 
@@ -139,6 +142,7 @@ def estimate_change(rounds: list[ChangeSums], before: Estimate) -> Change:
         "trend": wide * trend,
         "quadrature": last.quadrature + _floor(last, value, before.value),
         "input rounding": last.rounding,
+        "facets of the file": FILES * last.files,
         "faceting": wide * before.facet_doubt * np.abs(last.faceting),
     }
     return Change(value, sum(parts.values()), parts)

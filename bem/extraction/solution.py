@@ -136,7 +136,7 @@ def sums(solution: Solution) -> Sums:
         panels=len(area),
         value=with_all(value),
         signed=w.T @ every,
-        absolute=np.abs(w).T @ np.abs(every),
+        absolute=(np.tile(solution.mesh.unsure(), 4) * np.abs(w).T) @ np.abs(every),
         quadrature=rows + 2.0 * operator.far_error * magnitude,
         cancellation=float((np.diagonal(magnitude) / np.diagonal(value)).max()),
         faceting=faceting_effect(solution),

@@ -1,6 +1,7 @@
 """Sheets and prisms with any outline and holes.
 
-The corners of facets that stand for an arc lie on it.
+The corners of facets that stand for an arc lie on it; a prism is solved on a smooth surface fitted
+to them.
 """
 
 from __future__ import annotations
@@ -13,6 +14,9 @@ from bem.geometry import shape_values as need
 from bem.geometry.outlines import Hole, Region, region
 from bem.geometry.steps import AROUND, Step
 from bem.geometry.surface import NO_CORNER, Surface
+
+FACETS_TO_CREASE = 1.5
+"""Corners that turn by more than this times the facets of an arc are sharp."""
 
 
 def sheet(outline: Sequence[Step], holes: Sequence[Hole] = (), around: int = AROUND) -> Surface:
@@ -29,7 +33,8 @@ def sheet(outline: Sequence[Step], holes: Sequence[Hole] = (), around: int = ARO
             number is not finite.
     """
     flat = region(outline, holes, around)
-    return Surface(_lifted(flat.points, 0.0), _with_three_corners(flat.triangles()))
+    faces = _with_three_corners(flat.triangles())
+    return Surface(_lifted(flat.points, 0.0), faces, smooth=None if flat.curved else False)
 
 
 def extrude(
@@ -51,7 +56,8 @@ def extrude(
     top = need.length("height", height)
     flat = region(outline, holes, around)
     vertices = np.concatenate([_lifted(flat.points, 0.0), _lifted(flat.points, top)])
-    return Surface(vertices, _prism(flat))
+    crease = FACETS_TO_CREASE * 2.0 * np.pi / around
+    return Surface(vertices, _prism(flat), smooth=flat.curved, crease=crease)
 
 
 def _prism(flat: Region) -> np.ndarray:

@@ -12,6 +12,8 @@ import numpy as np
 
 from bem.errors import GeometryError
 from bem.geometry.clip import clipped
+from bem.geometry.fit import fit_of
+from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.planes import AXES, Plane, Planes
 from bem.geometry.surface import Surface
 from bem.geometry.symmetry import NOT_SYMMETRIC, kept_part
@@ -24,7 +26,7 @@ ALIKE = 1e-2
 
 CUT_FACETS = (
     "has facets that the mirror plane {axis} cuts, and half a facet does not show the smooth "
-    "surface; mesh it with edges in the plane, or leave smooth = true out"
+    "surface; mesh it with edges in the plane, or give smooth = false"
 )
 
 
@@ -95,8 +97,12 @@ def _kept_half(surface: Surface, mirror: Plane, solid: bool) -> Surface:
 
 
 def _cuts_facets(surface: Surface, mirror: Plane, tolerance: float) -> bool:
-    """Whether a plane runs through the middle of facets instead of along their edges."""
-    height = mirror.height(surface.vertices)[surface.triangles]
+    """Whether a plane runs through the middle of facets that the fitted surface leaves."""
+    fit = fit_of(surface, FlatFaces.of(surface))
+    if fit is None:
+        return False
+    bent = fit.sagitta[fit.facets.flat] != 0.0
+    height = mirror.height(fit.facets.points)[fit.facets.corners[bent]]
     return bool(((height < -tolerance).any(axis=1) & (height > tolerance).any(axis=1)).any())
 
 

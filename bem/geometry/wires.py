@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from dataclasses import replace
 from typing import NamedTuple
 
 import numpy as np
@@ -64,7 +65,8 @@ def wire(
             of a straight wire lie level and upright.
         bend_radius: of the middle line at the corners of the path. It must be above half the
             width of the wire; 0 cuts the corners of a square wire to a sharp mitre.
-        around: facets around a bent round wire. A straight one knows its true surface.
+        around: facets around a bent round wire, which is solved on a smooth surface fitted to
+            them. A straight one knows its true surface.
 
     Raises:
         UsageError: the path is too short, turns back or comes too near to itself, a bend does
@@ -81,7 +83,8 @@ def wire(
         )
     rings = _rings(middle, section)
     check_apart(middle, section.size)
-    return _looped(rings) if middle.loops else _capped(rings, section.curved)
+    whole = _looped(rings) if middle.loops else _capped(rings, section.curved)
+    return replace(whole, smooth=section.curved or bend_radius > 0.0)
 
 
 def _section(radius: float | None, side: float | None, around: int) -> Section:

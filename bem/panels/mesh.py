@@ -26,6 +26,8 @@ if TYPE_CHECKING:
 
     Family = FlatFamily | CurvedFamily | FittedFamily
 
+BENT_SHEET = 4.0
+"""How much more the residual of a panel on a fitted bent sheet counts towards the bar."""
 PROXIMITY_ROOM = 1000
 """The starting mesh may grow to twice its panels and this many for the sake of small neighbours."""
 
@@ -159,6 +161,19 @@ class Mesh:
             for family, owner in zip(self.families, self.owners, strict=True)
         ]
         return Faceting(*(np.concatenate(column) for column in zip(*parts, strict=True)))
+
+    def unsure(self) -> np.ndarray:
+        """(n,) factor on what the residual of each panel says of the error.
+
+        It is above 1 on fitted bent sheets, whose rims triangles resolve slowly.
+        """
+        bent = [
+            isinstance(family, FittedFamily)
+            and not self.bodies[owner[0]].solid
+            and bool(family.doubt.any())
+            for family, owner in zip(self.families, self.owners, strict=True)
+        ]
+        return np.repeat(np.where(bent, BENT_SHEET, 1.0), [len(owner) for owner in self.owners])
 
     def doubtful(self) -> Faceting:
         """How far the facets of files, or the fits to them, may be from what they stand for."""
