@@ -270,7 +270,7 @@ COMPARISON = (
         "panels/transport.py",
         "if before.planes != after.planes:",
         "if before.planes is None:",
-        ("test_compare.py::test_a_ball_rises_or_the_grounded_plane_sinks",),
+        ("test_compare_panels.py",),
     ),
     Fault(
         "panels of a curve in another order than before",

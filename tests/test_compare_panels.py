@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from made_bodies import faces_of
 from scenes import meshed_box, moved, tidy
 
 from bem.geometry import shapes
+from bem.geometry.planes import Plane, Planes
 from bem.geometry.surface import Surface
 from bem.panels.mesh import Body, Mesh
 from bem.panels.motion import Affine, ByFaces, Recurved, loosened, motion_of
@@ -73,6 +76,16 @@ def test_what_stays_keeps_every_bit() -> None:
     assert np.abs(there.corners - here.corners)[here.conductor == 1] == pytest.approx(
         np.broadcast_to(UP, ((here.conductor == 1).sum(), 4, 3)), abs=1e-15
     )
+
+
+def test_beside_another_plane_nothing_stays() -> None:
+    """Panels see their images, and these move with the plane."""
+    plate = shapes.plate(1, 1)
+    here, there = carried([plate], [plate])
+    assert unmoved(here, there).all()
+    grounded = replace(there, planes=Planes(Plane(2, -0.1)))
+    assert not unmoved(here, grounded).any()
+    assert unmoved(grounded, grounded).all()
 
 
 def test_the_simplest_map_is_found() -> None:
