@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
 import pytest
+from faceted_bodies import icosphere
 from reference_formulas import concentric_spheres, two_discs, two_spheres
 from reference_values import BY_NAME
 from scenes import in_lengths, moved, scene_from_files, scene_of
@@ -305,6 +307,28 @@ def test_sides_that_are_neither_scene_nor_result() -> None:
 def test_a_scene_that_cannot_be_solved() -> None:
     with pytest.raises(bem.GeometryError, match="touch"):
         compared(plates(0.1), plates(0.0))
+
+
+def ball_of_facets(scene: bem.Scene, smooth: bool | None, z: float) -> None:
+    """Add a ball of 320 flat triangles, which may stand for the smooth one."""
+    body = replace(at(icosphere(2), z), smooth=smooth)
+    scene.add_conductor(f"ball {len(scene.conductors)}", body)
+
+
+@pytest.mark.parametrize("smooth", [None, True])
+def test_facets_that_stand_for_a_ball(smooth: bool | None) -> None:
+    """Whether fitted or doubted, the bar of the change holds for true balls."""
+    before, after = bem.Scene(unit="m"), bem.Scene(unit="m")
+    for scene, distance in ((before, 3.0), (after, 3.003)):
+        ball_of_facets(scene, smooth, 0.0)
+        ball_of_facets(scene, smooth, distance)
+    found = compare(before, after, threads=1)
+    assert found.correlated
+    exact = two_spheres(1, 1, 3.003) - two_spheres(1, 1, 3.0)
+    apart = np.abs(in_lengths(found.change) - exact)
+    assert np.all(apart <= in_lengths(found.change_error))
+    part = 0.02 if smooth else 0.1
+    assert np.all(found.change_error <= part * np.abs(found.change))
 
 
 def over_ground(height: float, ground: float = 0.0) -> bem.Scene:

@@ -9,7 +9,7 @@ import pytest
 
 from bem.extraction import change as module
 from bem.extraction.change import ChangeSums, estimate_change
-from bem.extraction.estimate import Estimate
+from bem.extraction.estimate import FILES, Estimate
 
 SIZE = np.array([[1.0, -0.4, 0.6], [-0.4, 4.0, 3.6]])
 ZERO = np.zeros((2, 3))
@@ -23,7 +23,7 @@ def before(doubt: float = 0.1, facets: float = 0.0) -> Estimate:
 def of_round(value: float = 1e-3, absolute: float = 1e-5, **changes: np.ndarray) -> ChangeSums:
     """Sums of a round with one number in every entry."""
     one = np.ones((2, 3))
-    sums = ChangeSums(value * one, ZERO, absolute * one, *[ZERO] * 4)
+    sums = ChangeSums(value * one, ZERO, absolute * one, ZERO, ZERO, ZERO, ZERO)
     return replace(sums, **changes)
 
 
@@ -44,13 +44,14 @@ def test_bar_is_the_sum_of_its_parts() -> None:
     rest = {
         "quadrature": np.full((2, 3), 2e-7),
         "rounding": np.full((2, 3), 4e-7),
+        "files": np.full((2, 3), 3e-7),
         "faceting": np.full((2, 3), -6e-6),
     }
     rounds = [of_round(1e-3 + drift) for drift in (9.0, 2e-6, 1e-6)]
     found = estimate_change([*rounds, of_round(**rest)], before(0.1, 0.5))
     drift = np.abs(2e-6 - -6e-6)
     share = module.SHARE + 0.1 * module.DOUBT
-    expected = share * 1e-5 + module.TREND * drift + 0.5 * 6e-6 + 2e-7 + 4e-7
+    expected = share * 1e-5 + module.TREND * drift + 0.5 * 6e-6 + 2e-7 + 4e-7 + FILES * 3e-7
     assert found.bar == pytest.approx(expected + floor(1e-3 - 6e-6), rel=1e-9, abs=0.0)
     assert found.bar == pytest.approx(sum(found.parts.values()), abs=0.0)
 

@@ -1,7 +1,7 @@
 """The change between two scenes solved on the same panels, and its error bar.
 
     dX  = dL + kappa dS + dF
-    bar = w ((SHARE + DOUBT dk) D + TREND drift + facet_doubt |dF|) + q + r + floor
+    bar = w ((SHARE + DOUBT dk) D + TREND drift + facet_doubt |dF|) + q + r + FILES f + floor
 
 d is the difference between the scenes after one and the same round, D the sum over all panels
 and tests of the absolute change of each product of residuals, kappa and dk the slope of the first
@@ -17,7 +17,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from bem.extraction.estimate import FILES, ROUNDS, Estimate, widening
-from bem.extraction.solution import Solution, Sums, rounding_effect, with_all
+from bem.extraction.solution import Solution, Sums, file_facet_factors, rounding_effect, with_all
 
 SHARE, TREND, DOUBT = 0.4, 0.5, 0.4
 """Factors of the parts of the bar, in the order of the formula above."""
@@ -38,7 +38,7 @@ class ChangeSums:
         quadrature: change of the quadrature effect.
         faceting: change of the faceting effect.
         rounding: largest effect of rounded input on either side, where it is not the same.
-        files: change of the effect of a smooth surface that facets of files may stand for.
+        files: largest change of the effect of curves that facets of files may stand for.
     """
 
     value: np.ndarray
@@ -85,8 +85,24 @@ def change_sums(
         quadrature=rows + FAR_CHANGE * far,
         faceting=sums_second.faceting - sums_first.faceting,
         rounding=_rounding(first, redrawn) + _rounding(second, redrawn),
-        files=np.abs(sums_second.files - sums_first.files),
+        files=_file_facets(first, second),
     )
+
+
+def _file_facets(first: Solution, second: Solution) -> np.ndarray:
+    """(k, k + 1) sum of the absolute changes of what ``file_facet_bound`` sums."""
+    count = first.density.shape[1]
+    if first.mesh.doubtful().exact and second.mesh.doubtful().exact:
+        return np.zeros((count, count + 1))
+    a, b = file_facet_factors(first), file_facet_factors(second)
+    found = np.array(
+        [
+            np.abs(second.density[:, i, None] * b - first.density[:, i, None] * a).sum(axis=(0, 1))
+            for i in range(count)
+        ]
+    )
+    found[:, :-1] = 0.5 * (found[:, :-1] + found[:, :-1].T)
+    return found
 
 
 def _rounding(solution: Solution, redrawn: np.ndarray) -> np.ndarray:

@@ -12,6 +12,7 @@ import numpy as np
 
 from bem import __version__
 from bem.errors import UsageError
+from bem.extraction.audit import Audit
 from bem.extraction.counterpart import Counterparts, check_names, in_order
 from bem.extraction.extract import (
     MAX_PANELS,
@@ -23,11 +24,13 @@ from bem.extraction.extract import (
     result_of,
     warnings_of,
 )
+from bem.extraction.facets import facet_lines, facet_record
 from bem.extraction.lockstep import Carrier, Lockstep
 from bem.extraction.loop import Limits, Run
 from bem.extraction.marking import Goal
 from bem.extraction.memory import MemoryPlan
 from bem.extraction.progress import Progress
+from bem.extraction.scaled import ScaledScene
 from bem.extraction.threads import use_threads
 from bem.geometry.wording import listed
 from bem.panels.mesh import Mesh
@@ -241,7 +244,7 @@ def _in_lockstep(
         "operator": "dense",
     }
     first, second = (
-        result_of(scene, scaled, run.alone(own), found, (seconds, _with(settings, scene), lines))
+        _one_result((scene, scaled, lines), run.alone(own), found, (seconds, settings))
         for scene, scaled, own, found, lines in zip(
             (task.first, task.second),
             (task.pair.first, task.pair.second),
@@ -255,9 +258,23 @@ def _in_lockstep(
     return _compared(run, (first, second), task.pair, (asked, extra, seconds))
 
 
-def _with(settings: dict[str, Any], scene: Scene) -> dict[str, Any]:
-    medium = {"relative_permittivity": scene.relative_permittivity}
-    return {**settings, **medium, **planes_record(scene.planes)}
+def _one_result(
+    side: tuple[Scene, ScaledScene, tuple[str, ...]],
+    run: Run,
+    found: Audit,
+    how: tuple[dict[str, float], dict[str, Any]],
+) -> CapacitanceResult:
+    """The result of one side, as if it had been extracted by itself."""
+    (scene, scaled, lines), (seconds, settings) = side, how
+    facets = facet_record(scene, scaled, run.rounds[-1].solution)
+    settings = {
+        **settings,
+        "relative_permittivity": scene.relative_permittivity,
+        **planes_record(scene.planes),
+        "facets": facets,
+    }
+    notes = lines + tuple(facet_lines(scene, facets))
+    return result_of(scene, scaled, run, found, (seconds, settings, notes))
 
 
 def _compared(

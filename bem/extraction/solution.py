@@ -179,14 +179,20 @@ def file_facet_bound(solution: Solution) -> np.ndarray:
 
     The first-order formulas of ``faceting_effect`` with absolute values.
     """
-    faceting, size = solution.mesh.doubtful(), np.abs(solution.density)
-    if faceting.exact:
-        return np.zeros((size.shape[1], size.shape[1] + 1))
-    normal, rim = (np.abs(push)[:, None] for push in _pushes(solution, faceting))
-    excess = np.abs(with_all(_side_difference(solution, faceting)))
-    bound = size.T @ (normal * excess + rim * np.abs(with_all(solution.density)))
+    density = solution.density
+    if solution.mesh.doubtful().exact:
+        return np.zeros((density.shape[1], density.shape[1] + 1))
+    bound = np.abs(density).T @ np.abs(file_facet_factors(solution)).sum(axis=0)
     bound[:, :-1] = 0.5 * (bound[:, :-1] + bound[:, :-1].T)
     return bound
+
+
+def file_facet_factors(solution: Solution) -> np.ndarray:
+    """(2, n, k + 1) what each density is multiplied by, for moves along the normal and of rims."""
+    faceting = solution.mesh.doubtful()
+    normal, rim = (push[:, None] for push in _pushes(solution, faceting))
+    excess = with_all(_side_difference(solution, faceting))
+    return np.stack([normal * excess, rim * with_all(solution.density)])
 
 
 def file_facet_shares(solution: Solution) -> np.ndarray:

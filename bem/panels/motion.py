@@ -18,6 +18,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from scipy.spatial import cKDTree
 
+from bem.geometry.fit import fit_of
 from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.revolved import Arc, Piece, Revolution
 from bem.geometry.surface import NO_CORNER, Surface
@@ -170,6 +171,9 @@ def loosened(surface: Surface) -> Surface:
 
 
 def _by_triangles(before: Surface, after: Surface, slack: float) -> ByFaces | None:
+    """A map for each triangle, unless the facets may stand for a curve: it would be lost."""
+    if before.smooth is None and fit_of(before, FlatFaces.of(before)) is not None:
+        return None
     found = _by_faces(loosened(before), loosened(after), slack)
     return found and replace(found, loose=True)
 
