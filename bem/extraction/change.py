@@ -76,12 +76,13 @@ def change_sums(
         redrawn: (k,) bool, conductors whose numbers were rounded anew.
     """
     (first, sums_first), (second, sums_second) = before, after
+    unsure = np.sqrt(first.mesh.unsure())[:, None]
     far = np.abs(_far_effect(second) - _far_effect(first))
     rows = with_all(np.abs(_row_effect(second) - _row_effect(first)))
     return ChangeSums(
         value=sums_second.value - sums_first.value,
         signed=sums_second.signed - sums_first.signed,
-        absolute=product_changes(first.residual, second.residual),
+        absolute=product_changes(first.residual * unsure, second.residual * unsure),
         quadrature=rows + FAR_CHANGE * far,
         faceting=sums_second.faceting - sums_first.faceting,
         rounding=_rounding(first, redrawn) + _rounding(second, redrawn),
