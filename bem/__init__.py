@@ -8,7 +8,7 @@ from __future__ import annotations
 from importlib import import_module
 from typing import Any
 
-from bem.geometry.kinds import SHAPES
+from bem.geometry.shapes.kinds import SHAPES
 
 __version__ = "0.1.0"
 
@@ -17,7 +17,7 @@ _HOME = {
     "Place": "bem.scene.scene",
     "load_scene": "bem.scene.scene_file",
     "Surface": "bem.geometry.surface",
-    "ArcTo": "bem.geometry.steps",
+    "ArcTo": "bem.geometry.shapes.steps",
     **SHAPES,
     "extract": "bem.extraction.extract",
     "compare": "bem.extraction.compare",

@@ -24,7 +24,7 @@ PACKAGE = Path(__file__).parent
 def _sources() -> list[bytes]:
     """Names and contents of all kernel files, and of others with compiled functions."""
     kernels = sorted((PACKAGE / "kernels").glob("*.py"))
-    geometry = sorted((PACKAGE / "geometry").glob("*.py"))
+    geometry = sorted((PACKAGE / "geometry").rglob("*.py"))
     texts = [file.name.encode() + file.read_bytes() for file in geometry]
     compiled = [text for text in texts if b"bem.compiled import" in text]
     return [file.name.encode() + file.read_bytes() for file in kernels] + compiled

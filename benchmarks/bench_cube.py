@@ -25,7 +25,7 @@ from peer_finite_elements import EXACT, TARGETS, TUNED, cube_capacitance, time_t
 
 import bem  # noqa: E402
 from bem.extraction.progress import Progress  # noqa: E402
-from bem.geometry.shapes import box  # noqa: E402
+from bem.geometry.shapes.round import box  # noqa: E402
 
 TOLERANCES = (1e-2, 1e-3, 1e-4, 1e-5)
 COMMAND_REPEATS = 5

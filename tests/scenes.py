@@ -11,7 +11,7 @@ from reference_values import Body, Reference
 
 import bem
 from bem.geometry import shapes
-from bem.geometry.shapes import ArcTo
+from bem.geometry.shapes.round import ArcTo
 from bem.geometry.surface import Surface
 from bem.scene.placing import rotation
 from bem.units import EPS0

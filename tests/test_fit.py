@@ -25,11 +25,12 @@ from faceted_bodies import (
 from made_bodies import cube, turned
 
 import bem
-from bem.geometry import fit_normals, shapes
-from bem.geometry.fit import Fit, fit_of
-from bem.geometry.fit_edges import crease_tangents
-from bem.geometry.fit_facets import Facets
-from bem.geometry.fit_patches import (
+from bem.geometry import shapes
+from bem.geometry.fit import normals as fit_normals
+from bem.geometry.fit.edges import crease_tangents
+from bem.geometry.fit.facets import Facets
+from bem.geometry.fit.fit import Fit, fit_of
+from bem.geometry.fit.patches import (
     Piece,
     area_beyond,
     basis,

@@ -14,8 +14,8 @@ from hypothesis import strategies as st
 from made_bodies import turned
 from test_curved_panels import normals, solid_angle, unmatched
 
-from bem.geometry.fit import Fit
-from bem.geometry.fit_patches import basis
+from bem.geometry.fit.fit import Fit
+from bem.geometry.fit.patches import basis
 from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.surface import Surface
 from bem.panels.fitted import FEW, FittedFamily

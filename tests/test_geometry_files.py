@@ -20,7 +20,7 @@ from made_bodies import (
 )
 
 from bem.errors import InputError
-from bem.geometry.files import Bodies, bodies_in, file_digest, read_surface
+from bem.geometry.reading.files import Bodies, bodies_in, file_digest, read_surface
 
 MM = 1e-3
 MSH_VERSIONS = [("2.2", False), ("2.2", True), ("4.1", False), ("4.1", True)]

@@ -36,7 +36,7 @@ from two_boxes import (
 )
 
 from bem.errors import InputError
-from bem.geometry.files import Bodies, bodies_in, read_surface
+from bem.geometry.reading.files import Bodies, bodies_in, read_surface
 from bem.scene.body import body_of
 from bem.scene.scene import Scene
 from bem.units import METRES_PER

@@ -15,8 +15,8 @@ from made_bodies import CUBE_QUADS, cube_vertices
 from test_geometry_files_formats import check_boxes, refused, save
 from two_boxes import CORNERS, MIXED, QUADS, lines
 
-from bem.geometry.files import Bodies, bodies_in, read_surface
-from bem.geometry.general import KINDS
+from bem.geometry.reading.files import Bodies, bodies_in, read_surface
+from bem.geometry.reading.general import KINDS
 from bem.scene.body import Body
 from bem.scene.scene import Conductor, Source
 

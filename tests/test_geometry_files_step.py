@@ -12,9 +12,9 @@ from step_boxes import StepWriter, two_in_an_assembly
 from test_geometry_files_formats import check_boxes, refused, save
 from two_boxes import box
 
-from bem.geometry import step
-from bem.geometry.files import Bodies, bodies_in, read_surface
-from bem.geometry.step import FACETS_PER_TURN
+from bem.geometry.reading import step
+from bem.geometry.reading.files import Bodies, bodies_in, read_surface
+from bem.geometry.reading.step import FACETS_PER_TURN
 from bem.scene.body import body_of
 from bem.scene.scene import Scene
 from bem.units import METRES_PER

@@ -9,7 +9,7 @@ import pytest
 from made_bodies import ball, soup, turned
 
 from bem.geometry.distance import piercing
-from bem.geometry.overlap import coplanar_depth, find_overlaps
+from bem.geometry.repair.overlap import coplanar_depth, find_overlaps
 
 
 def clipped_area(one: np.ndarray, two: np.ndarray) -> float:

@@ -9,7 +9,7 @@ from two_boxes import obj_text
 
 from bem.cli.main import main
 from bem.errors import InputError, UsageError
-from bem.geometry.shapes import box
+from bem.geometry.shapes.round import box
 from bem.geometry.split import split_bodies
 from bem.geometry.surface import Surface
 from bem.scene.body import body_of

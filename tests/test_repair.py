@@ -10,12 +10,12 @@ from made_bodies import ball, cube, faces_of, ring, turned
 
 import bem
 from bem.errors import GeometryError
-from bem.geometry import repair as repair_module
-from bem.geometry.repair import repair
-from bem.geometry.repair_holes import fill_holes
-from bem.geometry.repair_joints import join_corners
-from bem.geometry.repair_seams import weld_seams
-from bem.geometry.repair_walls import drop_walls
+from bem.geometry.repair import repair as repair_module
+from bem.geometry.repair.holes import fill_holes
+from bem.geometry.repair.joints import join_corners
+from bem.geometry.repair.repair import repair
+from bem.geometry.repair.seams import weld_seams
+from bem.geometry.repair.walls import drop_walls
 from bem.geometry.surface import Surface
 from bem.geometry.topology import edges_of
 from bem.geometry.weld import weld

@@ -12,7 +12,7 @@ from shape_measures import area, side_counts, volume
 from bem.errors import UsageError
 from bem.geometry import shapes
 from bem.geometry.revolved import Revolution
-from bem.geometry.shapes import ArcTo
+from bem.geometry.shapes.round import ArcTo
 from bem.geometry.surface import Surface
 
 WASHER = [(1.0, -0.5), (2.0, -0.5), (2.0, 0.5), (1.0, 0.5), (1.0, -0.5)]

@@ -11,7 +11,7 @@ from shape_measures import area, is_closed, polygon_factor, side_counts, volume
 
 import bem
 from bem.errors import UsageError
-from bem.geometry.steps import AROUND, ArcTo
+from bem.geometry.shapes.steps import AROUND, ArcTo
 from bem.geometry.surface import Surface
 
 SQUARE = [(0.0, 0.0), (4.0, 0.0), (4.0, 4.0), (0.0, 4.0)]

@@ -11,8 +11,8 @@ from made_bodies import write_cube
 
 import bem
 from bem.errors import InputError
-from bem.geometry.kinds import SHAPES
 from bem.geometry.revolved import Revolution
+from bem.geometry.shapes.kinds import SHAPES
 from bem.geometry.surface import Surface
 from bem.scene.scene_file import load_scene
 

@@ -11,8 +11,8 @@ from shape_measures import area, bend_of_quads, is_closed, polygon_factor, side_
 
 import bem
 from bem.errors import UsageError
+from bem.geometry.shapes.wires import AROUND
 from bem.geometry.surface import Surface
-from bem.geometry.wires import AROUND
 
 ELL = [(0, 0, 0), (2, 0, 0), (2, 2, 0)]
 SPACE = [(0, 0, 0), (2, 0, 0), (2, 2, 0), (2, 2, 2), (3, 3, 4)]

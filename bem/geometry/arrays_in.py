@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 
 from bem.errors import InputError
-from bem.geometry.mesh_data import MeshData
+from bem.geometry.reading.mesh_data import MeshData
 from bem.geometry.surface import NO_CORNER, Surface
 from bem.geometry.weld import weld
 

@@ -12,7 +12,7 @@ import numpy as np
 
 from bem.errors import GeometryError
 from bem.geometry.clip import clipped
-from bem.geometry.fit import fit_of
+from bem.geometry.fit.fit import fit_of
 from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.planes import AXES, Plane, Planes
 from bem.geometry.surface import Surface

@@ -1,6 +1,6 @@
 """Panels on the smooth surface that the facets of a file seem to follow.
 
-Panels are triangles whose corners lie on the patches of a fit (``geometry/fit.py``), and each
+Panels are triangles whose corners lie on the patches of a fit (``geometry/fit/fit.py``), and each
 remembers its facet and where on it its corners are. Refining cuts edges, and all panels at an
 edge that is cut follow, so that no corner hangs: a closed body stays closed. A panel with an
 obtuse corner is always cut through its longest side too, which keeps angles away from 180
@@ -14,8 +14,8 @@ from typing import NamedTuple
 
 import numpy as np
 
-from bem.geometry.fit import Fit
-from bem.geometry.fit_patches import (
+from bem.geometry.fit.fit import Fit
+from bem.geometry.fit.patches import (
     Piece,
     area_beyond,
     basis,

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bem.geometry.fit import fit_of
+from bem.geometry.fit.fit import fit_of
 from bem.geometry.flat_faces import FLATNESS, FlatFaces
 from bem.geometry.planes import NO_PLANES, Planes
 from bem.geometry.surface import Surface

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from bem.geometry.fit import Fit
+from bem.geometry.fit.fit import Fit
 from bem.geometry.flat_faces import FLATNESS
 
 BLOCK = 256

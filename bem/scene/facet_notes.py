@@ -23,7 +23,7 @@ def facet_notes(conductors: list[Conductor]) -> list[str]:
 
 
 def _notes(conductor: Conductor) -> list[str]:
-    from bem.geometry.fit import fit_of
+    from bem.geometry.fit.fit import fit_of
     from bem.geometry.flat_faces import FlatFaces
 
     surface = conductor.surface

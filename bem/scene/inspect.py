@@ -8,7 +8,7 @@ import numpy as np
 
 from bem.errors import GeometryError, InputError
 from bem.geometry.planes import Planes
-from bem.geometry.repair import SEAMS
+from bem.geometry.repair.repair import SEAMS
 from bem.geometry.wording import counted, metre_text, point_text
 from bem.scene.body import Body, body_of
 from bem.scene.facet_notes import facet_notes

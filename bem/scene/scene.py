@@ -217,7 +217,7 @@ class Scene:
         return surface, Source(None, None, self.unit, changes=tuple(changes))
 
     def _from_mesh(self, mesh: Any, part: str | None, unit: str) -> tuple[Surface, Source]:
-        from bem.geometry.files import file_digest, read_surface
+        from bem.geometry.reading.files import file_digest, read_surface
 
         if not isinstance(mesh, str | Path):
             raise checks.refuse("mesh", mesh, "a file name")
@@ -228,7 +228,7 @@ class Scene:
 
 def _repaired(surface: Surface, source: Source, body: str) -> tuple[Surface, Source]:
     """Mend the faces as far as that is safe, and tell."""
-    from bem.geometry.repair import repair
+    from bem.geometry.repair.repair import repair
 
     surface, changes = repair(surface, body == "solid", source.unit)
     return surface, replace(source, changes=(*source.changes, *changes))

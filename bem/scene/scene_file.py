@@ -100,7 +100,7 @@ def scene_from_files(
 
 def _bodies_of(path: Path) -> list[tuple[str, str | None]]:
     """Name and part of each conductor that a mesh file gives."""
-    from bem.geometry.files import bodies_in
+    from bem.geometry.reading.files import bodies_in
 
     bodies = bodies_in(path)
     if not bodies.names:

@@ -26,8 +26,8 @@ from typing import Any
 import numpy as np
 
 from bem.errors import BemError, InputError
-from bem.geometry.kinds import SHAPES
-from bem.geometry.steps import ArcTo
+from bem.geometry.shapes.kinds import SHAPES
+from bem.geometry.shapes.steps import ArcTo
 from bem.geometry.surface import Surface
 from bem.geometry.wording import shown
 from bem.scene import checks

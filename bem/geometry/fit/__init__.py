@@ -1,0 +1,1 @@
+"""Smooth surfaces fitted to facets; ``fit.py`` puts the steps together."""
