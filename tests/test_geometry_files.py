@@ -84,7 +84,7 @@ def test_order_of_faces_is_that_of_the_file(tmp_path):
 
 
 def test_long_text_stl_is_read_in_pieces(tmp_path, monkeypatch):
-    monkeypatch.setattr("bem.geometry.stl._BLOCK", 300)
+    monkeypatch.setattr("bem.geometry.reading.stl._BLOCK", 300)
     corners = soup(ball(1.0))
     surface, _ = read_surface(save(tmp_path / "a.stl", stl_text({"x": corners})), 1.0)
     assert np.array_equal(surface.vertices[surface.faces[:, :3]], corners)

@@ -86,7 +86,7 @@ def test_the_search_misses_nothing():
 
 @pytest.mark.parametrize("few", [0, 200])
 def test_few_triangles_and_many_agree_with_all_pairs(few, monkeypatch):
-    monkeypatch.setattr("bem.geometry.overlap.FEW", few)
+    monkeypatch.setattr("bem.geometry.repair.overlap.FEW", few)
     corners = np.random.default_rng(8).uniform(size=(80, 3, 3))
     corners[:, :, 2] = np.random.default_rng(9).integers(0, 4, size=(80, 1))
     corners[:, :, :2] = corners[:, :1, :2] + 0.2 * corners[:, :, :2]

@@ -18,7 +18,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from scipy.spatial import cKDTree
 
-from bem.geometry.fit import fit_of
+from bem.geometry.fit.fit import fit_of
 from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.revolved import Arc, Piece, Revolution
 from bem.geometry.surface import NO_CORNER, Surface

@@ -114,7 +114,7 @@ class Scene:
         Args:
             name: unique in the scene.
             shape: faces in the scene's unit; or else
-            mesh: a file of a kind in ``bem.geometry.files.SUFFIXES``, and
+            mesh: a file of a kind in ``bem.geometry.reading.files.SUFFIXES``, and
             part: a named portion of it.
             place: scaled first, then turned about the origin, then shifted.
             body: "solid" (a closed surface is solid metal) or "shell" (hollow).
