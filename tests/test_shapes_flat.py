@@ -11,7 +11,8 @@ from shape_measures import area, is_closed, polygon_factor, side_counts, volume
 
 import bem
 from bem.errors import UsageError
-from bem.geometry.shapes.steps import AROUND, ArcTo
+from bem.geometry.shapes.outlines import AROUND
+from bem.geometry.shapes.steps import ArcTo
 from bem.geometry.surface import Surface
 
 SQUARE = [(0.0, 0.0), (4.0, 0.0), (4.0, 4.0), (0.0, 4.0)]

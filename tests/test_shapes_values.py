@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -79,6 +80,35 @@ def test_sheet_is_the_plate() -> None:
     record = BY_NAME["unit square"]
     result = bem.extract(scene_of([square]), tolerance=1e-3, threads=1)
     check(result, record.matrix, record.uncertainty)
+
+
+CIRCLE = [(1.0, 0.0), bem.ArcTo((0.0, 1.0), (-1.0, 0.0)), bem.ArcTo((0.0, -1.0), (1.0, 0.0))]
+SQUARE = [(2, 2, 0), (-2, 2, 0), (-2, -2, 0), (2, -2, 0), (2, 2, 0)]
+CURVED = {
+    "loop of wire": (bem.wire(SQUARE, 1.0, bend_radius=2.0), "torus 2, 1"),
+    "round prism": (bem.extrude(CIRCLE, 2.0), "solid cylinder, half length 1"),
+    "round sheet": (bem.sheet(CIRCLE), "disc"),
+    "round sheet with a hole": (
+        bem.sheet(CIRCLE, [{"center": (0.0, 0.0), "radius": 0.5}]),
+        "annulus 0.5, 1",
+    ),
+}
+
+
+@pytest.mark.parametrize(("surface", "name"), CURVED.values(), ids=CURVED)
+def test_fitted_shapes_against_the_records(surface: Surface, name: str) -> None:
+    record = BY_NAME[name]
+    check(bem.extract(scene_of([surface]), tolerance=1e-3, threads=1), record.matrix)
+
+
+@pytest.mark.parametrize("radius", [1.0, 0.5])
+def test_union_of_balls_that_cut_at_right_angles(radius: float) -> None:
+    """L = a + b - a b / sqrt(a^2 + b^2), by images (Maxwell, Treatise, from memory)."""
+    distance = math.hypot(1.0, radius)
+    other = bem.sphere(radius).placed(np.eye(3), np.array([0.0, 0.0, distance]))
+    joined = replace(bem.union([bem.sphere(1.0), other], around=24), smooth=True)
+    exact = np.array([[1.0 + radius - radius / distance]])
+    check(bem.extract(scene_of([joined]), tolerance=1e-3, threads=1), exact)
 
 
 ELL = [(0, 0), (2, 0), (2, 1), (1, 1), (1, 3), (0, 3)]

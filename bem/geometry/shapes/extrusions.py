@@ -1,7 +1,7 @@
 """Sheets and prisms with any outline and holes.
 
-The corners of facets that stand for an arc lie on it; a prism is solved on a smooth surface fitted
-to them.
+The corners of facets that stand for an arc lie on it; what has arcs is solved on a smooth surface
+fitted to them.
 """
 
 from __future__ import annotations
@@ -11,8 +11,8 @@ from collections.abc import Sequence
 import numpy as np
 
 from bem.geometry.shapes import values as need
-from bem.geometry.shapes.outlines import Hole, Region, region
-from bem.geometry.shapes.steps import AROUND, Step
+from bem.geometry.shapes.outlines import AROUND, Hole, Region, region
+from bem.geometry.shapes.steps import Step
 from bem.geometry.surface import NO_CORNER, Surface
 
 FACETS_TO_CREASE = 1.5
@@ -26,7 +26,7 @@ def sheet(outline: Sequence[Step], holes: Sequence[Hole] = (), around: int = ARO
         outline: the first step is a point (x, y); each further one is a point, reached in a
             straight line, or an ``ArcTo``. The last is joined to the first.
         holes: each given like an outline, or as ``{"center": (x, y), "radius": r}``.
-        around: facets that a full circle is cut into.
+        around: facets that a full circle is cut into for the fit.
 
     Raises:
         UsageError: an outline meets itself or another one, a hole does not lie inside, or a
@@ -34,7 +34,7 @@ def sheet(outline: Sequence[Step], holes: Sequence[Hole] = (), around: int = ARO
     """
     flat = region(outline, holes, around)
     faces = _with_three_corners(flat.triangles())
-    return Surface(_lifted(flat.points, 0.0), faces, smooth=None if flat.curved else False)
+    return _made(_lifted(flat.points, 0.0), faces, flat)
 
 
 def extrude(
@@ -47,7 +47,7 @@ def extrude(
             straight line, or an ``ArcTo``. The last is joined to the first.
         height: length along z.
         holes: each given like an outline, or as ``{"center": (x, y), "radius": r}``.
-        around: facets that a full circle is cut into.
+        around: facets that a full circle is cut into for the fit.
 
     Raises:
         UsageError: an outline meets itself or another one, a hole does not lie inside, or a
@@ -56,8 +56,13 @@ def extrude(
     top = need.length("height", height)
     flat = region(outline, holes, around)
     vertices = np.concatenate([_lifted(flat.points, 0.0), _lifted(flat.points, top)])
-    crease = FACETS_TO_CREASE * 2.0 * np.pi / around
-    return Surface(vertices, _prism(flat), smooth=flat.curved, crease=crease)
+    return _made(vertices, _prism(flat), flat)
+
+
+def _made(vertices: np.ndarray, faces: np.ndarray, flat: Region) -> Surface:
+    """Surface that knows which of its edges are sharp."""
+    crease = FACETS_TO_CREASE * 2.0 * np.pi / flat.around
+    return Surface(vertices, faces, smooth=flat.curved, crease=crease)
 
 
 def _prism(flat: Region) -> np.ndarray:

@@ -23,6 +23,8 @@ from bem.geometry.shapes.steps import (
 )
 
 AXES = ("x", "y")
+AROUND = 24
+"""Facets that a full circle is cut into: few and well shaped, as panels follow a fit to them."""
 
 Hole = Sequence[Step] | Mapping[str, Any]
 """A hole: steps like those of an outline, or ``{"center": (x, y), "radius": r}``."""
@@ -48,10 +50,12 @@ class Region(NamedTuple):
     Args:
         rims: (n, 2) corners each, the outline first; the region lies on the left of each.
         curved: whether some side stands for an arc.
+        around: facets that a full circle is cut into.
     """
 
     rims: list[np.ndarray]
     curved: bool
+    around: int
 
     @property
     def points(self) -> np.ndarray:
@@ -91,7 +95,7 @@ def region(outline: Sequence[Step], holes: Sequence[Hole], around: int) -> Regio
     for one, other in combinations(found, 2):
         _check_apart(one, other)
     rims = [rim.line[:-1], *(hole.line[:0:-1] for hole in found)]
-    return Region(rims, rim.curved or any(hole.curved for hole in found))
+    return Region(rims, rim.curved or any(hole.curved for hole in found), around)
 
 
 def _listed(holes: Any) -> list[Any]:

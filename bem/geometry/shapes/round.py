@@ -14,6 +14,7 @@ import numpy as np
 from bem.errors import UsageError
 from bem.geometry.revolved import Piece, Revolution
 from bem.geometry.shapes import values as need
+from bem.geometry.shapes.outlines import AROUND as AROUND_HOLES
 from bem.geometry.shapes.outlines import Hole
 from bem.geometry.shapes.steps import (
     AROUND,
@@ -57,7 +58,7 @@ def plate(
     ly: float,
     center: Point = (0.0, 0.0, 0.0),
     holes: Sequence[Hole] = (),
-    around: int = AROUND,
+    around: int = AROUND_HOLES,
 ) -> Surface:
     """Rectangular sheet without thickness, parallel to the xy-plane.
 
@@ -67,7 +68,7 @@ def plate(
         center: of the rectangle.
         holes: round ones as ``{"center": (x, y), "radius": r}``, others as points (x, y) and
             ``ArcTo`` steps, all counted from the center of the rectangle.
-        around: facets that the rim of a round hole is cut into, their corners on it.
+        around: facets that a full circle is cut into for the fit of round parts.
 
     Raises:
         UsageError: a length is not positive and finite, the center is not finite, or a hole
