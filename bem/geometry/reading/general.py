@@ -1,4 +1,4 @@
-"""VTK, Abaqus, Nastran, Medit, SU2 and other mesh files through meshio.
+"""VTU and finite-element mesh files through meshio.
 
 Named sets of cells become parts by their names, and whole numbers given to cells become
 parts called "ARRAY VALUE", such as "material 3". Numbers of points, and numbers that are not
