@@ -298,7 +298,14 @@ SAMPLES = {
 
 @pytest.mark.parametrize("kind", [*KINDS])
 @pytest.mark.parametrize(
-    "content", [b"", b"hello\n", b"\x00\xff\xfe" * 50, b"16 18 0 0 0 0 0\n1 2\n"]
+    "content",
+    [
+        b"",
+        b"hello\n",
+        b"\x00\xff\xfe" * 50,
+        b"16 18 0 0 0 0 0\n1 2\n",
+        b"$ bulk data\nBEGIN BULK\n",
+    ],
 )
 def test_garbage(tmp_path, kind, content, capfd):
     said = refused(save(tmp_path / f"bad{kind}", content))

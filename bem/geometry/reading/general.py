@@ -60,8 +60,19 @@ def read_general(path: Path) -> MeshData:
     with path.open("rb"):
         pass
     kind = KINDS[path.suffix.lower()]
+    if kind == "nastran":
+        _check_end(path)
     legacy = read_legacy(path) if kind == "vtk" else None
     return _mesh_data(_read(path, kind) if legacy is None else _as_mesh(legacy))
+
+
+def _check_end(path: Path) -> None:
+    """Refuse bulk data without its last line: the library would look for it forever."""
+    if not re.search(rb"^BEGIN BULK[^\n]*\n(?:.*\n)?ENDDATA", path.read_bytes(), re.M | re.S):
+        raise InputError(
+            f"cannot be read as {path.suffix}: it has no lines BEGIN BULK and ENDDATA, or is cut "
+            "short between them; export it again"
+        )
 
 
 def _read(path: Path, kind: str) -> Any:
