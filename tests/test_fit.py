@@ -40,6 +40,7 @@ from bem.geometry.fit.patches import (
 )
 from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.surface import Surface
+from bem.scene.placing import rotation
 
 CREASE = np.radians(40.0)
 GRID = np.array([(i, j, 5 - i - j) for i in range(6) for j in range(6 - i)]) / 5.0
@@ -245,6 +246,19 @@ def test_doubt_holds_the_mean_distance(name: str) -> None:
     mean = off(points(fit)).mean(axis=1)
     area = fit.facets.area
     assert abs((mean * area).sum()) < (fit.doubt * area).sum()
+
+
+def test_patches_that_the_facets_do_not_explain_are_doubted() -> None:
+    """Where bodies cut each other askew, what the patches add or take is in the doubt."""
+    turn = rotation((1.0, 0.2, 0.0), 63.0)
+    stub = shapes.cylinder(0.3, 2.0).placed(turn, np.array([0.1, 0.4, 0.1]))
+    bodies = [shapes.cylinder(0.5, 3.0), shapes.torus(0.5, 0.2), stub]
+    fit = fitted(shapes.union(bodies, around=32), np.radians(17.0))
+    corners = fit.facets.points[fit.facets.corners]
+    rise = (fit.net.mean(axis=1) - corners.mean(axis=1)) * fit.facets.normal
+    taken = np.minimum(rise.sum(axis=1), 0.0) @ fit.facets.area
+    assert taken < -1e-2
+    assert fit.doubt @ fit.facets.area > abs(taken)
 
 
 def test_an_ellipsoid_from_a_shape_is_fitted_too() -> None:

@@ -1,15 +1,15 @@
 """The reported value and its error bar, from the rounds so far.
 
     X   = L + kappa S + F
-    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + FLOOR sqrt(L_ii L_jj)
-          + r + f
+    bar = SHARE Sabs + TREND dX + DOUBT dk Sabs + q + facet_doubt |F| + RIM R
+          + FLOOR sqrt(L_ii L_jj) + r + f
 
-S and Sabs are the signed and absolute summed indicator, F the faceting effect, q the
-quadrature effect, r that of rounded input, f that of facets in a file that may stand for a smooth
-surface. One kappa serves the whole matrix: the slope of L against S over the last rounds on the
-normalised trace, drawn toward its usual value. dX is the largest change of X over the last
-rounds, dk the distance of kappa from raw slopes. The coefficients were chosen on forty scenes;
-benchmarks/bench_bars.py reports how well they hold.
+S and Sabs are the signed and absolute summed indicator, F the faceting effect, R its part at
+curved free rims, q the quadrature effect, r that of rounded input, f that of facets in a file
+that may stand for a smooth surface. One kappa serves the whole matrix: the slope of L against S
+over the last rounds on the normalised trace, drawn toward its usual value. dX is the largest change
+of X over the last rounds, dk the distance of kappa from raw slopes. The coefficients were chosen on
+forty scenes; benchmarks/bench_bars.py reports how well they hold.
 """
 
 from __future__ import annotations
@@ -27,6 +27,8 @@ SHARE, TREND, DOUBT, FACET = 0.2, 0.35, 0.4, 0.7
 """Factors of the parts of the bar, in the order of the formula above."""
 FILES = 1.5
 """Factor on the first-order effect of facets that may stand for a smooth surface."""
+RIM = 0.08
+"""Part of the effect of curved free rims that may be wrong: polygons crowd charge at corners."""
 WEAK, WEAK_ROW, WIDEST = 0.03, 0.3, 2.5
 """Couplings below WEAK sqrt(C_ii C_jj), and row sums below WEAK_ROW C_ii, get wider bars: up to
 WIDEST times where they vanish beside it."""
@@ -137,6 +139,6 @@ def estimate(rounds: list[Sums]) -> Estimate:
         "quadrature": last.quadrature + floor,
         "input rounding": last.rounding,
         "facets of the file": FILES * last.files,
-        "faceting": wide * facets * np.abs(last.faceting),
+        "faceting": wide * (facets * np.abs(last.faceting) + RIM * last.rims),
     }
     return Estimate(value, sum(parts.values()), parts, kappa, facets, doubt)

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from bem.extraction.estimate import SHARE, Estimate
+from bem.extraction.estimate import RIM, SHARE, Estimate
 from bem.extraction.solution import Solution
 
 
@@ -67,7 +67,7 @@ def _facet_indicator(solution: Solution, weight: np.ndarray, doubt: float) -> np
     charge = np.einsum("nk,k->n", solution.density**2, weight)
     normal = 4.0 * np.pi * area * np.abs(faceting.offset)
     rim = 0.5 * np.pi**2 * solution.own * area * np.abs(faceting.rim_offset) * faceting.rim_width
-    size = doubt * (normal + rim) * charge
+    size = (doubt * (normal + rim) + RIM / SHARE * rim) * charge
     along = side[:, 0] + side[:, 2] >= side[:, 1] + side[:, 3]
     return np.stack([np.where(along, size, 0.0), np.where(along, 0.0, size)])
 

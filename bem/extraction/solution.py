@@ -105,6 +105,7 @@ class Sums:
         quadrature: effect of choosing between the two rows of each pair, and of expansions.
         cancellation: energy of charges of one sign over that of the true ones, the largest.
         faceting: first-order effect of the true surface lying off the panels.
+        rims: the part of it at curved free rims, all of one sign.
         rounding: largest effect of the rounded numbers of the input files.
         files: largest effect of the smooth surface that facets of files may stand for.
     """
@@ -116,6 +117,7 @@ class Sums:
     quadrature: np.ndarray
     cancellation: float
     faceting: np.ndarray
+    rims: np.ndarray
     rounding: np.ndarray
     files: np.ndarray
 
@@ -140,6 +142,7 @@ def sums(solution: Solution) -> Sums:
         quadrature=rows + 2.0 * operator.far_error * magnitude,
         cancellation=float((np.diagonal(magnitude) / np.diagonal(value)).max()),
         faceting=faceting_effect(solution),
+        rims=rim_effect(solution),
         rounding=rounding_effect(solution),
         files=file_facet_bound(solution),
     )
@@ -164,6 +167,13 @@ def faceting_effect(solution: Solution) -> np.ndarray:
     change = density.T @ (normal[:, None] * excess)
     change = 0.5 * (change + change.T) + density.T @ (rim[:, None] * density)
     return with_all(change)
+
+
+def rim_effect(solution: Solution) -> np.ndarray:
+    """(k, k + 1) effect of curved free rims by ``faceting_effect``, with absolute values."""
+    rim = np.abs(_pushes(solution, solution.mesh.faceting())[1])
+    density = np.abs(solution.density)
+    return density.T @ (rim[:, None] * with_all(density))
 
 
 def _pushes(solution: Solution, faceting: Faceting) -> tuple[np.ndarray, np.ndarray]:

@@ -29,6 +29,15 @@ def truly_flat(facets: Facets) -> np.ndarray:
     return (some & ~against)[facets.flat]
 
 
+def rise_by_turns(facets: Facets) -> np.ndarray:
+    """(t,) largest turn across a soft edge times the width of the flat face there."""
+    bent, rise = np.flatnonzero(facets.bent), np.zeros(facets.flats)
+    for side in facets.sides[bent].T:
+        flat = facets.flat[side]
+        np.maximum.at(rise, flat, facets.turn[bent] * _widths(facets, bent, flat))
+    return rise[facets.flat]
+
+
 def straight_edges(facets: Facets) -> np.ndarray:
     """(s,) soft edges between strips, much longer than all those that they run on into.
 
