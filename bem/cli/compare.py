@@ -7,6 +7,7 @@ import sys
 from typing import TYPE_CHECKING, Any
 
 from bem.cli import values
+from bem.cli.effort import add_effort
 from bem.cli.live import live_or_none
 from bem.cli.outputs import check_outputs, tried
 from bem.cli.scene_input import is_scene
@@ -61,7 +62,7 @@ def add_parser(subparsers: Any) -> None:
             name, metavar=side, help="scene file (.toml), or result saved by --json"
         )
     _add_accuracy_options(parser)
-    _add_effort_options(parser)
+    add_effort(parser, "for both")
     _add_output_options(parser)
 
 
@@ -87,29 +88,6 @@ def _add_accuracy_options(parser: argparse.ArgumentParser) -> None:
         type=values.fraction("--tolerance"),
         default=1e-3,
         help="every bar of both matrices at most this times sqrt(C_ii C_jj) (default 0.001)",
-    )
-
-
-def _add_effort_options(parser: argparse.ArgumentParser) -> None:
-    group = parser.add_argument_group("effort")
-    group.add_argument(
-        "--max-panels",
-        metavar="N",
-        type=values.count("--max-panels"),
-        default=10000,
-        help="stop before more panels than this (default 10000)",
-    )
-    group.add_argument(
-        "--memory",
-        metavar="AMOUNT",
-        type=values.memory("--memory"),
-        help="use no more memory than this for both, such as 8GB (default: what is free)",
-    )
-    group.add_argument(
-        "--threads",
-        metavar="N",
-        type=values.count("--threads"),
-        help="number of threads (default: one per processor)",
     )
 
 

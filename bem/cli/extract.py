@@ -6,6 +6,7 @@ import argparse
 from typing import TYPE_CHECKING, Any
 
 from bem.cli import values
+from bem.cli.effort import add_effort
 from bem.cli.live import live_or_none
 from bem.cli.outputs import check_outputs, deliver
 from bem.cli.pairs import match_pairs, read_pair
@@ -45,7 +46,7 @@ def add_parser(subparsers: Any) -> None:
     add_files(parser)
     _add_scene_options(parser)
     _add_accuracy_options(parser)
-    _add_effort_options(parser)
+    add_effort(parser)
     _add_output_options(parser)
 
 
@@ -75,29 +76,6 @@ def _add_accuracy_options(parser: argparse.ArgumentParser) -> None:
         action="append",
         default=[],
         help="relative accuracy of one coupling, such as 'rod,wall=1%%'; may be repeated",
-    )
-
-
-def _add_effort_options(parser: argparse.ArgumentParser) -> None:
-    group = parser.add_argument_group("effort")
-    group.add_argument(
-        "--max-panels",
-        metavar="N",
-        type=values.count("--max-panels"),
-        default=10000,
-        help="stop before more panels than this (default 10000)",
-    )
-    group.add_argument(
-        "--memory",
-        metavar="AMOUNT",
-        type=values.memory("--memory"),
-        help="use no more memory than this, such as 8GB (default: what is free)",
-    )
-    group.add_argument(
-        "--threads",
-        metavar="N",
-        type=values.count("--threads"),
-        help="number of threads (default: one per processor)",
     )
 
 
