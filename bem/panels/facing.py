@@ -81,6 +81,7 @@ class FacingTable:
         normals: (n, 3).
         origins: (n, 3).
         sizes: (n,).
+        owners: (n,) conductor of each; images of opposite sign count as one of their own.
         least: smaller patches are not looked at.
         planes: grounded and mirror planes; a wall in a mirror is no rim.
     """
@@ -89,6 +90,7 @@ class FacingTable:
     normals: np.ndarray
     origins: np.ndarray
     sizes: np.ndarray
+    owners: np.ndarray
     least: float
     planes: Planes
 
@@ -102,12 +104,16 @@ class FacingTable:
             np.array([p.axes[2] for p in patches]),
             np.array([p.origin for p in patches]),
             sizes,
+            np.array([p.conductor for p in patches]),
             float(np.sort(sizes)[-MOST_FACING]) if len(sizes) > MOST_FACING else 0.0,
             planes,
         )
 
     def _facing(self, k: int) -> np.ndarray:
-        """Indices of patches about parallel to patch k, near it in height and not in its plane."""
+        """Indices of patches about parallel to patch k, near it in height and not in its plane.
+
+        None if all of them are of its own conductor, which casts no shadow on itself.
+        """
         if self.sizes[k] < self.least:
             return np.empty(0, dtype=int)
         cosine = np.abs(self.normals @ self.normals[k])
@@ -116,7 +122,8 @@ class FacingTable:
         near = (cosine > LEANING) & (height < reach) & (height > 1e-9 * self.sizes[k])
         apart = np.linalg.norm(self.origins - self.origins[k], axis=1)
         near &= apart < self.sizes + self.sizes[k]
-        return np.flatnonzero(near)
+        found = np.flatnonzero(near)
+        return found if (self.owners[found] != self.owners[k]).any() else found[:0]
 
     def _shadow(self, k: int, other: int) -> _Shadow:
         patch, facing = self.patches[k], self.patches[other]
