@@ -152,6 +152,16 @@ def test_long_bodies_over_a_grounded_plane_per_length(name: str) -> None:
     assert slope / bem.EPS0 == pytest.approx(exact, rel=2e-3)
 
 
+def test_a_long_thin_wire_needs_few_panels() -> None:
+    """Facets around it are made finer, not those along it: bars shrink with few panels."""
+    wire = shapes.wire([(-20.0, 0.0, 0.0), (20.0, 0.0, 0.0)], radius=0.1)
+    scene = scene_with([(wire, bem.Place(shift=(0, 0, 1.0)))], ground="z")
+    result = bem.extract(scene, 1e-3)
+    ideal = 40.0 * 2.0 * np.pi * bem.EPS0 / np.arccosh(10.0)
+    assert result.converged and result.panels <= 1000
+    assert 1.0 < result.capacitance[0, 0] / ideal < 1.05
+
+
 # ---------------------------------------------------------------- mirrors against the whole
 
 WHOLE = {

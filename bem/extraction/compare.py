@@ -313,9 +313,22 @@ def _compared(
 
 def _wiring(results: tuple[CapacitanceResult, CapacitanceResult]) -> tuple[str, ...]:
     """Say that the full matrices are compared, where there are smaller ones."""
-    if not any(result.states for result in results):
+    if not any(result.states or result.nodes for result in results):
         return ()
-    return ("conductors that are grounded, floating or tied are compared as all others",)
+    same = len({_states_of(result) for result in results}) == 1
+    differ = "" if same else "; WHAT IS GROUNDED, FLOATING OR TIED DIFFERS between the two"
+    return (
+        f"conductors that are grounded, floating or tied are compared as all others{differ}; "
+        "compare what 'bem reduce --json' saves of each for the terminals",
+    )
+
+
+def _states_of(result: CapacitanceResult) -> frozenset[tuple[str, str, str | None]]:
+    """State and node of each conductor by name."""
+    names = result.conductors
+    states = result.states or ("terminal",) * len(names)
+    nodes = result.nodes or (None,) * len(names)
+    return frozenset(zip(names, states, nodes, strict=True))
 
 
 def _turned(found: Comparison) -> Comparison:

@@ -59,7 +59,7 @@ def indicator(solution: Solution, goal: Goal, found: Estimate) -> np.ndarray:
 
 
 def _facet_indicator(solution: Solution, weight: np.ndarray, doubt: float) -> np.ndarray:
-    """(2, n) doubt in the faceting effect of each panel, given to its longer direction."""
+    """(2, n) doubt in the faceting effect of each panel, given to the direction that bulges."""
     faceting = solution.mesh.faceting()
     if faceting.exact:
         return np.zeros((2, len(faceting.offset)))
@@ -68,7 +68,7 @@ def _facet_indicator(solution: Solution, weight: np.ndarray, doubt: float) -> np
     normal = 4.0 * np.pi * area * np.abs(faceting.offset)
     rim = 0.5 * np.pi**2 * solution.own * area * np.abs(faceting.rim_offset) * faceting.rim_width
     size = (doubt * (normal + rim) + RIM / SHARE * rim) * charge
-    along = side[:, 0] + side[:, 2] >= side[:, 1] + side[:, 3]
+    along = solution.mesh.bulging(side[:, 0] + side[:, 2] >= side[:, 1] + side[:, 3])
     return np.stack([np.where(along, size, 0.0), np.where(along, 0.0, size)])
 
 

@@ -93,6 +93,11 @@ class Grid:
         u, s = np.moveaxis(nodes, -1, 0)
         return self.surface.point((u % self.period) / self.period, self.along(s))
 
+    def normals(self, nodes: np.ndarray) -> np.ndarray:
+        """(..., 3) unit normals at integer parameters (..., 2)."""
+        u, s = np.moveaxis(nodes, -1, 0)
+        return self.surface.normal((u % self.period) / self.period, self.along(s))
+
 
 @dataclass(frozen=True, eq=False)
 class Leaves:
@@ -483,6 +488,20 @@ class CurvedFamily:
         leaves, pattern = _settled(grid, Leaves(box, np.full(len(box), -1)))
         nodes, leaf = _nodes(grid, leaves.box, pattern)
         return cls(*_measured(grid, nodes), grid, leaves.box, pattern, leaf)
+
+    @property
+    def bulges_around(self) -> np.ndarray:
+        """(n,) whether a panel leaves the surface more around the axis than along the profile."""
+        low, high = self.box[:, [U0, S0]], self.box[:, [U1, S1]]
+        bulge = []
+        for k in (0, 1):
+            first, last = (low + high) // 2, (low + high) // 2
+            first[:, k] = (3 * low[:, k] + high[:, k]) // 4
+            last[:, k] = (low[:, k] + 3 * high[:, k]) // 4
+            step = self.grid.points(last) - self.grid.points(first)
+            turn = self.grid.normals(last) - self.grid.normals(first)
+            bulge.append(np.linalg.norm(step, axis=1) * np.linalg.norm(turn, axis=1))
+        return (bulge[0] >= bulge[1])[self.leaf]
 
     def refine(self, marked: np.ndarray, along: np.ndarray) -> tuple[CurvedFamily, np.ndarray]:
         """Halve the leaves of marked panels, and of neighbours where that is needed.

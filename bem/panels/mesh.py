@@ -184,6 +184,20 @@ class Mesh:
         ]
         return Faceting(*(np.concatenate(column) for column in zip(*parts, strict=True)))
 
+    def bulging(self, longer: np.ndarray) -> np.ndarray:
+        """(n,) whether halving side 0-1 brings panels nearer to the true surface than side 1-2.
+
+        Args:
+            longer: (n,) whether side 0-1 is the longer one, which decides where nothing else does.
+        """
+        out, start = longer.copy(), 0
+        for family, owner in zip(self.families, self.owners, strict=True):
+            around = getattr(family, "bulges_around", None)
+            if around is not None:
+                out[start : start + len(owner)] = around
+            start += len(owner)
+        return out
+
     def refine(self, marked: np.ndarray, across: np.ndarray) -> tuple[Mesh, np.ndarray]:
         """Halve marked panels, ``across`` 0 (sides 0-1) or 1 (sides 1-2) each.
 
