@@ -321,3 +321,38 @@ def test_files_cut_anywhere(tmp_path, kind, part, capfd):
     data = (FILES / SAMPLES[kind]).read_bytes()
     refused(save(tmp_path / f"bad{kind}", data[: int(part * len(data))]))
     assert capfd.readouterr() == ("", "")
+
+
+# data of the whole file, which some writers always add
+
+TEXTS = b"FIELD FieldData 2\nTIME 1 1 double\n%s\nNOTE 1 2 string\n%s"
+SQUARE = b"POINTS 4 float\n%s\nPOLYGONS 1 5\n%s\n"
+
+
+@pytest.mark.parametrize("binary", [False, True])
+def test_texts_in_a_vtk_file_are_passed_over(tmp_path, binary):
+    """Packed texts follow their length, whose first bits tell how long it is itself."""
+    points = np.array([[0, 0, 0], [1, 0, 0], [1, 1, 0], [0, 1, 0]], dtype=">f4")
+    cell = np.array([4, 0, 1, 2, 3], dtype=">i4")
+    long = b"x" * 100
+    if binary:
+        texts = TEXTS % (np.array([0.5], ">f8").tobytes(), b"\xc3abc" + b"\x80\x64" + long + b"\n")
+        shape = SQUARE % (points.tobytes(), cell.tobytes())
+    else:
+        texts = TEXTS % (b"0.5", b"abc\n" + long + b"\n")
+        shape = SQUARE % (b" ".join(b"%g" % x for x in points.flat), b"4 0 1 2 3")
+    kind = b"BINARY" if binary else b"ASCII"
+    head = b"# vtk DataFile Version 4.2\nsquare\n%s\nDATASET POLYDATA\n" % kind
+    surface, _ = read_surface(save(tmp_path / "square.vtk", head + texts + shape), 1.0)
+    assert surface.vertices[surface.faces[0]].tolist() == points.tolist()
+
+
+def test_texts_in_a_vtu_file_are_passed_over(tmp_path):
+    data = (FILES / "pyvista.vtu").read_bytes()
+    text = b'<FieldData><Array type="String" Name="note" format="ascii">97 0</Array></FieldData>'
+    place = data.index(b"<Piece")
+    path = save(tmp_path / "noted.vtu", data[:place] + text + data[place:])
+    plain, _ = read_surface(FILES / "pyvista.vtu", 1.0)
+    noted, _ = read_surface(path, 1.0)
+    assert np.array_equal(noted.vertices, plain.vertices)
+    assert np.array_equal(noted.faces, plain.faces)

@@ -329,7 +329,7 @@ def test_a_cut_body_must_be_its_own_image() -> None:
         (cone, replace(UPRIGHT, shift=(-1.0, 0.0, 0.0))),
     ]:
         line = refused(scene_with([(body, place)], mirrors="x"))
-        assert '"c0" is cut by the mirror plane x but is not its own mirror image' in line
+        assert '"c0" is cut by the mirror plane x = 0 m but is not its own mirror image' in line
 
 
 def test_a_body_drawn_together_with_its_image_is_found() -> None:

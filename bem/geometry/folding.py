@@ -14,7 +14,7 @@ from bem.errors import GeometryError
 from bem.geometry.clip import clipped
 from bem.geometry.fit.fit import fit_of
 from bem.geometry.flat_faces import FlatFaces
-from bem.geometry.planes import AXES, Plane, Planes
+from bem.geometry.planes import Plane, Planes
 from bem.geometry.surface import Surface
 from bem.geometry.symmetry import NOT_SYMMETRIC, kept_part
 from bem.geometry.topology import edges_of
@@ -25,7 +25,7 @@ ALIKE = 1e-2
 """Relative to the diagonal: how well a faceted body must be its own mirror image."""
 
 CUT_FACETS = (
-    "has facets that the mirror plane {axis} cuts, and half a facet does not show the smooth "
+    "has facets that the mirror plane {plane} cuts, and half a facet does not show the smooth "
     "surface; mesh it with edges in the plane, or give smooth = false"
 )
 
@@ -87,12 +87,12 @@ def reflected(surface: Surface, plane: Plane) -> Surface:
 def _kept_half(surface: Surface, mirror: Plane, solid: bool) -> Surface:
     tolerance = ON_PLANE * surface.extent
     if surface.smooth and _cuts_facets(surface, mirror, tolerance):
-        raise GeometryError(CUT_FACETS.format(axis=AXES[mirror.axis]))
+        raise GeometryError(CUT_FACETS.format(plane=mirror))
     kept = clipped(surface, mirror, tolerance, not solid)
     if side_of(surface, mirror) == 0:
         other = clipped(reflected(surface, mirror), mirror, tolerance, not solid)
         if not np.allclose(_measures(kept), _measures(other), rtol=0, atol=ALIKE * surface.extent):
-            raise GeometryError(NOT_SYMMETRIC.format(axis=AXES[mirror.axis]))
+            raise GeometryError(NOT_SYMMETRIC.format(plane=mirror))
     return kept
 
 

@@ -12,6 +12,8 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
+from bem.geometry.wording import metre_text
+
 AXES = "xyz"
 
 
@@ -26,6 +28,9 @@ class Plane:
 
     axis: int
     at: float
+
+    def __str__(self) -> str:
+        return f"{AXES[self.axis]} = {metre_text(self.at)}"
 
     def reflect(self, points: np.ndarray) -> np.ndarray:
         """Mirror images of points (..., 3)."""

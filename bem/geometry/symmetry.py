@@ -14,13 +14,13 @@ from dataclasses import replace
 import numpy as np
 
 from bem.errors import GeometryError
-from bem.geometry.planes import AXES, Plane
+from bem.geometry.planes import Plane
 from bem.geometry.revolved import Arc, Piece, Revolution, Segment
 
 EXACT = 1e-9
 """Relative to the size: how well a body must be its own mirror image."""
 NOT_SYMMETRIC = (
-    "is cut by the mirror plane {axis} but is not its own mirror image there; "
+    "is cut by the mirror plane {plane} but is not its own mirror image there; "
     "move it, or cut it at the plane in the drawing"
 )
 
@@ -53,7 +53,7 @@ def kept_part(curve: Revolution, mirrors: list[Plane], solid: bool) -> Revolutio
 
 
 def _asymmetric(mirror: Plane) -> GeometryError:
-    return GeometryError(NOT_SYMMETRIC.format(axis=AXES[mirror.axis]))
+    return GeometryError(NOT_SYMMETRIC.format(plane=mirror))
 
 
 def _close(a: np.ndarray, b: np.ndarray | list[int]) -> bool:

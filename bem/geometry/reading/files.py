@@ -21,6 +21,7 @@ from bem.geometry.reading.general import KINDS
 from bem.geometry.reading.mesh_data import MeshData
 from bem.geometry.surface import Surface
 from bem.geometry.weld import weld
+from bem.geometry.wording import listed
 from bem.units import METRES_PER, metres_per
 
 _READERS = {
@@ -36,6 +37,9 @@ _READERS = {
     ".stp": ("step", "read_step"),
 } | dict.fromkeys(KINDS, ("general", "read_general"))
 """Module and function that read each kind of file, by the ending of the name."""
+
+MOST_NAMED = 6
+"""Parts that a line lists by name."""
 
 SUFFIXES = tuple(_READERS)
 """Kinds of mesh files that are read, by the ending of the name."""
@@ -65,7 +69,16 @@ def read_surface(
         faces = mesh.faces_of(part)
         surface, changes = weld(Surface(mesh.vertices * metres_per_unit, faces))
     surface = replace(surface, rounding=mesh.rounding * metres_per_unit)
-    return surface, [*mesh.changes_of(part), *changes]
+    return surface, [*_together(mesh, part), *mesh.changes_of(part), *changes]
+
+
+def _together(mesh: MeshData, part: str | None) -> list[str]:
+    """Say that parts were taken as one, where the file does not say that they are bodies."""
+    if part is not None or mesh.bodies or len(mesh.parts) < 2:
+        return []
+    names = list(mesh.parts)
+    more = f" and {len(names) - MOST_NAMED} more" if len(names) > MOST_NAMED else ""
+    return [f"parts {listed(names[:MOST_NAMED])}{more} taken together; give one as part to pick it"]
 
 
 def _check_unit(stated: str | None, metres_per_unit: float) -> None:

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import importlib
 import re
+import tempfile
 from dataclasses import replace
 from pathlib import Path
 from types import SimpleNamespace
@@ -42,6 +43,7 @@ KINDS = {
 MOST_VALUES = 1000
 """A cell array with more values than this numbers something other than parts."""
 
+_FIELD_DATA = re.compile(rb"<FieldData>.*?</FieldData>", re.DOTALL)
 _UNKNOWN_CELL = re.compile(r"cannot handle \(type (\d+)\)")
 _MARKER = re.compile(
     r"^\s*MARKER_TAG\s*=[ \t]*(.*?)[ \t]*$(?:\s*MARKER_ELEMS\s*=\s*(\d+))?", re.MULTILINE
@@ -79,7 +81,7 @@ def _read(path: Path, kind: str) -> Any:
     """Mesh as the library sees it."""
     with quiet() as said:
         try:
-            found = importlib.import_module(f"meshio.{kind}").read(path)
+            found = _library_reads(path, kind)
         except ImportError as problem:
             raise InputError(
                 f"is a {path.suffix} file, which needs the package {problem.name}; "
@@ -96,6 +98,19 @@ def _read(path: Path, kind: str) -> Any:
             "export plain triangles, or tetrahedra"
         )
     return found if kind != "su2" else _with_markers(found, path)
+
+
+def _library_reads(path: Path, kind: str) -> Any:
+    """What the library reads; data of a whole VTU file, which may be texts, is kept from it."""
+    reader = importlib.import_module(f"meshio.{kind}")
+    data = path.read_bytes() if kind == "vtu" else b""
+    bare = _FIELD_DATA.sub(b"", data)
+    if bare == data:
+        return reader.read(path)
+    with tempfile.TemporaryDirectory() as folder:
+        copy = Path(folder) / "bare.vtu"
+        copy.write_bytes(bare)
+        return reader.read(copy)
 
 
 def _with_markers(mesh: Any, path: Path) -> Any:

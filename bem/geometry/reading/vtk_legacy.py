@@ -35,6 +35,7 @@ _CELLS = {
 _IGNORED = (1, 2, 3, 4, 21, 35)
 """Points and lines."""
 _POLYDATA = {"VERTICES": 2, "LINES": 4, "POLYGONS": 7, "TRIANGLE_STRIPS": 6}
+_LENGTH_BYTES = (8, 4, 2, 1)
 _COMPONENTS = {"VECTORS": 3, "NORMALS": 3, "TENSORS": 9, "TENSORS6": 6, "GLOBAL_IDS": 1}
 
 
@@ -89,6 +90,19 @@ class _Stream:
         """Pass over lines until an empty one."""
         found = re.compile(rb"\n[ \t\r]*\n").search(self._data, max(self._place - 1, 0))
         self._place = found.end() if found else len(self._data)
+
+    def skip_strings(self, count: int) -> None:
+        """Pass over texts: one to a line or, packed, each after its length.
+
+        The first two bits of a length tell how many bytes it takes.
+        """
+        for _ in range(count):
+            if self._binary:
+                head = _LENGTH_BYTES[self._data[self._place] >> 6]
+                length = int.from_bytes(self._data[self._place : self._place + head], "big")
+                self._place += head + length % (1 << (8 * head - 2))
+            else:
+                self._place = self._data.index(b"\n", self._place) + 1
 
     def numbers(self, kind: str, count: int) -> np.ndarray:
         """Next numbers of a kind such as "float"."""
@@ -169,7 +183,9 @@ def _read(stream: _Stream) -> VtkMesh:
             _attributes(stream, int(words[1]))
         elif key == "METADATA":
             stream.skip_to_blank()
-        elif key != "FIELD":
+        elif key == "FIELD":
+            _field(stream, int(words[2]))
+        else:
             raise _damaged()
     return _mesh(points, _joined(cells, types), arrays)
 
@@ -249,7 +265,11 @@ def _field(stream: _Stream, count: int) -> dict[str, np.ndarray]:
         while words[0] == "METADATA":
             stream.skip_to_blank()
             words = stream.line()
-        arrays[words[0]] = stream.numbers(words[3], int(words[1]) * int(words[2]))
+        size = int(words[1]) * int(words[2])
+        if words[3].lower() == "string":
+            stream.skip_strings(size)
+        else:
+            arrays[words[0]] = stream.numbers(words[3], size)
     return arrays
 
 
