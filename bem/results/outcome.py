@@ -12,8 +12,8 @@ STOPPED_BY = {
     "input-rounding": "the numbers of the input files are rounded too coarsely for this tolerance; "
     "export them with more digits, or nearer to the origin, or raise the tolerance",
     "faceting": "facets in a file seem to stand for a curve and are too coarse for this tolerance; "
-    "give the conductor smooth = true, or smooth = false if the facets are the shape; where smooth is "
-    "true already, give finer facets",
+    "give the conductor smooth = true, or smooth = false if the facets are the shape; finer facets "
+    "if smooth is true already",
     "interrupt": "interrupted; this is the best result so far, run again to reach the tolerance",
 }
 """Every value of ``CapacitanceResult.stopped_by``, with the remedy in words."""
