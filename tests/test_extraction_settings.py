@@ -94,7 +94,7 @@ def test_a_fine_mesh_may_do_at_once() -> None:
     faces = np.hstack([ball.faces, np.full((len(ball.faces), 1), -1)])
     scene = bem.Scene(unit="m")
     scene.add_conductor("ball", bem.Surface(np.array(ball.vertices), faces, smooth=False))
-    coarse, fine = (bem.extract(scene, tolerance=t, threads=1) for t in (1e-2, 1e-3))
+    coarse, fine = (bem.extract(scene, tolerance=t, threads=1) for t in (1e-2, 1e-4))
     assert len(coarse.rounds) == 1 and coarse.converged
     difference = abs(coarse.capacitance[0, 0] - fine.capacitance[0, 0])
     assert difference <= coarse.error[0, 0] + fine.error[0, 0]

@@ -172,8 +172,7 @@ def faceting_effect(solution: Solution) -> np.ndarray:
 def rim_effect(solution: Solution) -> np.ndarray:
     """(k, k + 1) effect of curved free rims by ``faceting_effect``, with absolute values."""
     rim = np.abs(_pushes(solution, solution.mesh.faceting())[1])
-    density = np.abs(solution.density)
-    return density.T @ (rim[:, None] * with_all(density))
+    return np.abs(solution.density).T @ (rim[:, None] * np.abs(with_all(solution.density)))
 
 
 def _pushes(solution: Solution, faceting: Faceting) -> tuple[np.ndarray, np.ndarray]:
