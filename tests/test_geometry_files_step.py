@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import subprocess
+import sys
 import threading
 
 import gmsh
@@ -86,7 +87,7 @@ def round_bodies(tmp_path):
         "o.addCylinder(0, 0, 0, 0, 0, 100, 0.5); o.addSphere(50, 0, 0, 20); o.synchronize(); "
         "gmsh.write(sys.argv[1])"
     )
-    command = ["python", "-c", script, str(path)]
+    command = [sys.executable, "-c", script, str(path)]
     subprocess.run(command, check=True, capture_output=True)
     return path
 
