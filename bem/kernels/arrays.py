@@ -73,10 +73,14 @@ def _unit(v: np.ndarray) -> np.ndarray:
     return v / np.linalg.norm(v, axis=-1, keepdims=True)
 
 
-def _frames(corners: np.ndarray) -> np.ndarray:
-    """Axes (n, 3, 3); the first along the longer of the two sides that leave the widest corner."""
-    diagonals = np.cross(corners[:, 2] - corners[:, 0], corners[:, 3] - corners[:, 1])
-    normal = _unit(diagonals)
+def normals(corners: np.ndarray) -> np.ndarray:
+    """(n, 3) unit normals of panels (n, 4, 3) whose corners run counter-clockwise."""
+    return _unit(np.cross(corners[:, 2] - corners[:, 0], corners[:, 3] - corners[:, 1]))
+
+
+def side_frames(corners: np.ndarray) -> np.ndarray:
+    """Axes (n, 3, 3) of panels (n, 4, 3): the first along the side from corner 0 to corner 1."""
+    normal = normals(corners)
     along = corners[:, 1] - corners[:, 0]
     along = _unit(along - np.sum(along * normal, axis=1)[:, None] * normal)
     return np.stack([along, np.cross(normal, along), normal], axis=1)
@@ -114,14 +118,15 @@ def _half_sides(xy: np.ndarray, radius: np.ndarray) -> np.ndarray:
     return np.where((fit <= RECTANGLE_TOLERANCE * radius + 1e-6 * thin)[:, None], half, 0.0)
 
 
-def panel_arrays(corners: np.ndarray) -> PanelArrays:
+def panel_arrays(corners: np.ndarray, axes: np.ndarray | None = None) -> PanelArrays:
     """Arrays for the compiled integrals.
 
     Args:
         corners: (n, 4, 3) planar convex quadrilaterals, a triangle repeating its last corner.
+        axes: (n, 3, 3) frames to use instead of those along side 0-1.
     """
     corners = np.ascontiguousarray(corners, dtype=float)
-    axes = _frames(corners)
+    axes = side_frames(corners) if axes is None else axes
     origin = corners.mean(axis=1)
     xy = np.einsum("nkc,nac->nka", corners - origin[:, None], axes[:, :2])
     area, mean, second = _planar_moments(xy)
