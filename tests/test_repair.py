@@ -193,7 +193,7 @@ def test_walls_between_cells_leave(cells, walls, seed):
     cubes = [cube(1.0, place) for place in np.ndindex(cells)]
     body = joined(*cubes) if seed is None else turned(joined(*cubes), seed)
     outside, changes = mended(body)
-    assert changes == [f"{walls} faces inside solid metal dropped"]
+    assert changes == [f"{walls} faces inside the solid dropped"]
     assert is_closed(outside)
     a, b, c = cells
     assert area(outside) == pytest.approx(2.0 * (a * b + b * c + c * a))
@@ -209,7 +209,7 @@ def test_three_cells_around_an_edge():
         sides = [[0, 1, 4], [0, 4, 3], [1, 2, 5], [1, 5, 4], [2, 0, 3], [2, 3, 5]]
         prisms.append(Surface(points, faces_of(np.array([[0, 2, 1], [3, 4, 5], *sides]))))
     outside, changes = mended(joined(*prisms))
-    assert changes[-1] == "6 faces inside solid metal dropped"
+    assert changes[-1] == "6 faces inside the solid dropped"
     assert is_closed(outside) and len(outside.faces) == 12
 
 
@@ -246,7 +246,7 @@ UNITED = "2 pieces that overlap or touch united"
 def test_solids_that_overlap_or_touch_are_united(shift, seed):
     body = joined(cube(), cube(1.0, shift))
     united, changes = mended(body if seed is None else turned(body, seed))
-    assert changes[-1] in (UNITED, "2 faces inside solid metal dropped")
+    assert changes[-1] in (UNITED, "2 faces inside the solid dropped")
     common = np.prod(1.0 - np.array(shift))
     report = inspect(bem.Scene("m").add_conductor("a", united)).bodies[0]
     assert report.volume == pytest.approx(2.0 - common) and report.changes == ()

@@ -78,7 +78,7 @@ def test_repaired(name, damage, line):
 
 
 def test_an_inner_wall_of_one_facet_each():
-    line = "2 faces inside solid metal dropped"
+    line = "2 faces inside the solid dropped"
     assert_same(damages.with_an_inner_wall(BODIES["ball"]), "ball", line)
 
 
@@ -87,7 +87,7 @@ def test_two_halves_with_a_wall_each():
     halves = joined(
         box((-0.5, -0.5, -0.5), (0.1, 0.5, 0.5)), box((0.1, -0.5, -0.5), (0.5, 0.5, 0.5))
     )
-    assert_same(halves, "cube", "2 faces inside solid metal dropped")
+    assert_same(halves, "cube", "2 faces inside the solid dropped")
     assert "2 duplicate faces dropped" in look(halves).changes
 
 
@@ -95,7 +95,7 @@ def test_two_halves_with_a_wall_each():
     ("seed", "line"),
     [
         (None, "2 pieces that overlap or touch united"),
-        (4, "2 faces inside solid metal dropped"),
+        (4, "2 faces inside the solid dropped"),
     ],
 )
 def test_boxes_glued_along_part_of_a_face(seed, line):

@@ -68,6 +68,10 @@ def test_what_may_be_left_out(folder):
 
 
 ROD = '[[conductor]]\nname = "rod"\nmesh = "rod.stl"\n'
+TOP = (
+    "known are unit, coincidence, surroundings, ground_plane, mirror_plane, half_space, "
+    "flat_layers, conductor, dielectric"
+)
 KNOWN = (
     "known are name, mesh, shape, part, unit, body, smooth, crease_degrees, place, state, node, "
     "split"
@@ -83,15 +87,16 @@ KNOWN = (
          "allowed are m, cm, mm, um, nm, in, mil"),
         ("unit = 5\n" + ROD, "unit: found 5; allowed are m, cm, mm, um, nm, in, mil"),
         ('units = "mm"\n' + ROD, 'unknown key "units"; did you mean "unit"? '
-         "known are unit, surroundings, ground_plane, mirror_plane, conductor"),
+         f"{TOP}"),
         ('unit = "mm"\n[[conductors]]\n', 'unknown key "conductors"; did you mean "conductor"? '
-         "known are unit, surroundings, ground_plane, mirror_plane, conductor"),
+         f"{TOP}"),
         ('unit = "mm"\nxyz = 1\n', 'unknown key "xyz"; '
-         'known are unit, surroundings, ground_plane, mirror_plane, conductor'),
+         f"{TOP}"),
         ('unit = "mm"\nsurroundings = 2\n' + ROD, "surroundings: found 2, "
-         "needs a table with relative_permittivity"),
+         "needs a table with relative_permittivity and loss_tangent and conductivity"),
         ('unit = "mm"\n[surroundings]\npermittivity = 2\n' + ROD, "surroundings: unknown key "
-         '"permittivity"; did you mean "relative_permittivity"? known are relative_permittivity'),
+         '"permittivity"; did you mean "relative_permittivity"? known are relative_permittivity, '
+         "loss_tangent, conductivity"),
         ('unit = "mm"\n[surroundings]\nrelative_permittivity = "air"\n' + ROD,
          'surroundings.relative_permittivity: found "air", needs a number'),
         ('unit = "mm"\n[surroundings]\nrelative_permittivity = 0\n' + ROD,

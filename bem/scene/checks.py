@@ -40,6 +40,28 @@ def positive(where: str, value: Any) -> float:
     return float(value)
 
 
+def not_negative(where: str, value: Any) -> float:
+    """Return a finite number of 0 or more as float.
+
+    Raises:
+        InputError: it is none.
+    """
+    if number(where, value) < 0.0:
+        raise refuse(where, value, "a number of 0 or more")
+    return float(value)
+
+
+def within(where: str, value: Any, low: float, high: float) -> float:
+    """Return a number between two limits as float.
+
+    Raises:
+        InputError: it is none.
+    """
+    if not low <= number(where, value) <= high:
+        raise refuse(where, value, f"a number from {low:g} to {high:g}")
+    return float(value)
+
+
 def flag(where: str, value: Any) -> bool:
     """Return true or false.
 

@@ -15,6 +15,7 @@ from bem.scene.facet_notes import facet_notes
 from bem.scene.pairs import ALL_PAIRS, CONTACT, PairReport, all_pairs
 from bem.scene.plane_checks import ground_gap, on_kept_side, plane_findings
 from bem.scene.scene import Scene
+from bem.scene.support import check_support
 
 ALMOST_CLOSED = 0.02
 """A surface with less than this part of its edges open is probably meant to be closed."""
@@ -137,8 +138,9 @@ def check_scene(scene: Scene) -> Inspection:
 
     Raises:
         GeometryError: conductors touch, cross, or lie in solid metal.
-        InputError: the scene has no conductors.
+        InputError: the scene has no conductors, or something that no solver knows.
     """
+    check_support(scene)
     inspection = inspect(scene, facets=False)
     if inspection.fatal:
         more = len(inspection.fatal) - 1

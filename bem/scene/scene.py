@@ -1,47 +1,40 @@
-"""What the user describes: named conductors and the medium around them."""
+"""What the user describes: named conductors, dielectrics, and the medium around them."""
 
 from __future__ import annotations
 
-import math
+from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
-from bem.errors import BemError, InputError
+from bem.errors import InputError
 from bem.geometry.planes import AXES, NO_PLANES, Plane, Planes
 from bem.geometry.surface import Surface
 from bem.scene import checks
-from bem.scene.placing import Place, place_or_refuse, rotation
+from bem.scene.drawing import Desk, Drawing, Source, check_name, drawn, entry_name
+from bem.scene.material import Material, material_of
+from bem.scene.placing import Place, rotation
+from bem.scene.stack import (
+    FlatLayers,
+    HalfSpace,
+    Stack,
+    check_planes,
+    flat_layers_of,
+    half_space_of,
+)
 from bem.scene.states import TERMINAL, check_wiring
 from bem.units import metres_per
 
-__all__ = ["Conductor", "Place", "Scene", "Source", "rotation"]
+__all__ = ["Conductor", "Dielectric", "Place", "Scene", "Source", "entry_name", "rotation"]
 
-SHARPEST = 90.0
-"""Largest crease angle in degrees: no surface turns smoothly by more from facet to facet."""
 BODIES = ("solid", "shell")
 """What a closed surface may stand for: solid metal, or a hollow skin of metal."""
-
-
-@dataclass(frozen=True)
-class Source:
-    """Where a conductor's surface came from, for the record.
-
-    Args:
-        file: file name as given, or None for a shape made in Python.
-        sha256: hex digest of the file's bytes, or None.
-        unit: unit of the numbers in the file.
-        part: named portion of the file, or None for all of it.
-        changes: what reading changed, one line each (welded vertices, dropped faces, ...).
-    """
-
-    file: str | None
-    sha256: str | None
-    unit: str
-    part: str | None = None
-    changes: tuple[str, ...] = ()
+COINCIDENCE = 1e-6
+"""Faces closer than this part of the scene's size coincide, unless the user says otherwise."""
+COINCIDENCE_RANGE = (1e-9, 1e-3)
+"""Least and most that the user may say."""
 
 
 @dataclass(frozen=True)
@@ -65,9 +58,38 @@ class Conductor:
     node: str | None = None
 
 
+@dataclass(frozen=True)
+class Dielectric:
+    """One named dielectric body in metres, placed.
+
+    Args:
+        name: unique in its scene, among conductors too.
+        surface: closed, faces in metres.
+        source: where the surface came from.
+        relative_permittivity: positive.
+        loss_tangent: the same at every frequency, or None.
+        conductivity: S/m, or None.
+    """
+
+    name: str
+    surface: Surface
+    source: Source
+    relative_permittivity: float
+    loss_tangent: float | None = None
+    conductivity: float | None = None
+
+    @property
+    def material(self) -> Material:
+        """Its medium."""
+        return Material(self.relative_permittivity, self.loss_tangent, self.conductivity)
+
+
 @dataclass
 class Scene:
-    """Conductors in one homogeneous medium, with or without grounded and mirror planes.
+    """Conductors and dielectrics in their surroundings, with or without infinite planes.
+
+    Where bodies overlap, a conductor counts before a dielectric, and a later dielectric before
+    an earlier one.
 
     Args:
         unit: unit of every length that the scene is given; required.
@@ -75,10 +97,17 @@ class Scene:
         conductors: filled by ``add_conductor``.
         folder: where relative names of mesh files start; None is the current directory.
         planes: in metres, filled by ``set_ground_plane`` and ``add_mirror_plane``.
+        dielectrics: filled by ``add_dielectric``.
+        loss_tangent: of the surroundings, or None.
+        conductivity: of the surroundings, S/m, or None.
+        coincidence: faces of two bodies closer than this part of the scene's size coincide.
+        half_space: filled by ``set_half_space``.
+        flat_layers: filled by ``set_flat_layers``.
 
     Raises:
         UsageError: the unit is unknown.
-        InputError: the permittivity is not a positive finite number.
+        InputError: the permittivity is not a positive finite number, or another number of the
+            surroundings does not fit.
     """
 
     unit: str
@@ -86,12 +115,41 @@ class Scene:
     conductors: list[Conductor] = field(default_factory=list)
     folder: Path | None = None
     planes: Planes = NO_PLANES
+    dielectrics: list[Dielectric] = field(default_factory=list)
+    loss_tangent: float | None = None
+    conductivity: float | None = None
+    coincidence: float = COINCIDENCE
+    half_space: HalfSpace | None = None
+    flat_layers: FlatLayers | None = None
 
     def __post_init__(self) -> None:
         metres_per(self.unit)
-        self.relative_permittivity = checks.positive(
-            "relative_permittivity", self.relative_permittivity
-        )
+        found = material_of("", self.relative_permittivity, self.loss_tangent, self.conductivity)
+        self.relative_permittivity = found.relative_permittivity
+        self.loss_tangent, self.conductivity = found.loss_tangent, found.conductivity
+        self.coincidence = coincidence_of(self.coincidence)
+
+    @property
+    def bodies(self) -> list[Conductor | Dielectric]:
+        """Conductors, then dielectrics."""
+        return [*self.conductors, *self.dielectrics]
+
+    @property
+    def size(self) -> float:
+        """Largest side of the bounding box of all bodies, metres."""
+        bounds = np.array([body.surface.bounds for body in self.bodies])
+        return float((bounds[:, 1].max(axis=0) - bounds[:, 0].min(axis=0)).max())
+
+    @property
+    def surroundings(self) -> Material:
+        """Medium around all bodies."""
+        return Material(self.relative_permittivity, self.loss_tangent, self.conductivity)
+
+    @property
+    def stack(self) -> Stack | None:
+        """Flat layers of infinite extent, or None."""
+        flat = self.half_space or self.flat_layers
+        return None if flat is None else flat.stack(self.surroundings)
 
     def add_conductor(
         self,
@@ -135,28 +193,63 @@ class Scene:
         self._check_name(entry, name)
         checks.one_of(f"{entry}: body", body, BODIES)
         check_wiring(entry, (name, state, node), self.conductors)
-        where = place_or_refuse(f"{entry}: place", place)
-        checks.one_of(f"{entry}: split", split, (False, True))
-        given = {"mesh": mesh, "shape": shape, "part": part, "unit": unit, "split": split or None}
-        _check_choice(entry, given)
-        try:
-            if mesh is None:
-                surface, source = self._from_shape(shape)
-            else:
-                surface, source = self._from_mesh(mesh, part, unit or self.unit)
-            surface, source = _repaired(surface, source, body)
-        except BemError as problem:
-            raise type(problem)(f"{entry}: {problem}") from None
-        if where != Place():
-            surface = surface.placed(where.matrix, metres_per(self.unit) * np.array(where.shift))
-        surface = _smoothing(entry, surface, smooth, crease_degrees)
-        whole = Conductor(name, surface, body, source, state, node)
-        return self._append(entry, _pieces(whole) if split else [whole])
+        drawing = Drawing(shape, mesh, part, unit, place, smooth, crease_degrees, split)
+        pieces = drawn((entry, name), drawing, Desk(self.unit, self.folder), body)
+        found = [Conductor(*p[:2], body, p.source, state, node) for p in pieces]
+        for one in found:
+            self._check_name(entry, one.name)
+        self.conductors += found
+        return self
 
-    def _append(self, entry: str, conductors: list[Conductor]) -> Scene:
-        for conductor in conductors:
-            self._check_name(entry, conductor.name)
-        self.conductors += conductors
+    def add_dielectric(
+        self,
+        name: str,
+        shape: Surface | None = None,
+        *,
+        relative_permittivity: float,
+        mesh: str | Path | None = None,
+        part: str | None = None,
+        place: Place | None = None,
+        unit: str | None = None,
+        smooth: bool | None = None,
+        crease_degrees: float | None = None,
+        split: bool = False,
+        loss_tangent: float | None = None,
+        conductivity: float | None = None,
+    ) -> Scene:
+        """Add a dielectric body from a closed shape or mesh file; returns the scene itself.
+
+        Bodies may touch, enclose and overlap each other: a conductor counts before a
+        dielectric, and a later dielectric before an earlier one.
+
+        Args:
+            name: unique in the scene, among conductors too.
+            shape: faces in the scene's unit; or else
+            relative_permittivity: above 0.
+            mesh: a file of a kind in ``bem.geometry.reading.files.SUFFIXES``, and
+            part: a named portion of it.
+            place: scaled first, then turned about the origin, then shifted.
+            unit: of the numbers in the mesh file, if not the scene's.
+            smooth: as for conductors.
+            crease_degrees: as for conductors.
+            split: each body in the mesh file is a dielectric of its own, "NAME 1", ...
+            loss_tangent: 0 or more, the same at every frequency; or else
+            conductivity: S/m, 0 or more.
+
+        Raises:
+            InputError: a value does not fit, or the file cannot be used.
+            GeometryError: the surface is open; the message says where.
+            UsageError: the unit is unknown.
+        """
+        entry = entry_name(len(self.dielectrics) + 1, name, "dielectric")
+        self._check_name(entry, name)
+        medium = material_of(f"{entry}: ", relative_permittivity, loss_tangent, conductivity)
+        drawing = Drawing(shape, mesh, part, unit, place, smooth, crease_degrees, split)
+        pieces = drawn((entry, name), drawing, Desk(self.unit, self.folder), "dielectric")
+        found = [Dielectric(*piece, **vars(medium)) for piece in pieces]
+        for one in found:
+            self._check_name(entry, one.name)
+        self.dielectrics += found
         return self
 
     def set_ground_plane(
@@ -172,7 +265,7 @@ class Scene:
         if self.planes.ground is not None:
             raise InputError("ground_plane: found a second one; a scene has at most one")
         plane = self._plane("ground_plane", {"x": x, "y": y, "z": z})
-        self.planes = replace(self.planes, ground=plane)
+        self._set_planes("ground_plane", replace(self.planes, ground=plane))
         return self
 
     def add_mirror_plane(
@@ -186,10 +279,14 @@ class Scene:
         Raises:
             InputError: not one coordinate, or there is a plane of that axis already.
         """
-        number = len(self.planes.mirrors) + 1
-        plane = self._plane(f"mirror_plane {number}", {"x": x, "y": y, "z": z})
-        self.planes = replace(self.planes, mirrors=(*self.planes.mirrors, plane))
+        entry = f"mirror_plane {len(self.planes.mirrors) + 1}"
+        plane = self._plane(entry, {"x": x, "y": y, "z": z})
+        self._set_planes(entry, replace(self.planes, mirrors=(*self.planes.mirrors, plane)))
         return self
+
+    def _set_planes(self, entry: str, planes: Planes) -> None:
+        check_planes(entry, planes, self.half_space or self.flat_layers)
+        self.planes = planes
 
     def _plane(self, entry: str, given: dict[str, Any]) -> Plane:
         found = {key: value for key, value in given.items() if value is not None}
@@ -204,82 +301,96 @@ class Scene:
             )
         return Plane(axis, at)
 
+    def set_half_space(
+        self,
+        *,
+        relative_permittivity: float,
+        below_x: float | None = None,
+        above_x: float | None = None,
+        below_y: float | None = None,
+        above_y: float | None = None,
+        below_z: float | None = None,
+        above_z: float | None = None,
+        loss_tangent: float | None = None,
+        conductivity: float | None = None,
+    ) -> Scene:
+        """Fill one side of an infinite plane with another medium; returns the scene itself.
+
+        Give one coordinate, in the scene's unit. The surroundings fill the other side.
+
+        Raises:
+            InputError: not one coordinate, a number does not fit, or there are layers already.
+        """
+        entry = "half_space"
+        self._check_no_layers(entry)
+        medium = material_of(f"{entry}: ", relative_permittivity, loss_tangent, conductivity)
+        given = {"below_x": below_x, "above_x": above_x, "below_y": below_y}
+        given |= {"above_y": above_y, "below_z": below_z, "above_z": above_z}
+        found = half_space_of(entry, self.unit, given, medium)
+        check_planes(entry, self.planes, found)
+        self.half_space = found
+        return self
+
+    def set_flat_layers(
+        self,
+        *,
+        thickness: Sequence[float],
+        relative_permittivity: Sequence[float],
+        from_x: float | None = None,
+        from_y: float | None = None,
+        from_z: float | None = None,
+        grounded_below: bool = False,
+        grounded_above: bool = False,
+        loss_tangent: Sequence[float] | None = None,
+        conductivity: Sequence[float] | None = None,
+    ) -> Scene:
+        """Put a stack of layers of infinite extent; returns the scene itself.
+
+        Args:
+            thickness: of each layer, the lowest first, in the scene's unit.
+            relative_permittivity: of each layer.
+            from_x: coordinate of the lowest plane of layers normal to x; or else
+            from_y: of layers normal to y; or else
+            from_z: of layers normal to z.
+            grounded_below: whether the lowest plane is at potential zero.
+            grounded_above: whether the highest plane is.
+            loss_tangent: of each layer; or else
+            conductivity: of each layer, S/m.
+
+        Raises:
+            InputError: not one coordinate, lists of different length, a number that does not
+                fit, or there are layers or a grounded plane already.
+        """
+        entry = "flat_layers"
+        self._check_no_layers(entry)
+        layers: dict[str, Any] = {
+            "thickness": thickness,
+            "relative_permittivity": relative_permittivity,
+        }
+        layers |= {"grounded_below": grounded_below, "grounded_above": grounded_above}
+        layers |= {"loss_tangent": loss_tangent, "conductivity": conductivity}
+        given = {"from_x": from_x, "from_y": from_y, "from_z": from_z}
+        found = flat_layers_of(entry, self.unit, given, layers)
+        check_planes(entry, self.planes, found)
+        self.flat_layers = found
+        return self
+
+    def _check_no_layers(self, entry: str) -> None:
+        """Refuse a second stack."""
+        for key, found in (("half_space", self.half_space), ("flat_layers", self.flat_layers)):
+            if found is not None:
+                raise InputError(
+                    f"{entry}: found a {key} too; describe all layers by one flat_layers"
+                )
+
     def _check_name(self, entry: str, name: Any) -> None:
-        checks.text(f"{entry}: name", name)
-        for number, other in enumerate(self.conductors, 1):
-            if other.name == name:
-                raise InputError(f"{entry}: name: already that of conductor {number}; rename one")
-
-    def _from_shape(self, shape: Any) -> tuple[Surface, Source]:
-        from bem.geometry.arrays_in import tidy_surface
-
-        surface, changes = tidy_surface(shape, metres_per(self.unit))
-        return surface, Source(None, None, self.unit, changes=tuple(changes))
-
-    def _from_mesh(self, mesh: Any, part: str | None, unit: str) -> tuple[Surface, Source]:
-        from bem.geometry.reading.files import file_digest, read_surface
-
-        if not isinstance(mesh, str | Path):
-            raise checks.refuse("mesh", mesh, "a file name")
-        path = Path(mesh) if self.folder is None else self.folder / mesh
-        surface, changes = read_surface(path, metres_per(unit), part)
-        return surface, Source(str(mesh), file_digest(path), unit, part, tuple(changes))
+        check_name(entry, name, {"conductor": self.conductors, "dielectric": self.dielectrics})
 
 
-def _repaired(surface: Surface, source: Source, body: str) -> tuple[Surface, Source]:
-    """Mend the faces as far as that is safe, and tell."""
-    from bem.geometry.repair.repair import repair
+def coincidence_of(value: Any) -> float:
+    """Check which part of the scene's size still counts as contact.
 
-    surface, changes = repair(surface, body == "solid", source.unit)
-    return surface, replace(source, changes=(*source.changes, *changes))
-
-
-def _pieces(whole: Conductor) -> list[Conductor]:
-    """One conductor for each body of a surface."""
-    from bem.geometry.split import split_bodies
-
-    surfaces = split_bodies(whole.surface)
-    return [
-        replace(
-            whole,
-            name=f"{whole.name} {number}",
-            surface=surface,
-            source=replace(
-                whole.source,
-                changes=(*whole.source.changes, f"piece {number} of {len(surfaces)}"),
-            ),
-        )
-        for number, surface in enumerate(surfaces, 1)
-    ]
-
-
-def entry_name(number: int, name: Any) -> str:
-    """Name an entry as messages do: 'conductor 2 ("probe rod")'."""
-    return f'conductor {number} ("{name}")' if isinstance(name, str) else f"conductor {number}"
-
-
-def _smoothing(entry: str, surface: Surface, smooth: Any, crease_degrees: Any) -> Surface:
-    """Surface with what its user says of its facets."""
-    if smooth is not None:
-        surface = replace(surface, smooth=checks.flag(f"{entry}: smooth", smooth))
-    if crease_degrees is not None:
-        degrees = checks.positive(f"{entry}: crease_degrees", crease_degrees)
-        if degrees > SHARPEST:
-            raise checks.refuse(
-                f"{entry}: crease_degrees", degrees, f"an angle of at most {SHARPEST:g}"
-            )
-        surface = replace(surface, crease=math.radians(degrees))
-    return surface
-
-
-def _check_choice(entry: str, given: dict[str, Any]) -> None:
-    """Refuse a shape and a mesh together, neither, or a mesh's options without a mesh."""
-    if given["shape"] is not None and given["mesh"] is not None:
-        raise InputError(f"{entry}: found a shape and a mesh; give one of them")
-    if given["shape"] is None and given["mesh"] is None:
-        raise InputError(f"{entry}: mesh: missing; give the name of a mesh file, or a shape")
-    for key in ("part", "unit", "split"):
-        if given["mesh"] is None and given[key] is not None:
-            raise InputError(f"{entry}: {key}: goes with a mesh file only; drop it for a shape")
-    if given["part"] is not None:
-        checks.text(f"{entry}: part", given["part"])
+    Raises:
+        InputError: no number, or out of range.
+    """
+    return checks.within("coincidence", value, *COINCIDENCE_RANGE)

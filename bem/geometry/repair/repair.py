@@ -63,7 +63,7 @@ def repair(surface: Surface, solid: bool, unit: str) -> Repaired:
         return Repaired(apart.surface, changes)
     outside, walls = drop_walls(apart.surface)
     if walls:
-        changes.append(f"{counted(walls, 'face')} inside solid metal dropped")
+        changes.append(f"{counted(walls, 'face')} inside the solid dropped")
         outside = weld(outside)[0]
     return Repaired(outside, changes)
 
