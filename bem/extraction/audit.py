@@ -13,7 +13,7 @@ from typing import Any
 import numpy as np
 
 from bem.extraction.estimate import Estimate
-from bem.extraction.solution import Solution
+from bem.extraction.solved import Solved
 
 POINTS = 200
 WILD = 0.05
@@ -41,7 +41,7 @@ class Audit:
 
 
 def _random_points(
-    solution: Solution, column: int, rng: np.random.Generator
+    solution: Solved, column: int, rng: np.random.Generator
 ) -> tuple[np.ndarray, np.ndarray]:
     """Points (m, 3) drawn by |charge| of one column, and their panels (m,)."""
     charge = np.abs(solution.density[:, column]) * solution.panels.area
@@ -59,7 +59,7 @@ def _random_points(
     ), chosen
 
 
-def _energy_check(solution: Solution) -> tuple[float, float, float]:
+def _energy_check(solution: Solved) -> tuple[float, float, float]:
     """Largest over the columns of |mean residual|, with its standard error, and rms residual."""
     rng = np.random.default_rng(20)
     worst = (0.0, 0.0, 0.0)
@@ -76,7 +76,7 @@ def _energy_check(solution: Solution) -> tuple[float, float, float]:
     return worst
 
 
-def _raw_asymmetry(solution: Solution) -> float:
+def _raw_asymmetry(solution: Solved) -> float:
     """Largest difference between both rows of a pair, over the mean of their diagonals."""
     rng = np.random.default_rng(21)
     rows = np.sort(
@@ -99,7 +99,7 @@ def _wrong_signs(found: Estimate) -> np.ndarray:
     return np.maximum(beyond, 0.0)
 
 
-def audit(solution: Solution, found: Estimate) -> Audit:
+def audit(solution: Solved, found: Estimate) -> Audit:
     """Check a solution and its matrix."""
     count = len(found.value)
     mean, error, rms = _energy_check(solution)

@@ -7,12 +7,12 @@ from typing import Any
 import numpy as np
 
 from bem.extraction.scaled import ScaledScene
-from bem.extraction.solution import Solution, file_facet_shares
+from bem.extraction.solved import Solved
 from bem.geometry.wording import listed, metre_text
 from bem.scene.scene import Conductor, Scene
 
 
-def facet_record(scene: Scene, scaled: ScaledScene, solution: Solution) -> dict[str, Any]:
+def facet_record(scene: Scene, scaled: ScaledScene, solution: Solved) -> dict[str, Any]:
     """Sagitta and estimated effect for each conductor whose facets seem to stand for a curve.
 
     Returns:
@@ -20,7 +20,7 @@ def facet_record(scene: Scene, scaled: ScaledScene, solution: Solution) -> dict[
         ``change``, the relative change of its C_ii if its facets became that curve; of panels on
         the fit, what is not known of it. It has a sign only for solid bodies left as they are.
     """
-    change = file_facet_shares(solution)
+    change = solution.facet_shares()
     return {
         conductor.name: {
             "smooth": conductor.surface.smooth,

@@ -11,6 +11,7 @@ from bem.extraction.change import Change, ChangeSums, change_sums, estimate_chan
 from bem.extraction.loop import RoundState, Run
 from bem.extraction.marking import indicator
 from bem.extraction.solution import Solution, solve_round
+from bem.extraction.solved import Solved
 from bem.operators.dense import DenseOperator, Reuse
 from bem.panels.mesh import Mesh
 from bem.panels.transport import unmoved
@@ -79,7 +80,10 @@ class Lockstep(Run):
 
     def _store(self, before: RoundState, after: RoundState) -> None:
         """Keep a round of both scenes and of their difference; all of it is known before."""
-        both = (before.solution, before.sums), (after.solution, after.sums)
+        first, second = before.solution, after.solution
+        if not (isinstance(first, Solution) and isinstance(second, Solution)):
+            raise TypeError("scenes are carried over with conductors alone")
+        both = (first, before.sums), (second, after.sums)
         sums = [*self.sums, change_sums(*both, self.carrier.redrawn)]
         change = estimate_change(sums, before.found)
         self._keep(before)
@@ -111,7 +115,7 @@ class Lockstep(Run):
         own = max(self.rounds[-1].worst, self.other.rounds[-1].worst)
         return max(own, float(self._used().max()))
 
-    def _promise(self, solution: Solution) -> np.ndarray:
+    def _promise(self, solution: Solved) -> np.ndarray:
         """(2, n) what halving promises to either scene, or to their difference."""
         after = self.other.rounds[-1]
         mine = indicator(solution, self.goal, self.rounds[-1].found)

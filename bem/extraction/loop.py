@@ -5,6 +5,7 @@ from __future__ import annotations
 import time
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 
@@ -13,8 +14,9 @@ from bem.extraction.estimate import ROUNDS, Estimate, estimate
 from bem.extraction.marking import Goal, indicator, mark
 from bem.extraction.memory import MemoryPlan, readable
 from bem.extraction.progress import Progress
-from bem.extraction.solution import Solution, Sums, solve_round, sums
-from bem.operators.dense import DenseOperator, Reuse, far_reach
+from bem.extraction.solution import Sums, solve_round
+from bem.extraction.solved import Solved
+from bem.operators.dense import far_reach
 from bem.panels.mesh import Mesh
 
 MOST_ROUNDS = 60
@@ -54,7 +56,7 @@ class Limits:
 class RoundState:
     """One finished round."""
 
-    solution: Solution
+    solution: Solved
     sums: Sums
     found: Estimate
     worst: float
@@ -70,6 +72,8 @@ class Run:
         goal: what is asked.
         limits: when to stop early.
         report: called with a Progress at every step.
+        solve: solves a mesh, given the number of conductors, where expansions begin, and what
+            an earlier operator can give.
     """
 
     count: int
@@ -79,6 +83,7 @@ class Run:
     rounds: list[RoundState] = field(default_factory=list)
     stopped_by: str = ""
     started: float = field(default_factory=time.perf_counter)
+    solve: Callable[[Mesh, int, float, Any], Solved] = solve_round
 
     @property
     def elapsed(self) -> float:
@@ -112,7 +117,7 @@ class Run:
     def _round(self, mesh: Mesh, origin: np.ndarray | None) -> tuple[np.ndarray, Mesh]:
         panels = len(mesh.conductor)
         self.tell("solving", panels)
-        solution = solve_round(mesh, self.count, self._far(), self._reuse(origin))
+        solution = self.solve(mesh, self.count, self._far(), self._reuse(origin))
         self._keep(self._judged(solution))
         return self._refine(mesh, solution)
 
@@ -121,18 +126,16 @@ class Run:
         cancellation = self.rounds[0].sums.cancellation if self.rounds else 1.0
         return far_reach(self.goal.tolerance, cancellation)
 
-    def _reuse(self, origin: np.ndarray | None) -> Reuse | None:
+    def _reuse(self, origin: np.ndarray | None) -> Any:
         """What the round before can give, if it is as accurate as this one must be."""
         if origin is None:
             return None
         earlier = self.rounds[-1].solution.operator
-        if isinstance(earlier, DenseOperator) and earlier.far == self._far():
-            return Reuse(earlier, origin)
-        return None
+        return earlier.given(origin) if earlier.far == self._far() else None
 
-    def _judged(self, solution: Solution) -> RoundState:
+    def _judged(self, solution: Solved) -> RoundState:
         """The round with its value, its bars, and how far these are from the goal."""
-        here = sums(solution)
+        here = solution.sums()
         found = estimate([r.sums for r in self.rounds] + [here])
         worst = float(self.goal.worst(found).max())
         fine = here.panels >= FINE_START and worst <= 1.0 and self._own(found) <= EARLY
@@ -167,11 +170,11 @@ class Run:
         """Largest bar over its allowance after the last round."""
         return self.rounds[-1].worst
 
-    def _promise(self, solution: Solution) -> np.ndarray:
+    def _promise(self, solution: Solved) -> np.ndarray:
         """(2, n) what halving each panel in either direction promises."""
         return indicator(solution, self.goal, self.rounds[-1].found)
 
-    def _refine(self, mesh: Mesh, solution: Solution) -> tuple[np.ndarray, Mesh]:
+    def _refine(self, mesh: Mesh, solution: Solved) -> tuple[np.ndarray, Mesh]:
         last, worst = self.rounds[-1], self._worst()
         panels = len(mesh.conductor)
         if worst <= 1.0:

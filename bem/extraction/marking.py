@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from bem.extraction.estimate import RIM, SHARE, Estimate
-from bem.extraction.solution import Solution
+from bem.extraction.solved import Solved
 
 
 @dataclass(frozen=True)
@@ -37,7 +37,7 @@ class Goal:
         return found.bar[:, :count] / self.allowance(found.value[:, :count])
 
 
-def indicator(solution: Solution, goal: Goal, found: Estimate) -> np.ndarray:
+def indicator(solution: Solved, goal: Goal, found: Estimate) -> np.ndarray:
     """(2, n) what halving each panel in either direction promises, in units of what is allowed.
 
     Conductors whose row is good enough already count little, so that effort goes where a
@@ -48,26 +48,23 @@ def indicator(solution: Solution, goal: Goal, found: Estimate) -> np.ndarray:
     need = np.minimum(excess.max(axis=1), 1.0) ** 2
     allowed = goal.allowance(found.value[:, :count])
     weight = need / (goal.tolerance * np.diagonal(found.value))
-    energy = np.einsum("tnk,k->tn", solution.residual**2, weight)
+    residual, dual = solution.residual, solution.dual
+    energy = np.einsum("tnk,k->tn", np.abs(residual * dual), weight)
     for i, j, _ in goal.pairs:
         if excess[i, j] > 1.0:
-            energy += (
-                np.abs(solution.residual[:, :, i] * solution.residual[:, :, j]) / allowed[i, j]
-            )
+            energy += np.abs(residual[:, :, i] * dual[:, :, j]) / allowed[i, j]
     facet = _facet_indicator(solution, weight, found.facet_doubt / SHARE)
     return np.stack([energy[0] + energy[2] + facet[0], energy[1] + energy[3] + facet[1]])
 
 
-def _facet_indicator(solution: Solution, weight: np.ndarray, doubt: float) -> np.ndarray:
+def _facet_indicator(solution: Solved, weight: np.ndarray, doubt: float) -> np.ndarray:
     """(2, n) doubt in the faceting effect of each panel, given to the direction that bulges."""
     faceting = solution.mesh.faceting()
     if faceting.exact:
         return np.zeros((2, len(faceting.offset)))
-    area, side = solution.panels.area, solution.panels.sides[:, :, 2]
-    charge = np.einsum("nk,k->n", solution.density**2, weight)
-    normal = 4.0 * np.pi * area * np.abs(faceting.offset)
-    rim = 0.5 * np.pi**2 * solution.own * area * np.abs(faceting.rim_offset) * faceting.rim_width
-    size = (doubt * (normal + rim) + RIM / SHARE * rim) * charge
+    side = solution.panels.sides[:, :, 2]
+    normal, rim = solution.shape_energy(weight)
+    size = doubt * (normal + rim) + RIM / SHARE * rim
     along = solution.mesh.bulging(side[:, 0] + side[:, 2] >= side[:, 1] + side[:, 3])
     return np.stack([np.where(along, size, 0.0), np.where(along, 0.0, size)])
 

@@ -60,6 +60,29 @@ class Solution:
         """(n,) owner of each panel."""
         return self.mesh.conductor
 
+    @property
+    def dual(self) -> np.ndarray:
+        """(4, n, k) residual of the transposed system, which is the same one."""
+        return self.residual
+
+    def sums(self) -> Sums:
+        """What the round says of every entry."""
+        return sums(self)
+
+    def shape_energy(self, weight: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """(n,) effects of moves to the true surface, normal and of rims, on weighted entries.
+
+        Args:
+            weight: (k,) of each L_kk.
+        """
+        charge = np.einsum("nk,k->n", self.density**2, weight)
+        normal, rim = _pushes(self, self.mesh.faceting())
+        return np.abs(normal) * charge, np.abs(rim) * charge
+
+    def facet_shares(self) -> np.ndarray:
+        """(k,) relative change of each L_ii if the facets of i became what they may stand for."""
+        return file_facet_shares(self)
+
     def potential(self, points: np.ndarray, column: int) -> np.ndarray:
         """(m,) potential at points (m, 3) with conductor ``column`` at 1 and the others at 0."""
         density = with_images(self.density[:, column], self.sources.signs)

@@ -81,6 +81,12 @@ class Planes:
         flipped = itertools.product((False, True), repeat=len(self.all))
         return np.array([(-1.0) ** sum(np.logical_and(grounded, f)) for f in flipped])
 
+    @property
+    def parities(self) -> np.ndarray:
+        """(g,) -1 for images that an odd number of planes reflects, else 1."""
+        flipped = itertools.product((False, True), repeat=len(self.all))
+        return np.array([(-1.0) ** sum(f) for f in flipped])
+
     def images(self, points: np.ndarray) -> np.ndarray:
         """(g, ..., 3) all images of points (..., 3), in the order of ``signs``."""
         out = [np.asarray(points, dtype=float)]

@@ -78,6 +78,10 @@ class DenseOperator:
         reach = np.array([NEAR, far])
         self.sampled_pairs = int(pairs.fill(sources, targets, reach, origin, known, self.matrices))
 
+    def given(self, origin: np.ndarray) -> Reuse:
+        """What this operator can give to that of a mesh whose panels (n,) are from ``origin``."""
+        return Reuse(self, origin)
+
     @property
     def size(self) -> int:
         """Number of panels."""
