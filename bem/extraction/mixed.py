@@ -266,11 +266,9 @@ def mixed_sums(solution: MixedSolution) -> Sums:
     raw = (owner * area[:, None]).T @ density
     w, d = (x.reshape(-1, count) for x in (solution.residual, solution.dual))
     signed = d.T @ w
-    size = np.abs(d).T @ with_all(np.abs(w))
     unsure = np.tile(solution.mesh.unsure(), 4)[:, None]
     absolute = 0.5 * ((unsure * np.abs(d)).T @ np.abs(with_all(w)))
     absolute += 0.5 * ((unsure * np.abs(w)).T @ np.abs(with_all(d)))
-    del size
     faceting = solution.mesh.faceting()
     left, right = solution.pushes(faceting)
     change = _symmetric(np.einsum("pni,pnj->ij", left, right))
@@ -326,7 +324,8 @@ def quadrature_effect(solution: MixedSolution) -> np.ndarray:
 
 def rounding_effect(solution: MixedSolution) -> np.ndarray:
     """Bound (k, k + 1) on the change of L if every panel moves by its file's rounding."""
-    return _bound(solution, solution.mesh.rounding())
+    zero = np.zeros(len(solution.panels.area))
+    return _bound(solution, Faceting(solution.mesh.rounding, zero, zero, zero > 1.0))
 
 
 def file_facet_bound(solution: MixedSolution) -> np.ndarray:

@@ -136,7 +136,9 @@ def _fill_row(i, setup, reach, origin, mutual, new):
             sampled += 1
             if distance <= reach[0]:
                 if i < metal and j < metal:
-                    single[0, 0] = near_pair(i, source, panels) if j >= i or not mutual else math.nan
+                    single[0, 0] = (
+                        near_pair(i, source, panels) if j >= i or not mutual else math.nan
+                    )
                 if coplanar(i, source, panels):
                     double[:] = 0.0
             factors = (v, v * images.parity[image])
