@@ -92,10 +92,9 @@ class Counterparts:
 
 def _bodies(mesh: Mesh, scaled: ScaledScene, hollow: list[int]) -> tuple[Body, ...]:
     """The bodies of a mesh, with what the surfaces of a scene say of them."""
-    true = [Body.of(s, k in hollow, scaled.planes) for k, s in enumerate(scaled.surfaces)]
     return tuple(
-        replace(body, solid=other.solid, rounding=other.rounding)
-        for body, other in zip(mesh.bodies, true, strict=True)
+        replace(Body.of(surface, k in hollow, scaled.planes, k), sagitta=body.sagitta)
+        for k, (body, surface) in enumerate(zip(mesh.bodies, scaled.surfaces, strict=True))
     )
 
 

@@ -8,6 +8,7 @@ import numpy as np
 
 from bem.extraction.scaled import ScaledScene
 from bem.extraction.solved import Solved
+from bem.geometry.parts import INTERFACE
 from bem.geometry.wording import listed, metre_text
 from bem.scene.scene import Conductor, Scene
 
@@ -21,17 +22,19 @@ def facet_record(scene: Scene, scaled: ScaledScene, solution: Solved) -> dict[st
         the fit, what is not known of it. It has a sign only for solid bodies left as they are.
     """
     change = solution.facet_shares()
+    sagitta = np.zeros(len(scene.conductors))
+    for body in solution.mesh.bodies:
+        if body.conductor != INTERFACE:
+            sagitta[body.conductor] = max(sagitta[body.conductor], body.sagitta)
     return {
         conductor.name: {
             "smooth": conductor.surface.smooth,
             "crease_degrees": float(np.degrees(conductor.surface.crease)),
-            "largest_sagitta_m": body.sagitta * scaled.length,
+            "largest_sagitta_m": float(sagitta[k]) * scaled.length,
             "change": float(change[k]),
         }
-        for k, (conductor, body) in enumerate(
-            zip(scene.conductors, solution.mesh.bodies, strict=True)
-        )
-        if body.sagitta > 0.0
+        for k, conductor in enumerate(scene.conductors)
+        if sagitta[k] > 0.0
     }
 
 

@@ -243,9 +243,8 @@ def file_facet_shares(solution: Solution) -> np.ndarray:
 
 def rounding_effect(solution: Solution) -> np.ndarray:
     """Bound (k, k + 1) on the change of L if every panel moves by its file's rounding."""
-    offset = np.array([b.rounding for b in solution.mesh.bodies])[solution.conductor]
     size = np.abs(solution.density)
-    weight = 4.0 * np.pi * solution.own * solution.panels.area * offset
+    weight = 4.0 * np.pi * solution.own * solution.panels.area * solution.mesh.rounding
     return size.T @ (weight[:, None] * np.abs(with_all(solution.density)))
 
 

@@ -138,9 +138,14 @@ class FlatFaces:
     limit: float
 
     @classmethod
-    def of(cls, surface: Surface) -> FlatFaces:
-        """Join coplanar neighbours."""
-        limit = FLATNESS * surface.extent
+    def of(cls, surface: Surface, extent: float = 0.0) -> FlatFaces:
+        """Join coplanar neighbours.
+
+        Args:
+            surface: of a body, or a part of it.
+            extent: size of the whole body, if it is larger.
+        """
+        limit = FLATNESS * max(surface.extent, extent)
         corners = _split_bent_quads(surface, limit)
         label = _group_faces(surface.vertices[corners], corners, limit)
         return cls(surface.vertices, corners, label, int(label.max()) + 1, limit)

@@ -266,6 +266,11 @@ class Revolution:
         matrix = np.asarray(matrix, dtype=float)
         return replace(self, matrix=matrix @ self.matrix, shift=matrix @ self.shift + shift)
 
+    def reversed(self) -> Revolution:
+        """Give the same surface with its normal on the other side."""
+        backwards = tuple(piece.reversed() for piece in self.profile[::-1])
+        return replace(self, profile=backwards, cut=self.cut[::-1])
+
     def _mapped(self, x: np.ndarray) -> np.ndarray:
         # Written out: a matrix product may round one row differently from another.
         m = self.matrix

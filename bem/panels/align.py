@@ -19,7 +19,7 @@ def align_patches(patches: list[Patch], extent: float) -> list[Patch]:
     """The same patches in the same order, with their axes snapped to shared directions.
 
     Args:
-        patches: of all conductors.
+        patches: of all parts.
         extent: size of the largest body.
     """
     directions: list[np.ndarray] = []

@@ -1,8 +1,9 @@
 """Walls that a patch is divided along: its outline, and the shadows of faces close to it.
 
-Where a face of another conductor lies near and about parallel, the charge changes within one
+Where a face of another body lies near and about parallel, the charge changes within one
 gap of every rim, its own or the other's projected on it. Halving alone gains only gap/size
 of that charge per step, so the indicator is blind to it and the starting mesh must know.
+Faces that touch, side by side or along an edge, are no such neighbours.
 """
 
 from __future__ import annotations
@@ -12,6 +13,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from bem.geometry.flat_faces import FLATNESS
+from bem.geometry.parts import INTERFACE
 from bem.geometry.planes import NO_PLANES, Planes
 from bem.panels.planar import Patch
 
@@ -46,17 +48,19 @@ class _Shadow:
 
     Args:
         edges: (e, 2, 2) in the plane of this patch.
-        gap: (e,) distance of both planes at the middle of each edge.
+        gap: (e,) distance of both planes at the middle of each edge, infinite where they touch.
         rim_gap: (r,) the same at the middle of each edge of this patch's own outline.
         height: signed distance of the other patch's origin from this plane.
-        conductor: owner of the facing patch.
+        body: that the facing patch belongs to.
+        metal: whether it hides what lies behind.
     """
 
     edges: np.ndarray
     gap: np.ndarray
     rim_gap: np.ndarray
     height: float
-    conductor: int
+    body: int
+    metal: bool
 
     @property
     def box(self) -> np.ndarray:
@@ -64,8 +68,8 @@ class _Shadow:
         return np.array([points.min(axis=0), points.max(axis=0)])
 
 
-def _overlap(a: np.ndarray, b: np.ndarray) -> bool:
-    return bool(np.all(np.minimum(a[1], b[1]) > np.maximum(a[0], b[0])))
+def _overlap(a: np.ndarray, b: np.ndarray, margin: float) -> bool:
+    return bool(np.all(np.minimum(a[1], b[1]) > np.maximum(a[0], b[0]) + margin))
 
 
 def _covers(a: np.ndarray, b: np.ndarray) -> bool:
@@ -77,26 +81,30 @@ class FacingTable:
     """All patches, with what is needed to find the parallel ones quickly.
 
     Args:
-        patches: of all conductors.
+        patches: of all parts.
         normals: (n, 3).
         origins: (n, 3).
         sizes: (n,).
-        owners: (n,) conductor of each; images of opposite sign count as one of their own.
+        bodies: (n,) body of each; images of opposite sign count as one of their own.
         least: smaller patches are not looked at.
         planes: grounded and mirror planes; a wall in a mirror is no rim.
+        coincidence: faces nearer to each other than this touch.
     """
 
     patches: list[Patch]
     normals: np.ndarray
     origins: np.ndarray
     sizes: np.ndarray
-    owners: np.ndarray
+    bodies: np.ndarray
     least: float
     planes: Planes
+    coincidence: float
 
     @classmethod
-    def of(cls, patches: list[Patch], planes: Planes = NO_PLANES) -> FacingTable:
-        """Table of the patches of all conductors, followed by their images."""
+    def of(
+        cls, patches: list[Patch], planes: Planes = NO_PLANES, coincidence: float = 0.0
+    ) -> FacingTable:
+        """Table of the patches of all parts, followed by their images."""
         patches = [*patches, *(image for patch in patches for image in _images(patch, planes))]
         sizes = np.array([p.size for p in patches])
         return cls(
@@ -104,26 +112,28 @@ class FacingTable:
             np.array([p.axes[2] for p in patches]),
             np.array([p.origin for p in patches]),
             sizes,
-            np.array([p.conductor for p in patches]),
+            np.array([p.owner.body for p in patches]),
             float(np.sort(sizes)[-MOST_FACING]) if len(sizes) > MOST_FACING else 0.0,
             planes,
+            coincidence,
         )
 
     def _facing(self, k: int) -> np.ndarray:
         """Indices of patches about parallel to patch k, near it in height and not in its plane.
 
-        None if all of them are of its own conductor, which casts no shadow on itself.
+        None if all of them are of its own body, which casts no shadow on itself.
         """
         if self.sizes[k] < self.least:
             return np.empty(0, dtype=int)
         cosine = np.abs(self.normals @ self.normals[k])
         height = np.abs((self.origins - self.origins[k]) @ self.normals[k])
         reach = NEAR * np.minimum(self.sizes, self.sizes[k])
-        near = (cosine > LEANING) & (height < reach) & (height > 1e-9 * self.sizes[k])
+        touching = max(1e-9 * self.sizes[k], self.coincidence)
+        near = (cosine > LEANING) & (height < reach) & (height > touching)
         apart = np.linalg.norm(self.origins - self.origins[k], axis=1)
         near &= apart < self.sizes + self.sizes[k]
         found = np.flatnonzero(near)
-        return found if (self.owners[found] != self.owners[k]).any() else found[:0]
+        return found if (self.bodies[found] != self.bodies[k]).any() else found[:0]
 
     def _shadow(self, k: int, other: int) -> _Shadow:
         patch, facing = self.patches[k], self.patches[other]
@@ -131,31 +141,38 @@ class FacingTable:
         rim = facing.lift(facing.edges.mean(axis=1))
         own = patch.lift(patch.edges.mean(axis=1))
         slope = normal @ self.normals[other]
-        rim_gap = np.abs((own - facing.origin) @ self.normals[other] / slope)
         least = 1e-4 * min(self.sizes[k], self.sizes[other])
-        parallel = abs(slope) > 1.0 - 1e-12
+        least = 0.0 if abs(slope) > 1.0 - 1e-12 else least
         return _Shadow(
             edges=patch.drop(facing.lift(facing.edges)),
-            gap=np.maximum(np.abs((rim - patch.origin) @ normal), 0.0 if parallel else least),
-            rim_gap=np.maximum(rim_gap, 0.0 if parallel else least),
+            gap=self._gap((rim - patch.origin) @ normal, least),
+            rim_gap=self._gap((own - facing.origin) @ self.normals[other] / slope, least),
             height=float((facing.origin - patch.origin) @ normal),
-            conductor=facing.conductor,
+            body=facing.owner.body,
+            metal=facing.conductor != INTERFACE,
         )
+
+    def _gap(self, height: np.ndarray, least: float) -> np.ndarray:
+        """Gaps of at least ``least`` from heights (e,), infinite where faces touch."""
+        away = np.abs(height)
+        return np.where(away < self.coincidence, np.inf, np.maximum(away, least))
 
     def shadows(self, k: int) -> list[_Shadow]:
         """Shadows on patch k of faces that see it; what lies behind metal is left out."""
         own = self.patches[k].edges.reshape(-1, 2)
         box = np.array([own.min(axis=0), own.max(axis=0)])
         found = [self._shadow(k, other) for other in self._facing(k)]
-        found = sorted((s for s in found if _overlap(s.box, box)), key=lambda s: abs(s.height))
+        found = [s for s in found if _overlap(s.box, box, self.coincidence)]
+        found = sorted(found, key=lambda s: abs(s.height))
         seen: list[_Shadow] = []
         for shadow in found:
             hidden = any(
-                s.height * shadow.height > 0.0 and _covers(s.box, shadow.box) for s in seen
+                s.metal and s.height * shadow.height > 0.0 and _covers(s.box, shadow.box)
+                for s in seen
             )
             if not hidden:
                 seen.append(shadow)
-        return [s for s in seen if s.conductor != self.patches[k].conductor]
+        return [s for s in seen if s.body != self.patches[k].owner.body]
 
     def walls(self, k: int) -> Walls:
         """Outline and shadows of patch k."""
@@ -176,13 +193,14 @@ class FacingTable:
 
 
 def _images(patch: Patch, planes: Planes) -> list[Patch]:
-    """Images of a patch; those of opposite sign belong to a conductor of their own."""
+    """Images of a patch; those of opposite sign belong to a body of their own."""
     signs = planes.signs[1:]
     origins = planes.images(patch.origin)[1:]
     axes = planes.images(patch.origin + patch.axes)[1:] - origins[:, None]
-    owners = [patch.conductor if sign > 0.0 else -1 - patch.conductor for sign in signs]
+    opposite = patch.owner._replace(body=-1 - patch.owner.body)
+    owners = [patch.owner if sign > 0.0 else opposite for sign in signs]
     return [
-        replace(patch, conductor=owner, origin=origin, axes=frame)
+        replace(patch, owner=owner, origin=origin, axes=frame)
         for owner, origin, frame in zip(owners, origins, axes, strict=True)
     ]
 

@@ -32,14 +32,14 @@ class Pieces:
 
     Args:
         corners: (n, 4, 3).
-        conductor: (n,).
+        owner: (n,) part that each belongs to.
         gap: (n, 4) gap that the charge feels at each side, infinite inside a face.
         feature: (n,) size of the flat face that each lies on.
         sagitta: (n,) how far off it the smooth surface is that it may stand for.
     """
 
     corners: np.ndarray
-    conductor: np.ndarray
+    owner: np.ndarray
     gap: np.ndarray
     feature: np.ndarray
     sagitta: np.ndarray
@@ -51,7 +51,7 @@ class FlatFamily:
 
     Args:
         corners: (n, 4, 3), planar and convex; a triangle repeats its last corner.
-        conductor: (n,) index of the owner.
+        owner: (n,) part that each belongs to.
         feature: (n,) size of the flat face that each lies on.
         sagitta: (n,) mean distance from it, outward, of the smooth surface that the flat face
             may stand for.
@@ -59,23 +59,28 @@ class FlatFamily:
     """
 
     corners: np.ndarray
-    conductor: np.ndarray
+    owner: np.ndarray
     feature: np.ndarray
     sagitta: np.ndarray
     rim: np.ndarray
 
     @classmethod
     def start(
-        cls, patches: list[Patch], planes: Planes = NO_PLANES, rims: Sequence[Rims] = ()
+        cls,
+        patches: list[Patch],
+        planes: Planes = NO_PLANES,
+        rims: Sequence[Rims] = (),
+        coincidence: float = 0.0,
     ) -> FlatFamily:
         """Starting mesh that knows outlines, and gaps to other bodies and to images.
 
         Args:
-            patches: flat faces of all conductors.
+            patches: flat faces of all parts.
             planes: grounded and mirror planes.
             rims: stretches of free rims that may stand for curves.
+            coincidence: faces nearer to each other than this touch.
         """
-        pieces = _pieces(patches, planes)
+        pieces = _pieces(patches, FacingTable.of(patches, planes, coincidence))
         if len(pieces.corners) <= MANY_PIECES:
             pieces = _three_quads(pieces)
         if len(pieces.corners) <= FEW_PIECES:
@@ -83,9 +88,9 @@ class FlatFamily:
         pieces = _grade(pieces)
         rim = np.zeros((len(pieces.corners), 4))
         for curved in rims:
-            here = np.flatnonzero(pieces.conductor == curved.conductor)
+            here = np.flatnonzero(pieces.owner == curved.part)
             rim[here] = curved.beyond(pieces.corners[here])
-        return cls(pieces.corners, pieces.conductor, pieces.feature, pieces.sagitta, rim)
+        return cls(pieces.corners, pieces.owner, pieces.feature, pieces.sagitta, rim)
 
     def beyond_rims(self) -> tuple[np.ndarray, np.ndarray]:
         """Area (n,) over that of each panel beyond its sides on curved rims, and its width there.
@@ -112,20 +117,17 @@ class FlatFamily:
         order = np.concatenate([kept, np.flatnonzero(marked), np.flatnonzero(marked)])
         corners = np.concatenate([self.corners[kept], near, rest])
         rim = np.concatenate([self.rim[kept], *split_sides(self.rim[marked], across[marked], 0.0)])
-        conductor, feature, sagitta = (
-            x[order] for x in (self.conductor, self.feature, self.sagitta)
-        )
-        return FlatFamily(corners, conductor, feature, sagitta, rim), kept
+        owner, feature, sagitta = (x[order] for x in (self.owner, self.feature, self.sagitta))
+        return FlatFamily(corners, owner, feature, sagitta, rim), kept
 
 
-def _pieces(patches: list[Patch], planes: Planes) -> Pieces:
-    table = FacingTable.of(patches, planes)
+def _pieces(patches: list[Patch], table: FacingTable) -> Pieces:
     corners, owner, gaps, feature, sagitta = [], [], [], [], []
     for k, patch in enumerate(patches):
         walls = table.walls(k)
         for piece in _patch_pieces(patch, walls):
             corners.append(patch.lift(piece))
-            owner.append(patch.conductor)
+            owner.append(patch.owner.part)
             gaps.append(_side_gaps(piece, walls, FLATNESS * patch.size))
             feature.append(patch.size)
             sagitta.append(patch.sagitta)
@@ -241,7 +243,7 @@ def _three_quads(pieces: Pieces) -> Pieces:
     triangle = doubled.any(axis=1)
     height = 2.0 * _areas(c) / scale
     compact = triangle & (scale < SLENDER * height)
-    same = pieces.conductor, pieces.feature, pieces.sagitta
+    same = pieces.owner, pieces.feature, pieces.sagitta
     parts = [(c[~compact], pieces.gap[~compact], *(x[~compact] for x in same))]
     keep = np.array([np.flatnonzero(~row) for row in doubled[compact]], dtype=int).reshape(-1, 3)
     tri = np.take_along_axis(c[compact], keep[:, :, None], axis=1)
@@ -273,7 +275,7 @@ def _apply(pieces: Pieces, cut: np.ndarray, across: np.ndarray, part: np.ndarray
     order = np.concatenate([np.flatnonzero(stay), cut, cut])
     return Pieces(
         np.concatenate([pieces.corners[stay], near, rest]),
-        pieces.conductor[order],
+        pieces.owner[order],
         np.concatenate([pieces.gap[stay], *gaps]),
         pieces.feature[order],
         pieces.sagitta[order],

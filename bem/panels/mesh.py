@@ -2,29 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bem.geometry.fit.fit import fit_of
-from bem.geometry.flat_faces import FLATNESS, FlatFaces
+from bem.geometry.parts import INTERFACE, METAL, Part
 from bem.geometry.planes import NO_PLANES, Planes
 from bem.geometry.surface import Surface
-from bem.geometry.topology import edges_of
-from bem.panels.align import align_patches
 from bem.panels.fitted import FittedFamily
 from bem.panels.flat import FlatFamily
-from bem.panels.planar import patches_of
 from bem.panels.proximity import crowded
-from bem.panels.rims import Rims
+from bem.panels.starting import Blanks, families_of, owners_of, whole
 
 if TYPE_CHECKING:
-    from bem.geometry.revolved import Revolution
     from bem.panels.curved import CurvedFamily
-
-    Family = FlatFamily | CurvedFamily | FittedFamily
+    from bem.panels.starting import Family
 
 BENT_SHEET = 4.0
 """How much more the residual of a panel on a fitted bent sheet counts towards the bar."""
@@ -32,44 +26,57 @@ PROXIMITY_ROOM = 1000
 """The starting mesh may grow to twice its panels and this many for the sake of small neighbours."""
 
 
-SURROUNDINGS = 0
-"""Number of the outer medium among the regions; conductor k is region -(k + 1)."""
-
-
 @dataclass(frozen=True)
 class Body:
-    """What a conductor is to its panels.
+    """What a part of a surface is to its panels; without dielectrics, all of a conductor.
 
     Args:
-        solid: its closed surface bounds metal; otherwise there is field on both sides.
+        conductor: that it bounds, or INTERFACE.
+        back: region behind, or METAL.
+        front: region in front.
+        body: that it was cut from.
         rounding: how far its surface may lie from where it was drawn.
         sagitta: largest distance of its facets from the smooth surface that they may stand for.
     """
 
-    solid: bool
+    conductor: int
+    back: int
+    front: int
+    body: int
     rounding: float
     sagitta: float = 0.0
 
     @classmethod
-    def of(cls, surface: Surface, hollow: bool, planes: Planes = NO_PLANES) -> Body:
-        """Tell what a surface bounds; a hollow one is a skin even where it is closed."""
-        if surface.curve is not None:
-            closed = not any(surface.curve.free_rims)
-        else:
-            edges = edges_of(surface.triangles)
-            ends = surface.vertices[edges.ends[edges.uses != 2]]
-            closed = bool(planes.mirrored(ends, FLATNESS * surface.extent).all())
-        return cls(closed and not hollow, surface.rounding)
+    def of(
+        cls, surface: Surface, hollow: bool, planes: Planes = NO_PLANES, conductor: int = 0
+    ) -> Body:
+        """Tell what a whole conductor bounds; a hollow one is a skin even where it is closed."""
+        return cls.of_part(whole(surface, hollow, planes, conductor))
+
+    @classmethod
+    def of_part(cls, part: Part) -> Body:
+        """What is known without its panels."""
+        return cls(part.conductor, part.back, part.front, part.body, part.surface.rounding)
+
+    @property
+    def solid(self) -> bool:
+        """Whether there is metal behind."""
+        return self.back == METAL
+
+    @property
+    def sheet(self) -> bool:
+        """Whether it is metal with field on both sides."""
+        return not self.solid and self.conductor != INTERFACE
 
 
 @dataclass(frozen=True)
 class Mesh:
-    """Panels of all conductors, family after family.
+    """Panels of all parts, family after family.
 
     Args:
-        families: flat panels of the whole scene, then one family per curved or fitted body.
-        owners: per family, the conductor (n_family,) of each panel.
-        bodies: what each conductor is.
+        families: flat panels of the whole scene, then one family per curved or fitted part.
+        owners: per family, the part (n_family,) of each panel.
+        bodies: what each part is; without dielectrics, each conductor.
         planes: whose images of all panels count too.
     """
 
@@ -81,52 +88,38 @@ class Mesh:
     @classmethod
     def start(
         cls,
-        surfaces: list[Surface],
+        surfaces: Sequence[Surface] | Sequence[Part],
         hollow: Iterable[int] = (),
         accept: Callable[[int], None] = lambda _: None,
         planes: Planes = NO_PLANES,
+        coincidence: float = 0.0,
     ) -> Mesh:
-        """Return the starting mesh of one surface per conductor.
+        """Return the starting mesh of one surface per conductor, or of parts.
+
+        The corners of every panel of a part run counterclockwise seen from its front. Those of
+        a mere surface run as its faces do, and there the front is no more than a name.
 
         Args:
-            surfaces: of all conductors.
-            hollow: conductors whose closed surface is a skin, with field on both sides.
+            surfaces: of all conductors, or parts.
+            hollow: conductors whose closed surface is a skin, with field on both sides; parts
+                tell that themselves.
             accept: called early with a number of panels that the mesh will at least have,
                 and with that of the finished mesh; it may raise.
             planes: grounded and mirror planes; no surface crosses them.
+            coincidence: faces nearer to each other than this touch.
         """
-        flat = {k: FlatFaces.of(s) for k, s in enumerate(surfaces) if s.curve is None}
-        accept(sum(faces.count for faces in flat.values()))
-        fits = {k: fit for k, faces in flat.items() if (fit := fit_of(surfaces[k], faces))}
-        fitted = [k for k in fits if surfaces[k].smooth]
-        patches = [
-            patch
-            for k, faces in flat.items()
-            if k not in fitted
-            for patch in patches_of(faces, k, fits[k].sagitta if k in fits else None)
-        ]
-        families: list[Family] = []
-        owners = []
-        if patches:
-            rims = [Rims.of(fit, k) for k, fit in fits.items() if k not in fitted]
-            aligned = align_patches(patches, max(s.extent for s in surfaces))
-            families.append(FlatFamily.start(aligned, planes, rims))
-            owners.append(_owners(families[-1], 0))
+        parts = [part for part in surfaces if isinstance(part, Part)]
+        turned, skins = bool(parts), set(hollow)
         for k, surface in enumerate(surfaces):
-            if surface.curve is not None:
-                families.append(_curved(surface.curve))
-            elif k in fitted:
-                families.append(FittedFamily.start(fits[k]))
-            else:
-                continue
-            owners.append(_owners(families[-1], k))
+            if isinstance(surface, Surface):
+                parts.append(whole(surface, k in skins, planes, k))
+        blanks = Blanks.of(parts, turned, accept)
+        families, owners = families_of(blanks, planes, coincidence)
         accept(sum(len(owner) for owner in owners))
-        bodies = tuple(Body.of(s, k in set(hollow), planes) for k, s in enumerate(surfaces))
-        bodies = tuple(
-            replace(body, sagitta=fits[k].farthest) if k in fits else body
-            for k, body in enumerate(bodies)
-        )
-        return _resolved(cls(tuple(families), tuple(owners), bodies, planes))
+        bodies = [Body.of_part(part) for part in parts]
+        for k, fit in blanks.fits.items():
+            bodies[k] = replace(bodies[k], sagitta=fit.farthest)
+        return _resolved(cls(families, owners, tuple(bodies), planes))
 
     @property
     def corners(self) -> np.ndarray:
@@ -134,20 +127,29 @@ class Mesh:
         return np.concatenate([f.corners for f in self.families])
 
     @property
-    def conductor(self) -> np.ndarray:
-        """(n,) owner of each panel."""
+    def owner(self) -> np.ndarray:
+        """(n,) part that each panel belongs to."""
         return np.concatenate(self.owners)
 
     @property
-    def regions(self) -> np.ndarray:
-        """(n, 2) region behind and in front of each panel.
+    def conductor(self) -> np.ndarray:
+        """(n,) conductor of each panel, or INTERFACE."""
+        return np.array([body.conductor for body in self.bodies])[self.owner]
 
-        A solid's metal counts as behind whichever way the panel is turned; both sides of a
-        sheet lie in the surroundings, and the sheet itself is told by ``conductor``.
-        """
-        solid = np.array([body.solid for body in self.bodies])[self.conductor]
-        behind = np.where(solid, -(self.conductor + 1), SURROUNDINGS)
-        return np.stack([behind, np.full(len(behind), SURROUNDINGS)], axis=1)
+    @property
+    def body(self) -> np.ndarray:
+        """(n,) body that each panel was cut from."""
+        return np.array([body.body for body in self.bodies])[self.owner]
+
+    @property
+    def regions(self) -> np.ndarray:
+        """(n, 2) region behind each panel, or METAL, and region in front of it."""
+        return np.array([(body.back, body.front) for body in self.bodies])[self.owner]
+
+    @property
+    def rounding(self) -> np.ndarray:
+        """(n,) how far the surface under each panel may lie from where it was drawn."""
+        return np.array([body.rounding for body in self.bodies])[self.owner]
 
     @property
     def feature(self) -> np.ndarray:
@@ -157,7 +159,7 @@ class Mesh:
     def faceting(self) -> Faceting:
         """How far the panels are from the true surface."""
         parts = [
-            _faceting(family, not self.bodies[owner[0]].solid)
+            _faceting(family, self.bodies[owner[0]])
             for family, owner in zip(self.families, self.owners, strict=True)
         ]
         return Faceting(*(np.concatenate(column) for column in zip(*parts, strict=True)))
@@ -169,7 +171,7 @@ class Mesh:
         """
         bent = [
             isinstance(family, FittedFamily)
-            and not self.bodies[owner[0]].solid
+            and self.bodies[owner[0]].sheet
             and bool(family.doubt.any())
             for family, owner in zip(self.families, self.owners, strict=True)
         ]
@@ -177,9 +179,9 @@ class Mesh:
 
     def doubtful(self) -> Faceting:
         """How far the facets of files, or the fits to them, may be from what they stand for."""
-        solid = np.array([body.solid for body in self.bodies])
+        sheet = np.array([body.sheet for body in self.bodies])
         parts = [
-            _doubtful(family, solid[owner])
+            _doubtful(family, sheet[owner])
             for family, owner in zip(self.families, self.owners, strict=True)
         ]
         return Faceting(*(np.concatenate(column) for column in zip(*parts, strict=True)))
@@ -213,7 +215,7 @@ class Mesh:
             fresh[: len(kept)] = start + kept
             families.append(finer)
             origin.append(fresh)
-            owners.append(_owners(finer, int(owner[0])))
+            owners.append(owners_of(finer, int(owner[0])))
             start += len(owner)
         finer_mesh = Mesh(tuple(families), tuple(owners), self.bodies, self.planes)
         return finer_mesh, np.concatenate(origin)
@@ -224,11 +226,11 @@ class Faceting:
     """Distance of the true surface from the panels, per panel.
 
     Args:
-        offset: (n,) mean outward distance of the true surface from the panel, weighted where the
-            density grows towards a sharp edge of a solid.
+        offset: (n,) mean distance of the true surface from the panel, towards its front, weighted
+            where the density grows towards a sharp edge of a solid.
         rim_offset: (n,) part of the panel's area that is missing at a curved free rim.
         rim_width: (n,) width of such a panel across the rim, 0 for all others.
-        sheet: (n,) bool, panels of open or hollow surfaces, with field on both sides.
+        sheet: (n,) bool, panels of open or hollow conductors, with field on both sides.
     """
 
     offset: np.ndarray
@@ -242,36 +244,29 @@ class Faceting:
         return not (self.offset.any() or self.rim_offset.any())
 
 
-def _faceting(family: Family, sheet: bool) -> tuple[np.ndarray, ...]:
+def _faceting(family: Family, body: Body) -> tuple[np.ndarray, ...]:
     count = len(family.corners)
     if isinstance(family, FlatFamily):
         zero = np.zeros(count)
         return zero, zero, zero, zero.astype(bool)
     offset = family.offset
-    if not (sheet or isinstance(family, FittedFamily)):
+    if body.solid and not isinstance(family, FittedFamily):
         offset = offset * family.crowding
-    return offset, family.rim_offset, family.rim_width, np.full(count, sheet)
+    return offset, *_on_rims(family, body.sheet), np.full(count, body.sheet)
 
 
-def _doubtful(family: Family, solid: np.ndarray) -> tuple[np.ndarray, ...]:
-    sheet = ~solid
+def _on_rims(family: CurvedFamily | FittedFamily, sheet: bool) -> tuple[np.ndarray, np.ndarray]:
+    """What is missing at free rims, and widths there; only sheets have such rims."""
+    return sheet * family.rim_offset, sheet * family.rim_width
+
+
+def _doubtful(family: Family, sheet: np.ndarray) -> tuple[np.ndarray, ...]:
     if isinstance(family, FlatFamily):
-        return family.sagitta, *family.beyond_rims(), sheet
+        beyond, width = family.beyond_rims()
+        return family.sagitta, sheet * beyond, sheet * width, sheet
     if isinstance(family, FittedFamily):
-        return family.doubt, family.rim_doubt, family.rim_width, sheet
+        return family.doubt, sheet * family.rim_doubt, sheet * family.rim_width, sheet
     return *np.zeros((3, len(sheet))), sheet
-
-
-def _curved(surface: Revolution) -> CurvedFamily:
-    from bem.panels.curved import CurvedFamily
-
-    return CurvedFamily.start(surface)
-
-
-def _owners(family: Family, conductor: int) -> np.ndarray:
-    if isinstance(family, FlatFamily):
-        return family.conductor
-    return np.full(len(family.corners), conductor)
 
 
 def _feature(family: Family) -> np.ndarray:
@@ -282,10 +277,10 @@ def _feature(family: Family) -> np.ndarray:
 
 
 def _resolved(mesh: Mesh) -> Mesh:
-    """Halve panels beside much smaller ones of other conductors until they can see them."""
-    most = 2 * len(mesh.conductor) + PROXIMITY_ROOM
+    """Halve panels beside much smaller ones of other bodies until they can see them."""
+    most = 2 * len(mesh.owner) + PROXIMITY_ROOM
     while True:
-        marked, across = crowded(mesh.corners, mesh.conductor, mesh.feature)
-        if not marked.any() or len(mesh.conductor) + marked.sum() > most:
+        marked, across = crowded(mesh.corners, mesh.body, mesh.feature)
+        if not marked.any() or len(mesh.owner) + marked.sum() > most:
             return mesh
         mesh, _ = mesh.refine(marked, across)

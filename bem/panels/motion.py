@@ -22,7 +22,7 @@ from bem.geometry.fit.fit import fit_of
 from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.revolved import Arc, Piece, Revolution
 from bem.geometry.surface import NO_CORNER, Surface
-from bem.panels.planar import Patch, patches_of, planar_patches
+from bem.panels.planar import Owner, Patch, patches_of, planar_patches
 
 FIT = 1e-9
 """Vertices may miss a map by this part of the body's size, and by the rounding of both files."""
@@ -181,7 +181,7 @@ def _by_triangles(before: Surface, after: Surface, slack: float) -> ByFaces | No
 def _by_faces(before: Surface, after: Surface, slack: float) -> ByFaces | None:
     """A map for each flat face, if there is one for all of them."""
     flat = FlatFaces.of(before)
-    patches = patches_of(flat, 0)
+    patches = patches_of(flat, Owner.whole(0))
     maps = []
     for label in range(flat.count):
         used = np.unique(flat.corners[flat.label == label])

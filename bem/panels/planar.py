@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -10,12 +11,25 @@ from bem.geometry.flat_faces import FlatFaces, sides_of
 from bem.geometry.surface import Surface
 
 
+class Owner(NamedTuple):
+    """What a flat face belongs to: indices of the part, of its conductor, and of its body."""
+
+    part: int
+    conductor: int
+    body: int
+
+    @classmethod
+    def whole(cls, conductor: int) -> Owner:
+        """All of a conductor's surface."""
+        return cls(conductor, conductor, conductor)
+
+
 @dataclass(frozen=True)
 class Patch:
-    """One flat face of one conductor.
+    """One flat face of one part.
 
     Args:
-        conductor: index of its owner.
+        owner: of the face.
         origin: (3,) a point of its plane.
         axes: (3, 3) rows: two in-plane directions and the normal.
         edges: (e, 2, 2) outline in the plane, as unordered segments (holes included).
@@ -24,12 +38,17 @@ class Patch:
             that leads outward.
     """
 
-    conductor: int
+    owner: Owner
     origin: np.ndarray
     axes: np.ndarray
     edges: np.ndarray
     faces: np.ndarray
     sagitta: float = 0.0
+
+    @property
+    def conductor(self) -> int:
+        """Index of its conductor, or INTERFACE."""
+        return self.owner.conductor
 
     def lift(self, xy: np.ndarray) -> np.ndarray:
         """Points (..., 2) of the plane in space (..., 3)."""
@@ -80,8 +99,8 @@ def _is_between(x: np.ndarray, a: np.ndarray, b: np.ndarray, limit: float) -> bo
     return 0.0 < t < 1.0 and float(np.linalg.norm(x - a - t * step)) <= limit
 
 
-def patches_of(faces: FlatFaces, conductor: int, sagitta: np.ndarray | None = None) -> list[Patch]:
-    """The flat faces of a body with their outlines, and the sagitta (count,) of each."""
+def patches_of(faces: FlatFaces, owner: Owner, sagitta: np.ndarray | None = None) -> list[Patch]:
+    """The flat faces of a part with their outlines, and the sagitta (count,) of each."""
     bulge = np.zeros(faces.count) if sagitta is None else sagitta
     origin, normal = faces.planes()
     order = np.argsort(faces.label, kind="stable")
@@ -90,7 +109,7 @@ def patches_of(faces: FlatFaces, conductor: int, sagitta: np.ndarray | None = No
         _make_patch(
             faces.vertices,
             faces.corners[order[starts[g] : starts[g + 1]]],
-            conductor,
+            owner,
             (origin[g], normal[g], faces.limit),
             float(bulge[g]),
         )
@@ -100,10 +119,10 @@ def patches_of(faces: FlatFaces, conductor: int, sagitta: np.ndarray | None = No
 
 def planar_patches(surface: Surface, conductor: int) -> list[Patch]:
     """The flat faces of a body, coplanar neighbours joined."""
-    return patches_of(FlatFaces.of(surface), conductor)
+    return patches_of(FlatFaces.of(surface), Owner.whole(conductor))
 
 
-def _make_patch(vertices, corners, conductor, plane, sagitta) -> Patch:
+def _make_patch(vertices, corners, owner, plane, sagitta) -> Patch:
     origin, normal, limit = plane
     edges = sides_of(corners)
     rim = np.unique(edges.pairs[edges.count[edges.group] == 1], axis=0)
@@ -112,4 +131,4 @@ def _make_patch(vertices, corners, conductor, plane, sagitta) -> Patch:
     axes = _in_plane_axes(vertices[rim], normal)
     down = axes[:2].T
     flat = (vertices[corners] - origin) @ down
-    return Patch(conductor, origin, axes, (vertices[rim] - origin) @ down, flat, sagitta)
+    return Patch(owner, origin, axes, (vertices[rim] - origin) @ down, flat, sagitta)

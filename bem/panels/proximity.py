@@ -17,13 +17,13 @@ BLOCK = 512
 
 
 def crowded(
-    corners: np.ndarray, conductor: np.ndarray, feature: np.ndarray
+    corners: np.ndarray, body: np.ndarray, feature: np.ndarray
 ) -> tuple[np.ndarray, np.ndarray]:
-    """Panels that are too large beside a small feature of another conductor.
+    """Panels that are too large beside a small feature of another body.
 
     Args:
         corners: (n, 4, 3).
-        conductor: (n,) owner of each panel.
+        body: (n,) body of each panel.
         feature: (n,) size of the face or body that each panel lies on.
 
     Returns:
@@ -32,12 +32,12 @@ def crowded(
     sides = mean_sides(corners)
     size = sides.max(axis=1)
     marked = np.zeros(len(size), dtype=bool)
-    if len(np.unique(conductor)) > 1:
+    if len(np.unique(body)) > 1:
         panels = panel_arrays(corners)
         small = np.flatnonzero(feature * TOO_LARGE < size.max())
         for start in range(0, len(small), BLOCK):
             block = small[start : start + BLOCK]
-            marked |= _seen_by(block, panels, size, conductor, feature[block])
+            marked |= _seen_by(block, panels, size, body, feature[block])
     return marked, sides.argmax(axis=1)
 
 
@@ -45,14 +45,14 @@ def _seen_by(
     small: np.ndarray,
     panels: PanelArrays,
     size: np.ndarray,
-    conductor: np.ndarray,
+    body: np.ndarray,
     feature: np.ndarray,
 ) -> np.ndarray:
-    """Panels that are too large for one of the panels ``small`` of another conductor."""
+    """Panels that are too large for one of the panels ``small`` of another body."""
     apart = np.linalg.norm(panels.center[:, None] - panels.center[small], axis=2)
     limit = size[:, None] / TOO_LARGE
     near = (apart - panels.radius[:, None] < limit) & (feature < limit)
-    near &= conductor[:, None] != conductor[small]
+    near &= body[:, None] != body[small]
     large, which = np.nonzero(near)
     distance = _distance(large, panels.center[small[which]], panels)
     marked = np.zeros(len(size), dtype=bool)

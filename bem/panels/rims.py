@@ -15,29 +15,29 @@ BLOCK = 256
 
 @dataclass(frozen=True)
 class Rims:
-    """Straight stretches of the free rims of one conductor.
+    """Straight stretches of the free rims of one part.
 
     Args:
-        conductor: its index.
+        part: its index.
         ends: (m, 2, 3) of each stretch.
         sagitta: (m,) mean distance of the curve from each, away from the facet.
         tolerance: a point this near to a stretch lies on it.
     """
 
-    conductor: int
+    part: int
     ends: np.ndarray
     sagitta: np.ndarray
     tolerance: float
 
     @classmethod
-    def of(cls, fit: Fit, conductor: int) -> Rims:
+    def of(cls, fit: Fit, part: int) -> Rims:
         """Stretches of a fit's rims that are bent."""
         facet, side = np.nonzero(fit.rim_sagitta)
         corners = fit.facets.corners[facet]
         rows = np.arange(len(facet))
         ends = np.stack([corners[rows, side], corners[rows, (side + 1) % 3]], axis=1)
         points, sagitta = fit.facets.points[ends], fit.rim_sagitta[facet, side]
-        return cls(conductor, points, sagitta, 10.0 * FLATNESS * fit.size)
+        return cls(part, points, sagitta, 10.0 * FLATNESS * fit.size)
 
     def beyond(self, corners: np.ndarray) -> np.ndarray:
         """(n, 4) sagitta of the stretch on which each side of panels (n, 4, 3) lies, or 0."""

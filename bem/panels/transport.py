@@ -78,9 +78,9 @@ def _carried_curved(family: CurvedFamily, motion: Motion) -> CurvedFamily:
 
 
 def _carried_flat(family: FlatFamily, motions: list[Motion]) -> FlatFamily:
-    corners, size = family.corners.copy(), np.ones(len(family.conductor))
-    for k in np.unique(family.conductor):
-        here, motion = family.conductor == k, motions[k]
+    corners, size = family.corners.copy(), np.ones(len(family.owner))
+    for k in np.unique(family.owner):
+        here, motion = family.owner == k, motions[k]
         if isinstance(motion, ByFaces):
             corners[here] = _each_face(corners[here], motion)
         elif isinstance(motion, Affine) and not motion.still:

@@ -20,7 +20,7 @@ from bem.geometry.topology import Edges, edges_of, orient
 
 @dataclass(frozen=True, eq=False)
 class Facets:
-    """Triangles of a body that run the same way round, outward if it is closed.
+    """Triangles of a body that run the same way round, by themselves outward if it is closed.
 
     Args:
         points: (v, 3) vertices.
@@ -47,16 +47,19 @@ class Facets:
     soft: np.ndarray
 
     @classmethod
-    def of(cls, faces: FlatFaces, crease: float) -> Facets:
+    def of(cls, faces: FlatFaces, crease: float, turned: bool = False) -> Facets:
         """Triangles of flat faces.
 
         Args:
             faces: of one body.
             crease: a turn above this is sharp, radians.
+            turned: the faces run the right way round already.
         """
         triangles, flat = _triangles(faces)
         edges = edges_of(triangles)
-        corners, edge = _oriented(faces.vertices, triangles, edges)
+        corners, edge = triangles, edges.owner.reshape(-1, 3)
+        if not turned:
+            corners, edge = _oriented(faces.vertices, triangles, edges)
         normal = _normals(faces.vertices[corners], flat)
         sides, alike = _meeting(corners, edge, edges.uses)
         turn = np.where(flat[sides[:, 0]] == flat[sides[:, 1]], 0.0, _angle(*normal[sides.T]))

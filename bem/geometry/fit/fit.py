@@ -51,14 +51,15 @@ class Fit:
     size: float
 
     @classmethod
-    def of(cls, faces: FlatFaces, crease: float) -> Fit:
+    def of(cls, faces: FlatFaces, crease: float, turned: bool = False) -> Fit:
         """Fit a smooth surface to the flat faces of one body.
 
         Args:
             faces: of the body.
             crease: a turn above this is sharp, radians.
+            turned: the faces run the right way round already.
         """
-        facets = Facets.of(faces, crease)
+        facets = Facets.of(faces, crease, turned)
         tangent = crease_tangents(facets, crease)
         curves = edge_curves(facets, normals_of(facets, crease, tangent), tangent)
         along = curves[facets.edge]
@@ -150,9 +151,9 @@ class Fit:
         return float(np.linalg.norm(off, axis=2).max())
 
 
-def fit_of(surface: Surface, faces: FlatFaces) -> Fit | None:
+def fit_of(surface: Surface, faces: FlatFaces, turned: bool = False) -> Fit | None:
     """Fit to the flat faces of a surface; None if they are the shape, or no curve shows."""
     if surface.smooth is False:
         return None
-    fit = Fit.of(faces, surface.crease)
+    fit = Fit.of(faces, surface.crease, turned)
     return fit if fit.bends else None
