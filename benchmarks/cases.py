@@ -27,6 +27,8 @@ from bem.units import EPS0
 
 sys.path.append(str(Path(__file__).resolve().parent.parent / "tests"))
 
+from dielectric_formulas import coated_sphere, sphere_and_dielectric_sphere  # noqa: E402
+from dielectric_values import BY_ELEMENTS, DielectricReference  # noqa: E402
 from reference_values import LEFT_OUT as NOT_IN_TABLES  # noqa: E402
 from reference_values import PER_LENGTH, REFERENCES, Body, Reference  # noqa: E402
 
@@ -41,6 +43,15 @@ class Part:
     name: str
     surface: Surface
     body: str = "solid"
+
+
+@dataclass(frozen=True)
+class Filling:
+    """One dielectric body of a case: its faces in metres, and its relative permittivity."""
+
+    name: str
+    surface: Surface
+    permittivity: float
 
 
 @dataclass(frozen=True)
@@ -71,6 +82,7 @@ class Case:
         may_refuse: whether an error in place of a result is acceptable.
         grounded: whether the plane z = 0 is at potential zero.
         mirrors: axes of mirror planes through the origin, as in "xy".
+        fillings: its dielectric bodies, a later one before an earlier one.
     """
 
     name: str
@@ -81,11 +93,17 @@ class Case:
     may_refuse: bool = False
     grounded: bool = False
     mirrors: str = ""
+    fillings: tuple[Filling, ...] = ()
+
+    @property
+    def bodies(self) -> tuple[Part | Filling, ...]:
+        """Conductors, then dielectrics."""
+        return (*self.parts, *self.fillings)
 
     @property
     def flat(self) -> bool:
         """Whether all faces are true faces, so that a mesh file can hold the case."""
-        return all(part.surface.curve is None for part in self.parts)
+        return all(body.surface.curve is None for body in self.bodies)
 
     def scene(self) -> bem.Scene:
         """Make the scene."""
@@ -96,6 +114,10 @@ class Case:
             scene.add_mirror_plane(**{axis: 0.0})
         for part in self.parts:
             scene.add_conductor(part.name, part.surface, body=part.body)
+        for filling in self.fillings:
+            scene.add_dielectric(
+                filling.name, filling.surface, relative_permittivity=filling.permittivity
+            )
         return scene
 
 
@@ -204,6 +226,53 @@ def plates_over_a_plane() -> list[Case]:
             plate = Part("plate", moved(shapes.plate(1.0, 1.0), 0, 0, 0.5 * gap))
             cases.append(Case(f"plate {0.5 * gap:g} over a plane", (plate,), truth, grounded=True))
     return cases
+
+
+def _dielectric_case(record: DielectricReference) -> Case:
+    n = len(record.conductors)
+    slack = np.full((n, n + 1), record.uncertainty)
+    slack[:, -1] *= n
+    truth = Truth(columns(record.matrix), slack, True)
+    parts = tuple(_part(k + 1, described) for k, described in enumerate(record.conductors))
+    fillings = tuple(
+        Filling(f"material {k}", _part(k, m.body).surface, m.permittivity)
+        for k, m in enumerate(record.materials, 1)
+    )
+    return Case(record.name, parts, truth, fillings=fillings)
+
+
+def _ball_case(name: str, other: Surface, permittivity: float, exact: float) -> Case:
+    truth = Truth(np.full((1, 2), exact), np.full((1, 2), 1e-12), True)
+    filling = Filling("material", other, permittivity)
+    return Case(name, (Part("ball", shapes.sphere(1.0)),), truth, fillings=(filling,))
+
+
+def ball_cases() -> list[Case]:
+    """Unit sphere in a coat, and beside a dielectric sphere."""
+    contrasts = (2.0, 4.0, 80.0, 1000.0, 1e5)
+    coats = [
+        _ball_case(
+            f"sphere, coat {b:g}, er {er:g}", shapes.sphere(b), er, coated_sphere(1.0, b, er)
+        )
+        for b in (1.05, 1.5, 3.0)
+        for er in contrasts
+    ]
+    beside = [
+        _ball_case(
+            f"sphere {d:g} from a dielectric one, er {er:g}",
+            moved(shapes.sphere(1.0), 0.0, 0.0, d),
+            er,
+            sphere_and_dielectric_sphere(1.0, 1.0, d, er),
+        )
+        for d in (2.1, 3.0)
+        for er in contrasts
+    ]
+    return coats + beside
+
+
+def dielectric_cases() -> list[Case]:
+    """All scenes with dielectrics whose value is known from outside."""
+    return [*ball_cases(), *(_dielectric_case(record) for record in BY_ELEMENTS)]
 
 
 def _coaxial(length: float) -> Case:
@@ -320,4 +389,5 @@ def table_cases() -> list[Case]:
 
 def all_cases() -> list[Case]:
     """All matrices, each name once."""
-    return published_cases() + plates_over_a_plane() + mirrored_cases() + table_cases()
+    plain = published_cases() + plates_over_a_plane() + mirrored_cases() + table_cases()
+    return plain + dielectric_cases()

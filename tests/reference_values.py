@@ -320,7 +320,7 @@ PER_LENGTH: tuple[PerLength, ...] = (
 LEFT_OUT: tuple[LeftOut, ...] = (
     LeftOut("stripline", "needs two planes without end"),
     LeftOut("microstrip on a substrate", "needs a dielectric"),
-    LeftOut("coats, half-spaces, cube in a coat, layered plates", "need dielectrics"),
+    LeftOut("coats, cube in a coat, layered plates", "with dielectrics: in dielectric_values"),
     LeftOut("forces on spheres and discs", "a derivative of the matrix, not an entry of it"),
     LeftOut("Kirchhoff's discs and Smythe's fit", "approximations: checked against the records"),
 )
