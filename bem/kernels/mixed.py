@@ -2,10 +2,7 @@
 
 middle  (and far) test functions of the target at its 16 samples, both layers of the source
         exact.
-near    V between conductors by ``near_pair``; all else by samples of the target clustered at
-        its rim.
-
-K between panels of one plane, or of a panel with itself, is zero.
+near    by the rules of ``mixed_near``; K between panels of one plane is zero.
 """
 
 from __future__ import annotations
@@ -15,69 +12,15 @@ import math
 import numpy as np
 
 from bem.compiled import njit
-from bem.kernels.arrays import PanelArrays
 from bem.kernels.expansion import dot
 from bem.kernels.mixed_arrays import LINEAR, QUADRATIC, TESTS, MixedMatrices, MixedPanels
+from bem.kernels.mixed_near import near_mixed
 from bem.kernels.mixed_reuse import take_over
-from bem.kernels.moments import ROWS, constant_moments, moments
-from bem.kernels.pairs import mirror, near_pair
+from bem.kernels.mixed_weigh import sampled
+from bem.kernels.moments import ROWS
+from bem.kernels.pairs import mirror
 from bem.kernels.parallel import sum_over_rows
-
-COPLANAR = 1e-9
-"""Panels whose planes differ by less than this part of the smaller radius lie in one."""
-PARALLEL = 5e-13
-"""The same for one less the cosine of their normals."""
-
-
-@njit(cache=True, error_model="numpy")
-def coplanar(i: int, j: int, panels: PanelArrays) -> bool:
-    """Whether panels i and j lie in one plane."""
-    axes, radius = panels.axes, panels.radius
-    gap = panels.center[i] - panels.center[j]
-    thin = min(radius[i], radius[j])
-    facing = abs(dot(axes[i, 2], axes[j, 2]))
-    return facing > 1.0 - PARALLEL and abs(dot(gap, axes[j, 2])) < COPLANAR * thin
-
-
-@njit(cache=True, error_model="numpy", fastmath={"contract", "reassoc", "nsz"})
-def _weigh(block, weights, work, row, out, column):
-    """out[t, column] = sum over the samples of test t times one row of ``work``."""
-    for t in range(weights.shape[1]):
-        total = 0.0
-        for q in range(work.shape[1]):
-            total += weights[block, t, q] * work[row, q]
-        out[t, column] = total
-
-
-@njit(cache=True, error_model="numpy")
-def _to_functions(basis, j, out, functions):
-    """From monomials to the functions of panel j, in place, highest first."""
-    for t in range(out.shape[0]):
-        for f in range(functions - 1, 0, -1):
-            total = 0.0
-            for m in range(f + 1):
-                total += basis[j, f, m] * out[t, m]
-            out[t, f] = total
-
-
-@njit(cache=True, error_model="numpy")
-def _sampled(source, block, points, weights, setup, work, single, double):
-    """Both layers of an interface, or only those of a constant, against all tests."""
-    conductors, interfaces = setup.counts[0], setup.counts[1]
-    j = source % (conductors + interfaces)
-    if j < conductors:
-        constant_moments(source, setup.panels, points, block, work)
-        _weigh(block, weights, work, 3, single, 0)
-        _weigh(block, weights, work, 4, double, 0)
-        return
-    moments(source, setup.panels, points, block, work)
-    for m in range(6):
-        _weigh(block, weights, work, 4 + m, double, m)
-    _weigh(block, weights, work, 3, single, 0)
-    _weigh(block, weights, work, 10, single, 1)
-    _weigh(block, weights, work, 11, single, 2)
-    _to_functions(setup.basis, j, double, 6)
-    _to_functions(setup.basis, j, single, 3)
+from bem.kernels.rim_samples import rim_samples
 
 
 @njit(inline="always")
@@ -120,30 +63,28 @@ def _put(i, j, counts, factors, first, single, double, new):
 
 @njit(cache=True, error_model="numpy")
 def _fill_row(i, setup, reach, origin, mutual, new):
-    panels, images, metal = setup.panels, setup.images, setup.counts[0]
+    panels, images, metal = setup.panels, setup.images, i < setup.counts[0]
     work = np.empty((ROWS, setup.points.shape[2]))
-    single, double = np.empty((6, 3)), np.empty((6, 6))
-    sampled = 0
+    single, double = np.zeros((6, 3)), np.zeros((6, 6))
+    rims = (rim_samples(i, setup, False), rim_samples(i, setup, True))
+    count = 0
     for image in range(images.parity.size):
         for j in range(origin.size):
-            if origin[i] >= 0 and origin[j] >= 0:
+            weight = images.weight[images.layer[i], images.layer[j], image]
+            if (origin[i] >= 0 and origin[j] >= 0) or (weight == 0.0 and image > 0):
                 continue
             source = image * origin.size + j
             gap = panels.center[i] - panels.center[source]
             distance = math.sqrt(dot(gap, gap)) / (panels.radius[i] + panels.radius[source])
-            v = images.weight[images.layer[i], images.layer[j], image]
-            _sampled(source, i, setup.points, setup.weights, setup, work, single, double)
-            sampled += 1
             if distance <= reach[0]:
-                if i < metal and j < metal:
-                    single[0, 0] = (
-                        near_pair(i, source, panels) if j >= i or not mutual else math.nan
-                    )
-                if coplanar(i, source, panels):
-                    double[:] = 0.0
-            factors = (v, v * images.parity[image])
+                near_mixed(i, source, setup, rims, mutual, work, single, double)
+            else:
+                points, weights = setup.points, setup.weights
+                sampled(source, setup, metal, i, points, weights, work, single, double)
+            count += 1
+            factors = (weight, weight * images.parity[image])
             _put(i, j, setup.counts, factors, image == 0, single, double, new)
-    return sampled
+    return count
 
 
 @njit(cache=True, nogil=True, error_model="numpy")

@@ -1,4 +1,4 @@
-"""Single and double layers of polynomials on a planar polygon, exact at any point.
+"""Single and double layers of a panel's polynomials, exact at any point.
 
     V[p](x) = integral of p(y) / |x - y| dA
     K[p](x) = integral of p(y) h / |x - y|^3 dA, the derivative of 1/|x - y| along the normal at y
@@ -21,17 +21,14 @@ from __future__ import annotations
 
 import math
 
-import numpy as np
-
 from bem.compiled import njit
-from bem.kernels.arrays import PanelArrays
 from bem.kernels.elementary import atan2
-from bem.kernels.potential import _WRAP, FAST, TINY, side_log
+from bem.kernels.potential import FAST, TINY, WRAP, side_log
 
 ROWS = 12
 """Rows of the scratch array."""
 SINGLE, DOUBLE, SLOPES = 3, 4, 10
-"""Rows of the results: V[1]; K of the six monomials; V[x] and V[y]."""
+"""Rows of the results: V[f0]; K of f0 to f5; V of f1 and f2."""
 
 
 @njit(inline="always", error_model="numpy")
@@ -107,7 +104,7 @@ def _all_sides(j, panels, points, block, work, order):
 def _solid_angle(work, k):
     """Positive in front of the panel, negative behind, zero in its plane."""
     angle = atan2(work[5, k], work[4, k])
-    angle = angle + 2.0 * math.pi if angle < _WRAP else angle
+    angle = angle + 2.0 * math.pi if angle < WRAP else angle
     angle = angle if work[2, k] > 0.0 else -angle
     return angle if work[2, k] != 0.0 else 0.0
 
@@ -129,8 +126,40 @@ def _finish(work):
         work[9, k] = h * xy + x * ky - y * gx
 
 
+@njit(inline="always", error_model="numpy")
+def _combine(basis, j, work):
+    """From K of the monomials to K of the functions of panel j."""
+    b10, b11 = basis[j, 1, 0], basis[j, 1, 1]
+    b20, b21, b22 = basis[j, 2, 0], basis[j, 2, 1], basis[j, 2, 2]
+    b30, b31, b32, b33 = basis[j, 3, 0], basis[j, 3, 1], basis[j, 3, 2], basis[j, 3, 3]
+    b40, b41, b42, b43 = basis[j, 4, 0], basis[j, 4, 1], basis[j, 4, 2], basis[j, 4, 3]
+    b50, b51, b52, b53 = basis[j, 5, 0], basis[j, 5, 1], basis[j, 5, 2], basis[j, 5, 3]
+    b44, b54, b55 = basis[j, 4, 4], basis[j, 5, 4], basis[j, 5, 5]
+    for k in range(work.shape[1]):
+        one, x, y, xx, yy = work[4, k], work[5, k], work[6, k], work[7, k], work[8, k]
+        work[5, k] = b10 * one + b11 * x
+        work[6, k] = b20 * one + b21 * x + b22 * y
+        work[7, k] = b30 * one + b31 * x + b32 * y + b33 * xx
+        work[8, k] = b40 * one + b41 * x + b42 * y + b43 * xx + b44 * yy
+        last = b50 * one + b51 * x + b52 * y + b53 * xx + b54 * yy
+        work[9, k] = last + b55 * work[9, k]
+
+
+@njit(inline="always", error_model="numpy")
+def _combine_single(basis, j, work):
+    """V of f1 and f2 from the sums for int u / r and from V[1]."""
+    b10, b11 = basis[j, 1, 0], basis[j, 1, 1]
+    b20, b21, b22 = basis[j, 2, 0], basis[j, 2, 1], basis[j, 2, 2]
+    for k in range(work.shape[1]):
+        one = work[3, k]
+        x = work[10, k] + work[0, k] * one
+        y = work[11, k] + work[1, k] * one
+        work[10, k] = b10 * one + b11 * x
+        work[11, k] = b20 * one + b21 * x + b22 * y
+
+
 @njit(cache=True, error_model="numpy", fastmath=FAST)
-def constant_moments(j: int, panels: PanelArrays, points: np.ndarray, block: int, work: np.ndarray):
+def constant_moments(j, panels, points, block, work):
     """V[1] in row 3 and K[1] in row 4 of ``work``, arguments as of ``moments``."""
     _all_sides(j, panels, points, block, work, 0)
     for k in range(work.shape[1]):
@@ -140,36 +169,27 @@ def constant_moments(j: int, panels: PanelArrays, points: np.ndarray, block: int
 
 
 @njit(cache=True, error_model="numpy", fastmath=FAST)
-def double_moments(j: int, panels: PanelArrays, points: np.ndarray, block: int, work: np.ndarray):
-    """V[1] in row 3, K of the monomials in rows 4 to 9, arguments as of ``moments``."""
+def double_moments(j, basis, panels, points, block, work):
+    """V[1] in row 3, K of the six functions in rows 4 to 9, arguments as of ``moments``."""
     _all_sides(j, panels, points, block, work, 1)
     _finish(work)
+    _combine(basis, j % basis.shape[0], work)
 
 
 @njit(cache=True, error_model="numpy", fastmath=FAST)
-def moments(j: int, panels: PanelArrays, points: np.ndarray, block: int, work: np.ndarray):
-    """Layers of the monomials on panel j at one block of points.
+def moments(j, basis, panels, points, block, work):
+    """Layers of the functions of panel j at one block of points.
 
     Args:
-        j: index of the panel.
-        panels: all panels.
+        j: index of the panel, or of an image of it.
+        basis: (n, 6, 6) functions of the n panels, alike on their images.
+        panels: n panels and their images.
         points: (b, 3, k).
         block: which of the b blocks.
-        work: (12, k) scratch; row 3 gets V[1], rows 4 to 9 K of 1, x, y, xx, yy, xy,
-            rows 10 and 11 V of x and y.
+        work: (12, k) scratch; row 3 gets V[1], rows 4 to 9 K of f0 to f5, rows 10 and 11
+            V of f1 and f2.
     """
     _all_sides(j, panels, points, block, work, 2)
     _finish(work)
-    for k in range(work.shape[1]):
-        work[10, k] += work[0, k] * work[3, k]
-        work[11, k] += work[1, k] * work[3, k]
-
-
-@njit(cache=True, error_model="numpy")
-def moments_of_panel(j: int, panels: PanelArrays, points: np.ndarray) -> np.ndarray:
-    """V of 1, x, y, then K of 1, x, y, xx, yy, xy of panel j, (9, m) at points (3, m)."""
-    count = points.shape[1]
-    work, out = np.empty((ROWS, count)), np.empty((9, count))
-    moments(j, panels, points.reshape((1, 3, count)), 0, work)
-    out[0], out[1:3], out[3:] = work[3], work[10:12], work[4:10]
-    return out
+    _combine(basis, j % basis.shape[0], work)
+    _combine_single(basis, j % basis.shape[0], work)

@@ -43,7 +43,8 @@ KINKS = 1.0
 """Parallel panels nearer than this times the smaller radius shadow each other's samples."""
 
 
-def _clustered(n: int, wide: bool) -> tuple[np.ndarray, np.ndarray]:
+def clustered_rule(n: int, wide: bool) -> tuple[np.ndarray, np.ndarray]:
+    """Gauss's rule on (-1, 1) moved toward both ends: nodes and weights (n,) each."""
     x, w = np.polynomial.legendre.leggauss(n)
     x, w = 0.5 * (x + 1.0), 0.5 * w
     if wide:
@@ -51,8 +52,8 @@ def _clustered(n: int, wide: bool) -> tuple[np.ndarray, np.ndarray]:
     return 2.0 * x**2 * (3.0 - 2.0 * x) - 1.0, 12.0 * w * x * (1.0 - x)
 
 
-_SHORT, _SHORT_W = _clustered(6, False)
-_LONG, _LONG_W = _clustered(10, True)
+_SHORT, _SHORT_W = clustered_rule(6, False)
+_LONG, _LONG_W = clustered_rule(10, True)
 
 
 @njit(cache=True, error_model="numpy", fastmath={"contract", "reassoc", "nsz"})

@@ -20,7 +20,7 @@ from bem.kernels.arrays import PanelArrays
 from bem.kernels.elementary import atan2, log
 
 TINY = 1e-290
-_WRAP = -1e-9
+WRAP = -1e-9
 """An angle below this has passed pi and is wrapped; one above it is rounding about zero."""
 
 FAST = {"contract", "nsz", "arcp"}
@@ -109,7 +109,7 @@ def potential(j: int, panels: PanelArrays, points: np.ndarray, block: int, work:
             _add_side(corner, side, work)
     for k in range(work.shape[1]):
         angle = atan2(work[5, k], work[4, k])
-        angle = angle + 2.0 * math.pi if angle < _WRAP else angle
+        angle = angle + 2.0 * math.pi if angle < WRAP else angle
         work[3, k] -= work[2, k] * angle
 
 

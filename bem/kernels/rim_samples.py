@@ -1,0 +1,93 @@
+"""Samples of a panel clustered at its rim, with its test functions, for near pairs.
+
+Nodes t of Gauss's rule are moved to 3 t^2 - 2 t^3, or, along a panel more than six times as
+long as wide and where a parallel panel is close, to 10 t^3 - 15 t^4 + 6 t^5.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from bem.compiled import njit
+from bem.kernels.pairs import clustered_rule
+
+SLENDER = 6.0
+"""Ratio of sides beyond which the longer direction has more samples."""
+_FEW, _FEW_WEIGHT = clustered_rule(6, False)
+_MANY, _MANY_WEIGHT = clustered_rule(10, True)
+
+
+@njit(cache=True, error_model="numpy")
+def _nodes(i, panels, many):
+    """Nodes and weights in both directions."""
+    side = panels.sides[i, :, 2]
+    wide, tall = max(side[0], side[2]), max(side[1], side[3])
+    few, more = (_FEW, _FEW_WEIGHT), (_MANY, _MANY_WEIGHT)
+    u = more if many or wide > SLENDER * tall else few
+    v = more if many or tall > SLENDER * wide else few
+    return u, v
+
+
+@njit(cache=True, error_model="numpy")
+def _legendre(mean, i, s, t, weight, k, weights):
+    """The constant and four Legendre polynomials less their means, times the weight."""
+    weights[0, 0, k] = weight
+    weights[0, 1, k] = weight * (s - mean[i, 0])
+    weights[0, 2, k] = weight * (t - mean[i, 1])
+    weights[0, 3, k] = weight * (1.5 * s * s - 0.5 - mean[i, 2])
+    weights[0, 4, k] = weight * (1.5 * t * t - 0.5 - mean[i, 3])
+    weights[0, 5, k] = 0.0
+
+
+@njit(cache=True, error_model="numpy")
+def _polynomials(basis, i, x, y, weight, k, weights):
+    """The six functions of an interface panel, times the weight."""
+    powers = (1.0, x, y, x * x, y * y, x * y)
+    for f in range(6):
+        total = 0.0
+        for m in range(6):
+            total += basis[i, f, m] * powers[m]
+        weights[0, f, k] = weight * total
+
+
+@njit(cache=True, error_model="numpy")
+def _place(corners, s, t):
+    """In-plane position of (s, t), and the Jacobian there."""
+    f0, f1 = 0.25 * (1 - s) * (1 - t), 0.25 * (1 + s) * (1 - t)
+    f2, f3 = 0.25 * (1 + s) * (1 + t), 0.25 * (1 - s) * (1 + t)
+    at = f0 * corners[0] + f1 * corners[1] + f2 * corners[2] + f3 * corners[3]
+    du = (1 - t) * (corners[1] - corners[0]) + (1 + t) * (corners[2] - corners[3])
+    dv = (1 - s) * (corners[3] - corners[0]) + (1 + s) * (corners[2] - corners[1])
+    return at[0], at[1], (du[0] * dv[1] - du[1] * dv[0]) / 16.0
+
+
+@njit(cache=True, error_model="numpy")
+def rim_samples(p, setup, many):
+    """Samples of panel or image p.
+
+    Args:
+        p: index among panels and images.
+        setup: the ``MixedPanels``.
+        many: ten samples in both directions, else six, or ten along a slender panel.
+
+    Returns:
+        points (1, 3, m), and test functions times integration weights (1, 6, m).
+    """
+    panels, count = setup.panels, setup.basis.shape[0]
+    i = p % count
+    u, v = _nodes(p, panels, many)
+    m = u[0].size * v[0].size
+    points, weights = np.empty((1, 3, m)), np.empty((1, 6, m))
+    corners, axes, center = panels.corners[p], panels.axes[p], panels.center[p]
+    for k in range(m):
+        a, b = k // v[0].size, k % v[0].size
+        s, t = u[0][a], v[0][b]
+        x, y, jacobian = _place(corners, s, t)
+        for c in range(3):
+            points[0, c, k] = center[c] + x * axes[0, c] + y * axes[1, c]
+        weight = u[1][a] * v[1][b] * jacobian
+        if i < setup.counts[0]:
+            _legendre(setup.mean, i, s, t, weight, k, weights)
+        else:
+            _polynomials(setup.basis, i, x, y, weight, k, weights)
+    return points, weights
