@@ -16,15 +16,10 @@ def _potential(panels, basis, points, density):
     block, work = points.reshape((1, 3, count)), np.empty((ROWS, count))
     total = np.zeros(count)
     for source in range(density.shape[0]):
-        j = source % basis.shape[0]
-        moments(source, panels, block, 0, work)
-        one = density[source, 0]
-        for a in range(1, 3):
-            one += density[source, a] * basis[j, a, 0]
-        by_x = density[source, 1] * basis[j, 1, 1] + density[source, 2] * basis[j, 2, 1]
-        by_y = density[source, 2] * basis[j, 2, 2]
+        moments(source, basis, panels, block, 0, work)
+        one, first, second = density[source, 0], density[source, 1], density[source, 2]
         for k in range(count):
-            total[k] += one * work[3, k] + by_x * work[10, k] + by_y * work[11, k]
+            total[k] += one * work[3, k] + first * work[10, k] + second * work[11, k]
     return total
 
 
