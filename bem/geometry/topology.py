@@ -68,7 +68,7 @@ def open_edges(vertices: np.ndarray, edges: Edges, tolerance: float) -> np.ndarr
         return odd
     ends = edges.ends[odd]
     cut, corner = corners_on(vertices, ends, tolerance)
-    segments, source = _cut(vertices, ends, cut, corner)
+    segments, source = cut_edges(vertices, ends, cut, corner)
     span = len(vertices)
     key = segments.min(axis=1) * span + segments.max(axis=1)
     _, group, count = np.unique(key, return_inverse=True, return_counts=True)
@@ -114,7 +114,7 @@ def _lies_on(
     return (off <= tolerance) & (far > tolerance) & (far < length - tolerance)
 
 
-def _cut(
+def cut_edges(
     vertices: np.ndarray, ends: np.ndarray, cut: np.ndarray, corner: np.ndarray
 ) -> tuple[np.ndarray, np.ndarray]:
     """Segments (s, 2) that edges fall into at corners on them, and the edge (s,) of each."""
