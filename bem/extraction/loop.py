@@ -12,7 +12,7 @@ import numpy as np
 from bem.errors import InputError, SolutionError
 from bem.extraction.estimate import ROUNDS, Estimate, estimate
 from bem.extraction.marking import Goal, indicator, mark
-from bem.extraction.memory import MemoryPlan, readable
+from bem.extraction.memory import MemoryPlan, count_of, readable
 from bem.extraction.progress import Progress
 from bem.extraction.solution import Sums, solve_round
 from bem.extraction.solved import Solved
@@ -50,6 +50,10 @@ class Limits:
                 f"{self.max_panels:,}: raise max-panels (memory for these: "
                 f"{readable(self.memory.need(panels))}), or use coarser facets on curved faces"
             )
+
+    def fits(self, mesh: Mesh, kept: Mesh) -> bool:
+        """Whether there is memory for a mesh, while what the one before left is held."""
+        return self.memory.fits(count_of(mesh.conductor), count_of(kept.conductor))
 
 
 @dataclass(frozen=True)
@@ -190,7 +194,7 @@ class Run:
         bulk = BULK_FAR if worst > FAR_FROM_GOAL else BULK_NEAR
         room = self.limits.max_panels - panels
         finer, origin = mesh.refine(*mark(self._promise(solution), bulk, room))
-        if not self.limits.memory.fits(len(finer.conductor), panels):
+        if not self.limits.fits(finer, mesh):
             self.stopped_by = "memory"
         elif len(finer.conductor) > self.limits.max_panels:
             self.stopped_by = "max-panels"

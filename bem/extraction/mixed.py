@@ -75,7 +75,11 @@ class MixedSolution:
         setup, layout = self.operator.setup, self.operator.layout
         charge = self.charge[layout.order, :, column]
         weight = np.repeat(setup.images.weight[0, 0][:, None], len(charge), axis=1)
-        return mixed_potential(setup, points, charge, weight)
+        found = mixed_potential(setup, points, np.ascontiguousarray(charge.real), weight)
+        if np.iscomplexobj(charge):
+            lossy = np.ascontiguousarray(charge.imag)
+            return found + 1j * mixed_potential(setup, points, lossy, weight)
+        return found
 
     @cached_property
     def slope(self) -> np.ndarray:
@@ -100,7 +104,7 @@ class MixedSolution:
         metal, rim = self.conductor >= 0, faceting.rim_offset * faceting.rim_width
         push = (area * faceting.offset)[:, None]
         back, front = self.sides
-        left = np.zeros((5, *self.density.shape))
+        left = np.zeros((5, *self.density.shape), dtype=self.density.dtype)
         right = np.zeros_like(left)
         left[0] = np.where(metal[:, None], FOUR_PI * push * self.charge[:, 0], 0.0)
         right[0] = self._outer_less_inner(faceting)
@@ -153,7 +157,7 @@ class MixedSolution:
 
 def _across(back: np.ndarray, front: np.ndarray) -> np.ndarray:
     """1/(1/front - 1/back), zero where both are alike or one is metal."""
-    apart = np.abs(back - front) > SAME * np.maximum(back, front)
+    apart = np.abs(back - front) > SAME * np.maximum(np.abs(back), np.abs(front))
     return np.where(apart, back * front / np.where(apart, back - front, 1.0), 0.0)
 
 
@@ -184,7 +188,7 @@ def solve_dielectric(
     root = 1.0 / np.sqrt(_energies(setup, layout, own))
     residual = operator.test(x[: layout.metal], full)
     dual = operator.test_adjoint(z)
-    density = np.zeros((len(area), count))
+    density = np.zeros((len(area), count), dtype=x.dtype)
     density[: layout.metal] = x[: layout.metal]
     by_function = _by_function(layout, layout.turn[layout.unknown][:, None] * z)
     free = np.concatenate([np.zeros_like(owner), x[layout.metal :]])
@@ -234,7 +238,7 @@ def _energies(setup: MixedPanels, layout: Layout, own: np.ndarray) -> np.ndarray
     """(4, n) energy of each test."""
     metal, count = layout.metal, len(layout.order)
     panels = PanelArrays(*(part[:metal] for part in setup.panels))
-    out = np.empty((4, count))
+    out = np.empty((4, count), dtype=layout.mean.dtype)
     out[:, :metal] = indicator_energies(panels, make_targets(panels)).T * own[:metal]
     out[:, metal:] = (layout.mean * setup.panels.area[:count])[metal:]
     return out
@@ -242,7 +246,7 @@ def _energies(setup: MixedPanels, layout: Layout, own: np.ndarray) -> np.ndarray
 
 def _by_function(layout: Layout, values: np.ndarray) -> np.ndarray:
     """(n, 3, k) coefficients of panels from those of unknowns (N, k)."""
-    out = np.zeros((len(layout.order), LINEAR, values.shape[1]))
+    out = np.zeros((len(layout.order), LINEAR, values.shape[1]), dtype=values.dtype)
     out[: layout.metal, 0] = values[: layout.metal]
     out[layout.metal :] = values[layout.metal :].reshape(-1, LINEAR, values.shape[1])
     return out
@@ -251,7 +255,7 @@ def _by_function(layout: Layout, values: np.ndarray) -> np.ndarray:
 def _by_test(layout: Layout, values: np.ndarray) -> np.ndarray:
     """(4, n, k) residuals by direction: P1 and P2, or xy in halves and xx, yy on interfaces."""
     metal, k = layout.metal, values.shape[1]
-    out = np.empty((4, len(layout.order), k))
+    out = np.empty((4, len(layout.order), k), dtype=values.dtype)
     out[:, :metal] = values[: 4 * metal].reshape(metal, 4, k).swapaxes(0, 1)
     xx, yy, xy = values[4 * metal :].reshape(-1, 3, k).swapaxes(0, 1)
     out[:, metal:] = xy / np.sqrt(2.0), xy / np.sqrt(2.0), xx, yy
@@ -298,7 +302,7 @@ def cancellation(solution: MixedSolution, value: np.ndarray) -> float:
     density, charge = solution.density[order], solution.charge[order, 0]
     single = solution.operator.matrices.single[:metal]
     plain = np.einsum("nk,nk->k", np.abs(charge), np.abs(single) @ np.abs(density))
-    return float((plain / np.diagonal(value)).max())
+    return float((plain / np.abs(np.diagonal(value))).max())
 
 
 def quadrature_effect(solution: MixedSolution) -> np.ndarray:
@@ -314,7 +318,7 @@ def quadrature_effect(solution: MixedSolution) -> np.ndarray:
     rows = np.abs(operator.asymmetry(charge, density))
     single = np.abs(operator.matrices.single[:metal])
     far = 2.0 * operator.far_error * (np.abs(charge).T @ (single @ np.abs(density)))
-    missed = np.abs(operator.missed[layout.constant]) @ operator.boundaries.weight
+    missed = np.abs(operator.missed[layout.constant]) @ np.abs(operator.boundaries.weight)
     variation = np.abs(solution.field[layout.order, 1:]).sum(axis=1)
     near = operator.boundaries.nearest.max(axis=1)
     variation[:metal] = variation[near[:metal]]

@@ -52,7 +52,7 @@ class Layout:
         order: (n,) index of each in the mesh.
         owner: (c,) conductor of each of the first c panels.
         regions: (n, 2) region behind and in front of each, METAL where negative.
-        permittivity: (r,) of each region over that of the surroundings.
+        permittivity: (r,) of each region over that of the surroundings; complex with loss.
     """
 
     order: np.ndarray
@@ -65,7 +65,7 @@ class Layout:
         """Sort the panels of a mesh, by their conductors (n,), negative on interfaces."""
         order = np.argsort(conductor < 0, kind="stable")
         owner = conductor[order][: int((conductor >= 0).sum())]
-        return cls(order, owner, regions[order], np.asarray(permittivity, dtype=float))
+        return cls(order, owner, regions[order], np.asarray(permittivity))
 
     @property
     def metal(self) -> int:
@@ -180,6 +180,11 @@ def _nearest(on: np.ndarray, center: np.ndarray) -> np.ndarray:
     return nearest
 
 
+def _narrow(values: np.ndarray) -> np.ndarray:
+    """Values in single precision, real or complex."""
+    return values.astype(np.complex64 if np.iscomplexobj(values) else np.float32)
+
+
 @dataclass(frozen=True)
 class MixedReuse:
     """What an earlier operator can give to this one.
@@ -253,7 +258,7 @@ class MixedOperator:
         """Matrix (N, N) of the unknowns: densities, then potentials."""
         layout, metal = self.layout, self.layout.metal
         unknown = layout.unknown
-        out = np.empty_like(self.matrices.double)
+        out = np.empty(self.matrices.double.shape, dtype=self.boundaries.weight.dtype)
         out[:, :metal] = self.matrices.single
         out[:metal, :metal] = self._single()
         out[:, metal:] = -self._layer_columns(slice(metal, None))
@@ -296,20 +301,20 @@ class MixedOperator:
         """Residuals (4 c + 3 i, k) against the tests, from densities (c, k), potentials (N, k)."""
         layout, kept = self.layout, self.matrices
         panel = layout.spread(TESTS, QUADRATIC)
-        single = kept.single_tests @ density.astype(np.float32)
-        double = kept.double_tests @ self._stepped(full).astype(np.float32)
+        single = kept.single_tests @ _narrow(density)
+        double = kept.double_tests @ _narrow(self._stepped(full))
         correction = self._corrected(self._missed(kept.double_tests, panel), panel, full)
         return -layout.turn[panel][:, None] * (single - double - correction)
 
     def test_adjoint(self, charge: np.ndarray) -> np.ndarray:
         """Residuals (4 c + 3 i, k) of the transposed system for its solution (N, k)."""
         layout, kept, metal = self.layout, self.matrices, self.layout.metal
-        turned = (layout.turn[layout.unknown][:, None] * charge).astype(np.float32)
+        turned = _narrow(layout.turn[layout.unknown][:, None] * charge)
         rows = TESTS * metal
         on_metal = kept.single_tests[:rows] @ turned[:metal] + kept.linear @ turned[metal:]
         step = layout.step[metal:] / FOUR_PI
         on_interfaces = np.repeat(step, QUADRATIC)[:, None] * (kept.quadratic.T @ turned)
-        return np.concatenate([-on_metal, on_interfaces]).astype(float)
+        return np.concatenate([-on_metal, on_interfaces])
 
     def near_rows(self, rows: np.ndarray) -> np.ndarray:
         """Rows (r, c) of the single layer between conductors, before they are made symmetric."""
