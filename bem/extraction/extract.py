@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import math
 import time
-from collections.abc import Callable
-from dataclasses import asdict
+from collections.abc import Callable, Sequence
+from dataclasses import asdict, replace
 from numbers import Integral, Real
 from typing import Any
 
@@ -16,9 +16,11 @@ from bem.errors import SolutionError, UsageError
 from bem.extraction.audit import Audit, audit
 from bem.extraction.facets import facet_lines, facet_record
 from bem.extraction.loop import Limits, RoundState, Run
+from bem.extraction.lossy import with_losses
 from bem.extraction.marking import Goal
-from bem.extraction.memory import MemoryPlan
+from bem.extraction.memory import MemoryPlan, count_of
 from bem.extraction.progress import Progress
+from bem.extraction.rounds import solver_of
 from bem.extraction.scaled import ScaledScene
 from bem.extraction.threads import use_threads
 from bem.panels.mesh import Mesh
@@ -41,6 +43,7 @@ def extract(
     memory: int | None = None,
     threads: int | None = None,
     progress: Callable[[Progress], None] | None = None,
+    frequencies: Sequence[float] = (),
 ) -> CapacitanceResult:
     """Maxwell capacitance matrix of a scene, with an error bar on every entry.
 
@@ -52,6 +55,8 @@ def extract(
         memory: limit in bytes for its matrices; by default 80 % of what is free.
         threads: of the compiled integrals; by default all cores.
         progress: called with a Progress at every step.
+        frequencies: Hz; at each of them ``lossy`` of the result has C and G with the losses of
+            all media. The main matrix is that without losses.
 
     Returns:
         The result; ``converged`` says whether all bars came below what was asked.
@@ -66,6 +71,7 @@ def extract(
     started = time.perf_counter()
     goal = goal_of(scene, tolerance, pairs or {})
     check_counts(max_panels, memory)
+    wanted = frequencies_of(frequencies)
     report = progress or (lambda _: None)
     report(Progress("checking the geometry", 0, 0, float("nan"), 0.0))
     if must_compile():
@@ -73,14 +79,15 @@ def extract(
     inspection = check_scene(scene)
     checked = time.perf_counter()
     scaled = ScaledScene.of(scene)
-    hollow = [k for k, c in enumerate(scene.conductors) if c.body == "shell"]
     limits = Limits(max_panels, MemoryPlan.of(memory))
-    mesh = Mesh.start(scaled.surfaces, hollow, limits.check_start, scaled.planes)
-    run = Run(len(scene.conductors), goal, limits, report, started=started)
+    mesh = starting_mesh(scene, scaled, limits)
+    solve = solver_of(mesh, scaled.permittivity)
+    run = Run(len(scene.conductors), goal, limits, report, started=started, solve=solve)
     with use_threads(threads) as used:
         run.go(mesh)
         solved = time.perf_counter()
         findings = audited(run)
+        lossy = with_losses(run, scene, wanted, scaled.farad)
     facets = facet_record(scene, scaled, run.rounds[-1].solution)
     ended = time.perf_counter()
     seconds = {
@@ -99,7 +106,35 @@ def extract(
         "facets": facets,
     }
     notes = warnings_of(scene, inspection) + tuple(facet_lines(scene, facets))
-    return result_of(scene, scaled, run, findings, (seconds, settings, notes))
+    result = result_of(scene, scaled, run, findings, (seconds, settings, notes))
+    return replace(result, lossy=lossy)
+
+
+def starting_mesh(scene: Scene, scaled: ScaledScene, limits: Limits) -> Mesh:
+    """First mesh of a scene, of parts if there are dielectrics.
+
+    Raises:
+        MemoryRefused: it alone exceeds the limit.
+        InputError: it alone exceeds ``max_panels``.
+    """
+    if not scene.dielectrics:
+        hollow = [k for k, c in enumerate(scene.conductors) if c.body == "shell"]
+        return Mesh.start(scaled.surfaces, hollow, limits.check_start, scaled.planes)
+    mesh = Mesh.start(scaled.parts, (), limits.check_start, scaled.planes, scaled.coincidence)
+    limits.memory.check_start(count_of(mesh.conductor))
+    return mesh
+
+
+def frequencies_of(frequencies: Sequence[float]) -> tuple[float, ...]:
+    """Check frequencies, in Hz.
+
+    Raises:
+        UsageError: one is not a positive number.
+    """
+    for frequency in frequencies:
+        if not (isinstance(frequency, Real) and 0.0 < frequency < math.inf):
+            raise UsageError(f"frequencies: found {frequency!r}, needs positive numbers, in Hz")
+    return tuple(float(frequency) for frequency in frequencies)
 
 
 def audited(run: Run) -> Audit:

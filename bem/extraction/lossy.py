@@ -7,10 +7,12 @@ where that frequency needs it (at low ones conduction moves the field elsewhere)
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
+from typing import NamedTuple
 
 import numpy as np
 
+from bem.errors import UsageError
 from bem.extraction.estimate import (
     DOUBT,
     FILES,
@@ -26,14 +28,21 @@ from bem.extraction.loop import BULK_NEAR, Run
 from bem.extraction.marking import indicator, mark
 from bem.extraction.mixed import MixedSolution, solve_dielectric
 from bem.extraction.solution import Sums
-from bem.operators.mixed import MixedOperator, MixedReuse
 from bem.panels.mesh import Mesh
 from bem.results.lossy import Lossy
+from bem.scene.scene import Scene
 
 MOST_ROUNDS = 8
 """Rounds of one frequency beyond the mesh of the real extraction."""
 SLOPE_DOUBT = 0.5
 """How far the slope of L against the indicator may be from its usual value."""
+
+
+class Reached(NamedTuple):
+    """Whether the bars are small enough, and the number of panels that it took."""
+
+    converged: bool
+    panels: int
 
 
 @dataclass
@@ -43,45 +52,37 @@ class LossyRun:
     Args:
         run: the real extraction, done.
         permittivity: (r,) complex, of each region over the real one of the surroundings.
-        mesh: to start from.
+        solution: the last one; its mesh is where to start from.
         rounds: what each said.
-        solution: the last one.
     """
 
     run: Run
     permittivity: np.ndarray
-    mesh: Mesh
+    solution: MixedSolution
     rounds: list[Sums] = field(default_factory=list)
-    solution: MixedSolution | None = None
 
-    def go(self, operator: MixedOperator | None) -> tuple[Estimate, bool]:
-        """Value and bars, and whether they are small enough.
-
-        Args:
-            operator: of the mesh to start from, if there is one.
-        """
-        origin = np.arange(len(self.mesh.conductor))
+    def go(self) -> tuple[Estimate, Reached]:
+        """Value and bars, refined until they are small enough or a limit is met."""
+        mesh, limits = self.solution.mesh, self.run.limits
+        origin = np.arange(len(mesh.conductor))
         while True:
-            found = self._round(None if operator is None else operator.given(origin))
+            found = self._round(mesh, origin)
             done = float(self.run.goal.worst(_moduli(found)).max()) <= 1.0
-            room = self.run.limits.max_panels - len(self.mesh.conductor)
+            reached = Reached(done, len(mesh.conductor))
+            room = limits.max_panels - reached.panels
             if done or room <= 0 or len(self.rounds) >= MOST_ROUNDS:
-                return found, done
-            promise = indicator(self._solved(), self.run.goal, _moduli(found))
-            finer, origin = self.mesh.refine(*mark(promise, BULK_NEAR, room))
-            if not self.run.limits.fits(finer, self.mesh):
-                return found, done
-            operator, self.mesh = self._solved().operator, finer
+                return found, reached
+            promise = indicator(self.solution, self.run.goal, _moduli(found))
+            finer, origin = mesh.refine(*mark(promise, BULK_NEAR, room))
+            if len(finer.conductor) > limits.max_panels or not limits.fits(finer, mesh):
+                return found, reached
+            mesh = finer
 
-    def _solved(self) -> MixedSolution:
-        if self.solution is None:
-            raise TypeError("nothing has been solved yet")
-        return self.solution
-
-    def _round(self, reuse: MixedReuse | None) -> Estimate:
-        self.run.tell("solving with losses", len(self.mesh.conductor))
-        far = self.run.rounds[-1].solution.operator.far
-        self.solution = solve_dielectric(self.mesh, self.run.count, far, reuse, self.permittivity)
+    def _round(self, mesh: Mesh, origin: np.ndarray) -> Estimate:
+        self.run.tell("solving with losses", len(mesh.conductor))
+        operator = self.solution.operator
+        reuse, rho = operator.given(origin), self.permittivity
+        self.solution = solve_dielectric(mesh, self.run.count, operator.far, reuse, rho)
         self.rounds.append(self.solution.sums())
         return complex_estimate(self.rounds)
 
@@ -116,28 +117,46 @@ def complex_estimate(rounds: Sequence[Sums]) -> Estimate:
 
 
 def with_losses(
-    run: Run, permittivity: Sequence[np.ndarray], frequencies: Sequence[float], farad: float
+    run: Run, scene: Scene, frequencies: Sequence[float], farad: float
 ) -> tuple[Lossy, ...]:
-    """Matrices at each frequency.
+    """Matrices of a scene at each frequency.
 
     Args:
         run: the real extraction, done.
-        permittivity: (r,) complex at each frequency, over the real one of the surroundings.
+        scene: with the losses of its media.
         frequencies: Hz.
         farad: capacitance of one unit of L.
+
+    Raises:
+        UsageError: there is no medium with losses.
     """
-    last = run.rounds[-1].solution
-    mesh, operator = last.mesh, last.operator
+    media = [scene.surroundings, *(d.material for d in scene.dielectrics)]
+    if frequencies and not any(medium.lossy for medium in media):
+        raise UsageError(
+            "frequencies: found some, but no medium has losses; give a loss_tangent or a "
+            "conductivity, or leave the frequencies out"
+        )
+    solution = run.rounds[-1].solution
     out = []
-    for frequency, rho in zip(frequencies, permittivity, strict=True):
-        lossy = LossyRun(run, rho, mesh)
-        found, done = lossy.go(operator if isinstance(operator, MixedOperator) else None)
-        mesh, operator = lossy.mesh, lossy._solved().operator
-        out.append(_result(frequency, found, farad, (done, len(mesh.conductor))))
+    for frequency in frequencies:
+        rho = np.array([medium.at(frequency) for medium in media]) / scene.relative_permittivity
+        if not isinstance(solution, MixedSolution):
+            out.append(_result(frequency, *_uniform(run, rho[0]), farad))
+            continue
+        lossy = LossyRun(run, rho, solution)
+        out.append(_result(frequency, *lossy.go(), farad))
+        solution = lossy.solution
     return tuple(out)
 
 
-def _result(frequency: float, found: Estimate, farad: float, state: tuple[bool, int]) -> Lossy:
+def _uniform(run: Run, rho: complex) -> tuple[Estimate, Reached]:
+    """The real matrix times the complex permittivity of a single medium."""
+    last = run.rounds[-1]
+    found = replace(last.found, value=rho * last.found.value, bar=abs(rho) * last.found.bar)
+    return found, Reached(run.stopped_by == "tolerance", last.sums.panels)
+
+
+def _result(frequency: float, found: Estimate, reached: Reached, farad: float) -> Lossy:
     count = len(found.value)
     omega = 2.0 * np.pi * frequency
     value, bar = farad * found.value, farad * found.bar
@@ -153,5 +172,5 @@ def _result(frequency: float, found: Estimate, farad: float, state: tuple[bool, 
         bar[:, -1],
         loss[:, -1],
         omega * bar[:, -1],
-        *state,
+        *reached,
     )

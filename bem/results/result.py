@@ -17,6 +17,8 @@ from typing import Any
 
 import numpy as np
 
+from bem.results.lossy import Lossy
+
 
 @dataclass(frozen=True, eq=False)
 class Round:
@@ -82,6 +84,7 @@ class CapacitanceResult:
         panel_conductor: (p,) index of the conductor that owns each panel; after a reduction
             -1 for grounded and floating ones.
         density: (p, n) C/m^2 per volt: column j for 1 V on conductor j, 0 V on the others.
+        lossy: C and G at each frequency that was asked for.
     """
 
     conductors: tuple[str, ...]
@@ -107,6 +110,7 @@ class CapacitanceResult:
     panel_corners: np.ndarray | None = None
     panel_conductor: np.ndarray | None = None
     density: np.ndarray | None = None
+    lossy: tuple[Lossy, ...] = ()
 
     @property
     def panels(self) -> int:
