@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from bem.geometry.folding import folded
+from bem.geometry.parts import INTERFACE, Part
 from bem.geometry.planes import Planes
 from bem.geometry.surface import Surface
 from bem.scene.scene import Scene
@@ -23,6 +24,10 @@ class ScaledScene:
         center: (3,) m, what was subtracted first.
         farad: capacitance in farad of one unit of L = C / (4 pi eps), mirror images included.
         planes: grounded and mirror planes.
+        parts: of all surfaces, by what lies on both sides; empty without dielectrics.
+        permittivity: (r,) of each region over that of the surroundings, which come first.
+        coincidence: faces closer than this coincide.
+        notes: contacts and overlaps of bodies, one line each.
     """
 
     surfaces: list[Surface]
@@ -30,6 +35,10 @@ class ScaledScene:
     center: np.ndarray
     farad: float
     planes: Planes
+    parts: tuple[Part, ...]
+    permittivity: np.ndarray
+    coincidence: float
+    notes: tuple[str, ...]
 
     @classmethod
     def of(cls, scene: Scene, like: ScaledScene | None = None) -> ScaledScene:
@@ -42,11 +51,46 @@ class ScaledScene:
             for c in scene.conductors
         ]
         farad = 4.0 * np.pi * EPS0 * scene.relative_permittivity * length
-        return cls(surfaces, length, center, farad * planes.multiplicity, planes)
+        parts, notes = _partition(scene, matrix, -center / length)
+        media = [scene.relative_permittivity, *(d.relative_permittivity for d in scene.dielectrics)]
+        return cls(
+            surfaces,
+            length,
+            center,
+            farad * planes.multiplicity,
+            planes,
+            parts,
+            np.array(media) / scene.relative_permittivity,
+            scene.coincidence,
+            notes,
+        )
+
+
+def _partition(
+    scene: Scene, matrix: np.ndarray, shift: np.ndarray
+) -> tuple[tuple[Part, ...], tuple[str, ...]]:
+    """Parts of all surfaces, moved by ``matrix @ x + shift``, and notes; none without dielectrics.
+
+    Raises:
+        GeometryError: a dielectric is not closed.
+    """
+    if not scene.dielectrics:
+        return (), ()
+    from bem.geometry.regions.parted import parted
+    from bem.geometry.regions.partition import Solid
+
+    solids = [
+        Solid(c.surface.placed(matrix, shift), "metal" if c.body == "solid" else "skin", k, c.name)
+        for k, c in enumerate(scene.conductors)
+    ]
+    for d in scene.dielectrics:
+        solids.append(Solid(d.surface.placed(matrix, shift), "dielectric", INTERFACE, d.name))
+    found = parted(solids, scene.coincidence)
+    return tuple(found.parts), tuple(found.notes)
 
 
 def _frame(scene: Scene) -> tuple[float, np.ndarray]:
-    """Largest side and center (3,) of the bounding box of all conductors."""
-    bounds = np.array([c.surface.bounds for c in scene.conductors])
+    """Largest side and center (3,) of the bounding box of all bodies."""
+    bounds = np.array([body.surface.bounds for body in scene.bodies])
     low, high = bounds[:, 0].min(axis=0), bounds[:, 1].max(axis=0)
     return float((high - low).max()), 0.5 * (low + high)

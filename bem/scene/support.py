@@ -11,11 +11,11 @@ def check_support(scene: Scene) -> None:
     """Refuse what no solver knows.
 
     Raises:
-        InputError: the scene has dielectric bodies or flat layers.
+        InputError: the scene has flat layers, or dielectrics and mirror planes.
     """
-    if scene.dielectrics:
-        names = listed(d.name for d in scene.dielectrics[:4])
-        raise InputError(f"dielectric: found {names}; only scenes without dielectrics are solved")
+    kind = "half_space" if scene.half_space else "flat_layers"
     if scene.stack is not None:
-        kind = "half_space" if scene.half_space else "flat_layers"
         raise InputError(f"{kind}: only scenes without half-space and layers are solved")
+    if scene.dielectrics and scene.planes.mirrors:
+        names = listed(d.name for d in scene.dielectrics[:4])
+        raise InputError(f"mirror_plane: found with the dielectrics {names}; drop it")
