@@ -282,7 +282,7 @@ def test_inspection_stops_looking_at_very_many_facets(monkeypatch: pytest.Monkey
         scene.add_conductor(f"b{k}", icosphere(2), place=bem.Place(shift=(3.0 * k, 0.0, 0.0)))
     monkeypatch.setattr(facet_notes, "MOST_FACETS", 700)
     lines = facet_notes.facet_notes(scene.conductors)
-    assert len(lines) == 3 and lines[-1].startswith("facets of the last 1 conductor not compared")
+    assert len(lines) == 3 and lines[-1].startswith("facets of the last 1 body not compared")
 
 
 @pytest.mark.parametrize("count", [16, 32])

@@ -26,7 +26,7 @@ def check_outputs(args: argparse.Namespace, inputs: list[str]) -> None:
     from bem.exports.atomic import check_target
 
     taken = {os.path.realpath(name): f"the input {name}" for name in inputs}
-    for option in ("json", "csv"):
+    for option in ("json", "csv", "faces", "section"):
         path = getattr(args, option, None)
         if path is None:
             continue

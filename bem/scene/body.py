@@ -1,4 +1,4 @@
-"""One conductor as the checks see it: its triangles, and what hangs together in them."""
+"""One body as the checks see it: its triangles, and what hangs together in them."""
 
 from __future__ import annotations
 
@@ -13,7 +13,7 @@ from bem.geometry.surface import Surface
 from bem.geometry.topology import Edges, edges_of, open_edges, orient, pieces_of
 from bem.geometry.tree import Tree, build_tree
 from bem.geometry.weld import WELD, weld
-from bem.scene.scene import Conductor
+from bem.scene.scene import Conductor, Dielectric
 
 NUDGE = 1e-3
 """How far off its surface a body is probed for its inner side, per size of the triangle."""
@@ -21,21 +21,21 @@ NUDGE = 1e-3
 
 @dataclass(frozen=True, eq=False)
 class Body:
-    """A conductor and its triangles; quadrilaterals and curved shapes count as faceted.
+    """A conductor or dielectric and its triangles; quadrilaterals and curves count as faceted.
 
     Args:
-        conductor: in metres, placed.
+        owner: in metres, placed.
         surface: its facets, welded.
     """
 
-    conductor: Conductor
+    owner: Conductor | Dielectric
     surface: Surface
 
     @cached_property
     def finer(self) -> Body:
         """The body itself, or with fine facets if it is curved."""
         curve = self.surface.curve
-        return self if curve is None else Body(self.conductor, fine_facets(curve))
+        return self if curve is None else Body(self.owner, fine_facets(curve))
 
     @cached_property
     def triangles(self) -> np.ndarray:
@@ -155,7 +155,7 @@ def _vector_areas(corners: np.ndarray) -> np.ndarray:
     return np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
 
 
-def body_of(conductor: Conductor) -> Body:
-    """Body of a conductor; the facets of a curved shape are welded for the checks."""
-    surface = conductor.surface
-    return Body(conductor, surface if surface.curve is None else weld(surface)[0])
+def body_of(owner: Conductor | Dielectric) -> Body:
+    """Body as the checks need it; the facets of a curved shape are welded."""
+    surface = owner.surface
+    return Body(owner, surface if surface.curve is None else weld(surface)[0])

@@ -4,72 +4,18 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-import numpy as np
-
 from bem.errors import GeometryError, InputError
 from bem.geometry.planes import Planes
-from bem.geometry.repair.repair import SEAMS
 from bem.geometry.wording import counted, metre_text, point_text
 from bem.scene.body import Body, body_of
+from bem.scene.body_report import BodyReport, all_body_notes, junctions, report_of
 from bem.scene.facet_notes import facet_notes
+from bem.scene.material import below_vacuum
 from bem.scene.pairs import ALL_PAIRS, CONTACT, PairReport, all_pairs
 from bem.scene.plane_checks import ground_gap, on_kept_side, plane_findings
+from bem.scene.regions import Regions, regions_of
 from bem.scene.scene import Scene
 from bem.scene.support import check_support
-
-ALMOST_CLOSED = 0.02
-"""A surface with less than this part of its edges open is probably meant to be closed."""
-
-ONE_FACET = 3
-"""So many open edges are a missing facet, however coarse the mesh."""
-
-SOUP = 20
-"""So many triangles or more without a shared corner are told as such."""
-
-SLIVER = 1e4
-"""Triangles this many times longer than high get a note."""
-
-
-@dataclass(frozen=True)
-class BodyReport:
-    """What one conductor is like.
-
-    Args:
-        name: of the conductor.
-        body: "solid" or "shell".
-        triangles: number of triangular faces.
-        quads: number of quadrilateral faces.
-        vertices: number of vertices.
-        bounds: (2, 3) lowest and highest coordinates, metres.
-        area: of the faces, m^2.
-        volume: enclosed, m^3, or None if open.
-        closed: whether every piece is closed.
-        open_edges: number of edges that leave it open.
-        pieces: number of pieces that share no vertex.
-        worst_aspect: largest ratio of longest edge to smallest height of a triangle.
-        curved: whether the facets stand for a true surface.
-        changes: what reading changed, one line each.
-    """
-
-    name: str
-    body: str
-    triangles: int
-    quads: int
-    vertices: int
-    bounds: np.ndarray
-    area: float
-    volume: float | None
-    closed: bool
-    open_edges: int
-    pieces: int
-    worst_aspect: float
-    curved: bool
-    changes: tuple[str, ...]
-
-    @property
-    def faces(self) -> int:
-        """Number of faces."""
-        return self.triangles + self.quads
 
 
 @dataclass(frozen=True)
@@ -84,6 +30,10 @@ class Inspection:
         warnings: what may be wrong with a body, one line each.
         notes: what is worth knowing, one line each, the warnings among it.
         ground_gaps: distance of each conductor from the grounded plane, metres; none without it.
+        dielectrics: one report per dielectric.
+        coincidence: faces closer than this coincide, metres.
+        regions: what the bodies part space into; None without dielectrics, if the scene cannot be
+            solved, or if it was not asked for.
     """
 
     unit: str
@@ -93,14 +43,18 @@ class Inspection:
     warnings: list[str]
     notes: list[str]
     ground_gaps: tuple[float, ...] = ()
+    dielectrics: tuple[BodyReport, ...] = ()
+    coincidence: float = 0.0
+    regions: Regions | None = None
 
 
-def inspect(scene: Scene, facets: bool = True) -> Inspection:
-    """Look at every conductor and every pair of conductors.
+def inspect(scene: Scene, closely: bool = True) -> Inspection:
+    """Look at every body and every pair of conductors.
 
     Args:
         scene: what to look at.
-        facets: also compare facets with the smooth surfaces that they may stand for.
+        closely: also compare facets with the smooth surfaces that they may stand for, and find
+            the regions that dielectrics part space into.
 
     Raises:
         InputError: the scene has no conductors.
@@ -108,29 +62,65 @@ def inspect(scene: Scene, facets: bool = True) -> Inspection:
     if not scene.conductors:
         raise InputError("the scene has no conductors; add at least one")
     planes = scene.planes
-    bodies = [body_of(on_kept_side(conductor, planes)) for conductor in scene.conductors]
-    reports = tuple(_body_report(body) for body in bodies)
-    pairs = tuple(all_pairs(bodies))
-    solid = {c.name: c.body == "solid" for c in scene.conductors}
-    bad = [pair for pair in pairs if _is_fatal(pair, solid)]
-    warnings = _all_body_notes(reports, bodies, scene.unit)
+    bodies = [body_of(on_kept_side(body, planes)) for body in scene.bodies]
+    reports = tuple(report_of(body) for body in bodies)
+    number = len(scene.conductors)
+    pairs = tuple(all_pairs(bodies[:number]))
+    bad, reasons = _refused(scene, pairs)
+    warnings = [*all_body_notes(reports, bodies, scene.unit), *_media_notes(scene)]
+    regions, trouble = _regions(scene) if closely and not reasons else (None, [])
     return Inspection(
         unit=scene.unit,
-        bodies=reports,
+        bodies=reports[:number],
         pairs=pairs,
-        fatal=[
-            *plane_findings(scene.conductors, planes, scene.unit),
-            *(_reason(pair, scene.unit) + _image_hint(planes) for pair in bad),
-        ],
-        ground_gaps=tuple(ground_gap(b, planes.ground) for b in bodies) if planes.ground else (),
+        fatal=reasons + trouble,
+        ground_gaps=_ground_gaps(bodies[:number], planes),
         warnings=warnings,
         notes=[
             *warnings,
-            *(facet_notes(scene.conductors) if facets else ()),
-            *_junctions(bodies, scene.unit),
-            *_pair_notes([p for p in pairs if p not in bad], len(bodies)),
+            *(facet_notes(scene.bodies) if closely else ()),
+            *junctions(bodies[:number], scene.unit),
+            *_pair_notes([p for p in pairs if p not in bad], number),
+            *(regions.partition.notes if regions else ()),
         ],
+        dielectrics=reports[number:],
+        coincidence=scene.coincidence * scene.size,
+        regions=regions,
     )
+
+
+def _refused(scene: Scene, pairs: tuple[PairReport, ...]) -> tuple[list[PairReport], list[str]]:
+    """Pairs that forbid a solution, and all reasons that do, one line each."""
+    solid = {c.name: c.body == "solid" for c in scene.conductors}
+    bad = [pair for pair in pairs if _is_fatal(pair, solid)]
+    hint = _image_hint(scene.planes)
+    return bad, [*plane_findings(scene), *(_reason(pair, scene.unit) + hint for pair in bad)]
+
+
+def _regions(scene: Scene) -> tuple[Regions | None, list[str]]:
+    """Regions of a scene with dielectrics, or the reason why there are none."""
+    if not scene.dielectrics:
+        return None, []
+    try:
+        return regions_of(scene), []
+    except GeometryError as problem:
+        return None, [str(problem)]
+
+
+def _ground_gaps(bodies: list[Body], planes: Planes) -> tuple[float, ...]:
+    ground = planes.ground
+    return () if ground is None else tuple(ground_gap(body, ground) for body in bodies)
+
+
+def _media_notes(scene: Scene) -> list[str]:
+    """Permittivities that are too low to be true; the surroundings have a line of their own."""
+    media = [(f'"{body.name}"', body.material) for body in scene.dielectrics]
+    if scene.half_space is not None:
+        media.append(("half_space", scene.half_space.material))
+    if scene.flat_layers is not None:
+        layers = enumerate(scene.flat_layers.materials, 1)
+        media += [(f"flat_layers: layer {number}", layer) for number, layer in layers]
+    return [line for what, medium in media for line in below_vacuum(what, medium)]
 
 
 def check_scene(scene: Scene) -> Inspection:
@@ -141,32 +131,12 @@ def check_scene(scene: Scene) -> Inspection:
         InputError: the scene has no conductors, or something that no solver knows.
     """
     check_support(scene)
-    inspection = inspect(scene, facets=False)
+    inspection = inspect(scene, closely=False)
     if inspection.fatal:
         more = len(inspection.fatal) - 1
         rest = f" (and {counted(more, 'more finding')}: see bem inspect)" if more else ""
         raise GeometryError(inspection.fatal[0] + rest)
     return inspection
-
-
-def _body_report(body: Body) -> BodyReport:
-    surface = body.conductor.surface
-    return BodyReport(
-        name=body.conductor.name,
-        body=body.conductor.body,
-        triangles=int(surface.is_triangle.sum()),
-        quads=int((~surface.is_triangle).sum()),
-        vertices=len(body.surface.vertices),
-        bounds=body.bounds,
-        area=body.area,
-        volume=body.volume,
-        closed=body.closed,
-        open_edges=len(body.open_edges),
-        pieces=body.pieces[0],
-        worst_aspect=body.worst_aspect,
-        curved=surface.curve is not None,
-        changes=body.conductor.source.changes,
-    )
 
 
 def _outer(pair: PairReport) -> str:
@@ -218,57 +188,3 @@ def _pair_notes(pairs: list[PairReport], number: int) -> list[str]:
             "the other pairs are farther apart"
         )
     return notes
-
-
-def _all_body_notes(reports: tuple[BodyReport, ...], bodies: list[Body], unit: str) -> list[str]:
-    return [
-        line
-        for report, body in zip(reports, bodies, strict=True)
-        for line in _body_notes(report, body, unit)
-    ]
-
-
-def _body_notes(report: BodyReport, body: Body, unit: str) -> list[str]:
-    lines = []
-    if _is_soup(body):
-        lines.append(
-            f'"{report.name}" falls apart into {counted(report.pieces, "single triangle")}: they '
-            f"miss each other by more than {SEAMS[-1]:g} of its size; export it with more digits"
-        )
-    if _is_almost_closed(report, body):
-        end = body.edges.ends[body.open_edges[0], 0]
-        lines.append(
-            f'"{report.name}" is almost closed: {counted(report.open_edges, "open edge")}, '
-            f"the first at {point_text(body.surface.vertices[end], unit)}; "
-            "it counts as a sheet, not as solid metal"
-        )
-    if report.worst_aspect > SLIVER:
-        lines.append(
-            f'"{report.name}" has slivers: one triangle is {report.worst_aspect:.1e} times as '
-            "long as high"
-        )
-    return lines
-
-
-def _is_soup(body: Body) -> bool:
-    return body.pieces[0] == len(body.triangles) >= SOUP
-
-
-def _is_almost_closed(report: BodyReport, body: Body) -> bool:
-    """Whether few edges are open, or those of a single facet."""
-    most = max(ALMOST_CLOSED * len(body.edges.uses), ONE_FACET if report.triangles > 3 else 0)
-    return 0 < report.open_edges <= most
-
-
-def _junctions(bodies: list[Body], unit: str) -> list[str]:
-    """Tell of edges where more than two faces meet."""
-    lines = []
-    for body in bodies:
-        many = np.flatnonzero(body.edges.uses > 2)
-        if len(many):
-            start = body.surface.vertices[body.edges.ends[many[0], 0]]
-            lines.append(
-                f'"{body.conductor.name}" has {counted(len(many), "edge")} of three faces or more, '
-                f"the first at {point_text(start, unit)}: fins and walls are fine on a conductor"
-            )
-    return lines

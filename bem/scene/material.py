@@ -94,4 +94,4 @@ def below_vacuum(what: str, material: Material) -> list[str]:
     value = material.relative_permittivity
     if value >= 1.0:
         return []
-    return [f"{what} {value:g} is below that of vacuum, 1; check the number"]
+    return [f"{what}: relative permittivity {value:g} is below that of vacuum, 1; check the number"]

@@ -114,7 +114,7 @@ def _inner(a: Body, b: Body) -> Body | None:
 
 
 def _report(a: Body, b: Body, gap: Gap) -> PairReport:
-    names = a.conductor.name, b.conductor.name
+    names = a.owner.name, b.owner.name
     tolerance = contact_tolerance(a, b)
     if gap.distance <= tolerance and (a.finer is not a or b.finer is not b):
         a, b = a.finer, b.finer
@@ -127,4 +127,4 @@ def _report(a: Body, b: Body, gap: Gap) -> PairReport:
     inner = _inner(a, b)
     if inner is None:
         return PairReport(*names, gap.distance, "apart", gap.here)
-    return PairReport(*names, gap.distance, "inside", gap.here, inner.conductor.name)
+    return PairReport(*names, gap.distance, "inside", gap.here, inner.owner.name)

@@ -180,6 +180,22 @@ def check_planes(entry: str, planes: Planes, flat: HalfSpace | FlatLayers | None
         )
 
 
+def flat_record(flat: HalfSpace | FlatLayers | None) -> dict[str, Any]:
+    """A half-space or layers as plain values in metres, for records; empty without them."""
+    if flat is None:
+        return {}
+    axis = AXES[flat.axis]
+    if isinstance(flat, HalfSpace):
+        side = "above" if flat.above else "below"
+        return {"half_space": {f"{side}_{axis}_m": flat.at, **flat.material.record()}}
+    layers = [
+        {"thickness_m": thickness, **material.record()}
+        for thickness, material in zip(flat.thickness, flat.materials, strict=True)
+    ]
+    grounded = {"grounded_below": flat.grounded_below, "grounded_above": flat.grounded_above}
+    return {"flat_layers": {f"from_{axis}_m": flat.at, **grounded, "layers": layers}}
+
+
 def _materials(entry: str, layers: dict[str, Any], number: int) -> tuple[Material, ...]:
     """One medium for each layer, from lists of their numbers."""
     rows = []
