@@ -18,6 +18,8 @@ import numpy as np
 HERE = Path(__file__).parent
 ELEMENT_TYPE = {3: 2, 4: 3}
 """Element type in MSH files by number of corners."""
+GRAIN = {"low": 100.0, "half": 170.0, "full": 260.0}
+"""Levels of the grain in the hopper, mm."""
 
 
 @dataclass(frozen=True)
@@ -97,6 +99,12 @@ def rod(half_width: float, bottom: float, top: float, sides: int) -> Faces:
     fans = [[0, i + 1, i] for i in range(1, sides - 1)]
     lids = [Faces(rings[0], fans), Faces(rings[1], [face[::-1] for face in fans])]
     return joined(wall(rings), *lids)
+
+
+def filled(rings: list[np.ndarray]) -> Faces:
+    """Solid between successive rings of four corners, with its two ends."""
+    ends = [Faces(rings[0], [[0, 3, 2, 1]]), Faces(rings[-1], [[0, 1, 2, 3]])]
+    return joined(wall(rings), *ends)
 
 
 @dataclass(frozen=True)
@@ -208,17 +216,23 @@ def _elements(groups: dict[str, Faces]) -> list[str]:
 
 
 def grain_hopper(folder: Path) -> None:
-    """Square hopper that tapers to its outlet; a level probe with a guard sleeve."""
+    """Square hopper that tapers to its outlet; a level probe with a guard sleeve; grain."""
     levels = [(30.0, 0.0), (120.0, 150.0), (120.0, 300.0)]
     write_stl(folder / "hopper.stl", wall([ring(half, z, 4) for half, z in levels]))
+    for name, top in GRAIN.items():
+        below = [(half, z) for half, z in levels if z < top]
+        half = min(30.0 + 0.6 * top, 120.0)
+        rings = [ring(half, z, 4) for half, z in [*below, (half, top)]]
+        write_stl(folder / f"grain_{name}.stl", filled(rings))
     sleeve = wall([ring(10.0, z, 12) for z in (-70.0, -10.0)])
     write_msh(folder / "probe.msh", {"rod": rod(5.0, -210.0, 0.0, 12), "guard sleeve": sleeve})
 
 
 def touch_pad(folder: Path) -> None:
-    """One strip, placed six times by the scene, and the plate behind them."""
+    """One strip, placed six times by the scene, the plate behind them, and a glass cover."""
     write_stl(folder / "strip.stl", rectangle(22.0, 3.0))
     write_stl(folder / "back_plate.stl", rectangle(26.0, 26.0))
+    write_stl(folder / "cover.stl", box((-13.0, -13.0, 0.0), (13.0, 13.0, 1.8)))
 
 
 def busbars(folder: Path) -> None:
@@ -232,7 +246,22 @@ def busbars(folder: Path) -> None:
     write_msh(folder / "bars.msh", bars)
 
 
-DEMOS = {"grain_hopper": grain_hopper, "touch_pad": touch_pad, "busbars": busbars}
+def board_pair(folder: Path) -> None:
+    """A board, and two strips that stand on it with their own mesh."""
+    write_stl(folder / "board.stl", box((-10.0, -20.0, 0.0), (10.0, 20.0, 1.6)))
+    strips = {
+        "left": box((-2.4, -15.0, 1.6), (-0.4, 15.0, 1.67)),
+        "right": box((0.4, -15.0, 1.6), (2.4, 15.0, 1.67)),
+    }
+    write_msh(folder / "strips.msh", strips)
+
+
+DEMOS = {
+    "grain_hopper": grain_hopper,
+    "touch_pad": touch_pad,
+    "busbars": busbars,
+    "board_pair": board_pair,
+}
 
 
 def make_all(folder: Path) -> None:

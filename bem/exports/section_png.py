@@ -19,6 +19,8 @@ from bem.units import metres_per
 METAL_COLOUR = "#3a3a3a"
 MOST_LEGEND = 16
 """Most regions in the legend."""
+MOST_NAMES = 12
+"""With more conductors in the section their names are left out."""
 WIDEST = 28
 """Longest name in the legend, columns."""
 DOTS = 150
@@ -77,6 +79,7 @@ def _draw(axes: Any, section: Section) -> None:
     )
     _draw_outlines(axes, section, metres)
     _draw_planes(axes, section, metres)
+    _draw_names(axes, section, metres)
     axes.set_xlim(left, right)
     axes.set_ylim(bottom, top)
     across, up = (AXES[axis] for axis in section.along)
@@ -107,6 +110,23 @@ def _draw_outlines(axes: Any, section: Section, metres: float) -> None:
             linewidths=2.0 if metal else 0.6,
         )
         axes.add_collection(lines)
+
+
+def _draw_names(axes: Any, section: Section, metres: float) -> None:
+    """Names of the conductors that are cut, unless there are many."""
+    cut = zip(section.scene.conductors, section.segments, strict=False)
+    seen = [(conductor.name, segments) for conductor, segments in cut if len(segments)]
+    for name, segments in seen if len(seen) <= MOST_NAMES else ():
+        x, y = segments.reshape(-1, 2).mean(axis=0) / metres
+        box = {"boxstyle": "round,pad=0.15", "facecolor": "white", "edgecolor": "none"}
+        axes.annotate(
+            _plain(shown(name, WIDEST)),
+            (x, y),
+            xytext=(4.0, 4.0),
+            textcoords="offset points",
+            fontsize=7,
+            bbox=box,
+        )
 
 
 def _draw_planes(axes: Any, section: Section, metres: float) -> None:

@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from bem.exports.media import media_lines, surroundings_text
 from bem.exports.names import shown
 from bem.geometry.wording import metre_text
 from bem.results.outcome import remedy
@@ -40,6 +41,7 @@ def lines_of(result: CapacitanceResult, sign: str) -> list[str]:
         *_phases(result),
         *_bodies(result),
         *_planes(result),
+        *media_lines(result.settings),
         _audit(result),
         *_changes(result),
         *(f"warning: {shown(line)}" for line in result.warnings),
@@ -137,7 +139,7 @@ def _bodies(result: CapacitanceResult) -> list[str]:
         kept = " (the part that mirror planes leave)" if cut else ""
         facts.append(f"bodies span {lengths} {name}{kept}")
     if "relative_permittivity" in result.settings:
-        facts.append(f"relative permittivity {result.settings['relative_permittivity']:g}")
+        facts.append(f"relative permittivity {surroundings_text(result.settings)}")
     return [", ".join(facts)] if facts else []
 
 
@@ -184,7 +186,7 @@ def _used(found: dict[str, Any]) -> float:
 def _changes(result: CapacitanceResult) -> list[str]:
     notes = [
         f"{shown(str(entry.get('name')))}: {shown(change)}"
-        for entry in result.inputs
+        for entry in (*result.inputs, *result.settings.get("dielectrics", ()))
         for change in entry.get("changes", ())
         if not _ROUTINE.fullmatch(str(change))
     ]

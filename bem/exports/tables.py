@@ -9,6 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from bem.exports.digits import UNKNOWN, Reading, reading
+from bem.exports.media import grounded_layers
 from bem.results.result import CapacitanceResult
 from bem.units import farad_unit
 
@@ -69,7 +70,7 @@ def tables_of(result: CapacitanceResult) -> list[Table]:
 def outward(result: CapacitanceResult) -> str:
     """Say where the row sums lead: to the surroundings, and to what is grounded."""
     ends = ["the surroundings"]
-    if "ground_plane_m" in result.settings:
+    if "ground_plane_m" in result.settings or grounded_layers(result.settings):
         ends.append("the grounded plane")
     if result.reduction is not None and result.reduction.grounded:
         ends.append("grounded conductors")

@@ -38,6 +38,7 @@ from bem.results import comparison
 from bem.results.comparison import Comparison
 from bem.results.result import CapacitanceResult
 from bem.scene.inspect import check_scene
+from bem.scene.media_record import media_record
 from bem.scene.plane_checks import planes_record
 from bem.scene.scene import Scene
 
@@ -271,6 +272,7 @@ def _one_result(
         **settings,
         "relative_permittivity": scene.relative_permittivity,
         **planes_record(scene.planes),
+        **media_record(scene),
         "facets": facets,
     }
     notes = lines + tuple(facet_lines(scene, facets))

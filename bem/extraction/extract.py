@@ -26,6 +26,7 @@ from bem.extraction.threads import use_threads
 from bem.panels.mesh import Mesh
 from bem.results.result import CapacitanceResult, Round
 from bem.scene.inspect import Inspection, check_scene
+from bem.scene.media_record import media_record
 from bem.scene.plane_checks import planes_record
 from bem.scene.scene import Scene
 from bem.scene.states import check_terminals, wiring_of
@@ -102,6 +103,7 @@ def extract(
         "threads": used,
         "relative_permittivity": scene.relative_permittivity,
         **planes_record(scene.planes),
+        **media_record(scene),
         "operator": "dense",
         "facets": facets,
     }
