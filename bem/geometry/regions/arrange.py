@@ -16,6 +16,8 @@ from bem.geometry.weld import near_groups
 
 FINE = 1e-6
 """Grid of the crossings, per tolerance."""
+FEW = 200
+"""Up to this many end points all pairs are looked at."""
 INSIDE = 0.1
 """Points inside cells may lie this many tolerances off the triangles that cover them."""
 
@@ -37,36 +39,41 @@ class Network(NamedTuple):
 def joined(own: np.ndarray, other: np.ndarray, tolerance: float) -> Network:
     """Join segments (s, 2, 2) of an outline, and others, where they nearly meet."""
     ends = np.concatenate([own, other]).reshape(-1, 2)
-    exact, index = np.unique(ends, axis=0, return_inverse=True)
-    first = _first_of(index.ravel(), len(exact))
+    first, label = _few_groups(ends, tolerance) if len(ends) <= FEW else _groups(ends, tolerance)
+    pairs = label.reshape(-1, 2)
+    return _split_at_points(ends[first], pairs[: len(own)], pairs[len(own) :], tolerance)
+
+
+def _few_groups(points: np.ndarray, tolerance: float) -> tuple[np.ndarray, np.ndarray]:
+    """Where each group of close points (n, 2) begins, and the group (n,) of each."""
+    off = points[:, None] - points[None]
+    near = np.einsum("ijx,ijx->ij", off, off) <= tolerance * tolerance
+    first = near.argmax(axis=1)
+    while (first[first] != first).any():
+        first = first[first]
+    return np.unique(first, return_inverse=True)
+
+
+def _groups(points: np.ndarray, tolerance: float) -> tuple[np.ndarray, np.ndarray]:
+    """What ``_few_groups`` gives, for many points."""
+    exact, first, index = np.unique(points, axis=0, return_index=True, return_inverse=True)
     order = np.argsort(first)
     keep, label = near_groups(exact[order], tolerance)
     rank = np.empty(len(order), dtype=np.int64)
     rank[order] = label
-    pairs = rank[index.ravel()].reshape(-1, 2)
-    points = exact[order][keep]
-    return _split_at_points(points, pairs[: len(own)], pairs[len(own) :], tolerance)
-
-
-def _first_of(index: np.ndarray, number: int) -> np.ndarray:
-    """Where each of ``number`` values stands first in ``index``."""
-    first = np.full(number, len(index))
-    np.minimum.at(first, index, np.arange(len(index)))
-    return first
+    return first[order][keep], rank[index.ravel()]
 
 
 def _split_at_points(points, own, other, tolerance) -> Network:
     pairs = np.concatenate([own, other])
-    real = pairs[:, 0] != pairs[:, 1]
-    source = np.flatnonzero(real)
+    source = np.flatnonzero(pairs[:, 0] != pairs[:, 1])
     lifted = np.column_stack([points, np.zeros(len(points))])
-    edge, corner = corners_on(lifted, pairs[real], tolerance)
-    pieces, of = cut_edges(lifted, pairs[real], edge, corner)
-    pieces, mine = np.sort(pieces, axis=1), source[of] < len(own)
-    first = np.unique(pieces[mine], axis=0)
-    rest = np.unique(pieces[~mine], axis=0)
-    along = np.isin(rest @ [len(points), 1], first @ [len(points), 1])
-    return Network(points, first, rest[~along])
+    edge, corner = corners_on(lifted, pairs[source], tolerance)
+    pieces, of = cut_edges(lifted, pairs[source], edge, corner)
+    key, mine = np.sort(pieces, axis=1) @ [len(points), 1], source[of] < len(own)
+    outline = np.unique(key[mine])
+    rest = np.setdiff1d(key[~mine], outline)
+    return Network(points, *(np.stack(divmod(k, len(points)), axis=1) for k in (outline, rest)))
 
 
 class Cell(NamedTuple):

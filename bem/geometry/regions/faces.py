@@ -65,12 +65,17 @@ class FlatFace:
         return [cell for cell, is_inner in zip(cells, inner.tolist(), strict=True) if is_inner]
 
     def _uncut(self, cover: Cover) -> Scrap:
+        point = self._frame.local(self._whole.point)[:2]
+        return replace(self._whole, meets=cover.flags(point[None], self._margin)[0])
+
+    @property
+    def _whole(self) -> Scrap:
+        """The face as one scrap, whatever it meets."""
         whole = whole_scrap(self._own, self._triangles, 0)
-        flags = cover.flags(self._frame.local(whole.point)[None, :2], self._margin)[0]
-        return replace(whole, flat=self._flat, normal=self._frame.axes[2], meets=flags)
+        return replace(whole, flat=self._flat, normal=self._frame.axes[2])
 
     def _cut(self, cells: list[arrange.Cell], cover: Cover) -> list[Scrap]:
-        base = replace(self._uncut(cover), rows=np.empty(0, dtype=np.int64))
+        base = replace(self._whole, rows=np.empty(0, dtype=np.int64))
         flags = cover.flags(np.array([cell.point for cell in cells]), self._margin)
         return [
             replace(
