@@ -22,6 +22,7 @@ from numba import njit  # noqa: E402
 from bem.geometry.surface import Surface  # noqa: E402
 from bem.kernels import pairs  # noqa: E402
 from bem.kernels.arrays import PanelArrays, panel_arrays  # noqa: E402
+from bem.kernels.images import plain_sources  # noqa: E402
 from bem.kernels.targets import make_targets  # noqa: E402
 from bem.operators.dense import NEAR, far_reach  # noqa: E402
 
@@ -48,7 +49,7 @@ def squares(count: int) -> np.ndarray:
 def fill_nanoseconds(panels: PanelArrays, reach: tuple[float, float]) -> float:
     """Per pair of a fill whose tiers begin at ``reach``."""
     targets, n = make_targets(panels), len(panels.area)
-    sources = pairs.Sources(panels, np.ones(1))
+    sources = plain_sources(panels)
     none = pairs.Matrices(np.empty((0, 0)), np.empty((4, 0, 0), dtype=np.float32))
     new = pairs.Matrices(np.empty((n, n)), np.empty((4, n, n), dtype=np.float32))
     limits, origin = np.array(reach), np.full(n, -1)

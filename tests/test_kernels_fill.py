@@ -14,7 +14,7 @@ from bem.geometry import shapes
 from bem.geometry.surface import Surface
 from bem.kernels import pairs, parallel
 from bem.kernels.arrays import panel_arrays
-from bem.kernels.pairs import Sources
+from bem.kernels.images import plain_sources
 from bem.kernels.targets import make_targets
 from bem.operators import dense
 from bem.operators.dense import DenseOperator, Reuse, far_reach
@@ -29,7 +29,7 @@ FAR = far_reach(1e-3)
 
 def operator_of(corners: np.ndarray, far: float = FAR) -> DenseOperator:
     panels = panel_arrays(corners)
-    return DenseOperator(Sources(panels, np.ones(1)), make_targets(panels), far)
+    return DenseOperator(plain_sources(panels), make_targets(panels), far)
 
 
 @pytest.fixture
@@ -181,12 +181,12 @@ def test_reuse_gives_the_very_entries_of_a_fresh_fill(surface: Surface) -> None:
     """Two refinements on: every entry bit for bit, and fewer pairs computed."""
     mesh = Mesh.start([surface])
     panels = panel_arrays(mesh.corners)
-    operator = DenseOperator(Sources(panels, np.ones(1)), make_targets(panels), FAR)
+    operator = DenseOperator(plain_sources(panels), make_targets(panels), FAR)
     for seed in range(2):
         random = np.random.default_rng(seed)
         count = len(mesh.conductor)
         mesh, origin = mesh.refine(random.random(count) < 0.3, random.integers(0, 2, count))
-        sources = Sources(panel_arrays(mesh.corners), np.ones(1))
+        sources = plain_sources(panel_arrays(mesh.corners))
         targets = make_targets(sources.panels)
         fresh = DenseOperator(sources, targets, FAR)
         operator = DenseOperator(sources, targets, FAR, Reuse(operator, origin))

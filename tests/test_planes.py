@@ -19,8 +19,7 @@ from bem.geometry.planes import Plane, Planes
 from bem.geometry.surface import Surface
 from bem.geometry.topology import edges_of
 from bem.kernels.arrays import panel_arrays
-from bem.kernels.images import plain_energy, sources_of, with_images
-from bem.kernels.pairs import Sources
+from bem.kernels.images import images_of, plain_energy, plain_sources, sources_of, with_images
 from bem.kernels.targets import make_targets
 from bem.operators.dense import DenseOperator
 from bem.panels.curved import CurvedFamily
@@ -64,6 +63,9 @@ def test_images_are_all_products_of_reflections_with_their_signs() -> None:
     below = np.isclose(images[:, 2], -3.6)
     assert np.array_equal(signs, np.where(below, -1.0, 1.0))
     assert len(np.unique(images.round(12), axis=0)) == 8
+    maps = images_of(EVERYTHING)
+    assert maps.of(point) == pytest.approx(images, abs=1e-15)
+    assert np.array_equal(maps.parity, [1, -1, -1, 1, -1, 1, 1, -1])
     assert set(images[:, 0].round(12)) == {1.0, -0.8} and set(images[:, 1].round(12)) == {2.0, -2.4}
 
 
@@ -72,10 +74,10 @@ def test_a_matrix_with_images_is_the_signed_sum_of_matrices_with_each() -> None:
     mesh = Mesh.start([shapes.box(0.5, 0.3, 0.2, center=(0.5, 0.3, 0.1)), shapes.sphere(0.1)])
     corners = mesh.corners[::3]
     count, planes = len(corners), EVERYTHING
-    sources = sources_of(planes.images(corners), planes.signs)
+    sources = sources_of(corners, planes)
     operator = DenseOperator(sources, make_targets(panel_arrays(corners)), FAR)
     every = panel_arrays(planes.images(corners).reshape(-1, 4, 3))
-    plain = DenseOperator(Sources(every, np.ones(1)), make_targets(every), FAR)
+    plain = DenseOperator(plain_sources(every), make_targets(every), FAR)
     blocks = plain.matrices.single[:count].reshape(count, planes.copies, count)
     assert operator.matrices.single == pytest.approx(
         np.einsum("igj,g->ij", blocks, planes.signs), rel=1e-12, abs=1e-9
@@ -84,6 +86,9 @@ def test_a_matrix_with_images_is_the_signed_sum_of_matrices_with_each() -> None:
     assert operator.matrices.tests == pytest.approx(
         np.einsum("tigj,g->tij", tests, planes.signs), rel=1e-5, abs=1e-6
     )
+    density = np.random.default_rng(1).random(count)
+    every_density = (planes.signs[:, None] * density).ravel()
+    assert np.array_equal(with_images(density, sources), every_density)
 
 
 def test_magnitude_counts_images_of_either_sign_as_positive() -> None:
@@ -92,16 +97,16 @@ def test_magnitude_counts_images_of_either_sign_as_positive() -> None:
     right = np.random.default_rng(3).uniform(-1.0, 1.0, (len(corners), 2))
     ground, mirror = Planes(Plane(2, 0.0)), Planes(None, (Plane(2, 0.0),))
     targets = make_targets(panel_arrays(corners))
-    found = DenseOperator(sources_of(ground.images(corners), ground.signs), targets, FAR)
-    twin = DenseOperator(sources_of(mirror.images(corners), mirror.signs), targets, FAR)
+    found = DenseOperator(sources_of(corners, ground), targets, FAR)
+    twin = DenseOperator(sources_of(corners, mirror), targets, FAR)
     assert found.magnitude(right, right) == pytest.approx(twin.magnitude(right, right), rel=0.15)
     density = np.abs(right)
     panels = found.sources.panels
     point = panels.center[:, None] - panels.center
     inverse = 1.0 / np.maximum(np.linalg.norm(point, axis=2), panels.radius[:, None])
-    weight = panels.area[:, None] * with_images(density, np.ones(2))
+    weight = panels.area[:, None] * np.tile(density, (2, 1))
     slow = weight[: len(corners)].T @ (inverse[: len(corners)] @ weight)
-    assert plain_energy(panels, density, density) == pytest.approx(slow, rel=1e-12)
+    assert plain_energy(found.sources, density, density) == pytest.approx(slow, rel=1e-12)
 
 
 # ---------------------------------------------------------------- exact and published values

@@ -18,8 +18,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from bem.kernels.arrays import PanelArrays, panel_arrays
-from bem.kernels.images import own_images, sources_of, with_images
+from bem.kernels.arrays import PanelArrays
+from bem.kernels.images import originals, own_images, sources_of, with_images
 from bem.kernels.indicator_energy import indicator_energies
 from bem.kernels.pairs import Sources
 from bem.kernels.potential import potential_of_panels
@@ -41,7 +41,7 @@ class Solution:
         mesh: n panels of k conductors.
         panels: their arrays.
         sources: panels and their images behind planes.
-        own: (n,) number of images of each panel that coincide with it, itself among them.
+        own: (n,) weight of the images of each panel that coincide with it, itself among them.
         operator: their operator.
         density: (n, k).
         residual: (4, n, k) residual against each test over the root of its energy.
@@ -85,8 +85,13 @@ class Solution:
 
     def potential(self, points: np.ndarray, column: int) -> np.ndarray:
         """(m,) potential at points (m, 3) with conductor ``column`` at 1 and the others at 0."""
-        density = with_images(self.density[:, column], self.sources.signs)
-        return potential_of_panels(self.sources.panels, np.ascontiguousarray(points.T), density)
+        density, layer = self.density[:, column], self.mesh.planes.layer_of(points)
+        total = np.empty(len(points))
+        for here in (layer == k for k in np.unique(layer)):
+            charge = with_images(density, self.sources, layer[here][0])
+            at = np.ascontiguousarray(points[here].T)
+            total[here] = potential_of_panels(self.sources.panels, at, charge)
+        return total
 
 
 def incidence(conductor: np.ndarray, count: int) -> np.ndarray:
@@ -101,16 +106,13 @@ def with_all(columns: np.ndarray) -> np.ndarray:
 
 def solve_round(mesh: Mesh, count: int, far: float, reuse: Reuse | None) -> Solution:
     """Assemble, solve and test the residual on a mesh of ``count`` conductors."""
-    panels = panel_arrays(mesh.corners)
+    sources = sources_of(mesh.corners, mesh.planes)
+    panels = originals(sources)
     targets = make_targets(panels)
-    planes = mesh.planes
-    sources = Sources(panels, np.ones(1))
-    if planes.all:
-        sources = sources_of(planes.images(mesh.corners), planes.signs)
     operator = DenseOperator(sources, targets, far, reuse)
     right = panels.area[:, None] * incidence(mesh.conductor, count)
     density = solve_dense(operator, right)
-    own = own_images(sources, len(panels.area))
+    own = own_images(sources)
     energy = indicator_energies(panels, targets) * own[:, None]
     residual = -operator.tests(density) / np.sqrt(energy.T)[:, :, None]
     return Solution(mesh, panels, sources, own, operator, density, residual)

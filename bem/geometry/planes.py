@@ -3,6 +3,7 @@
 A charge q over a grounded plane sees a charge -q at its mirror image (Thomson 1848), one beside
 a plane of symmetry sees +q. Planes are normal to coordinate axes, at most one to each, so that
 all images come from reflections that commute: p planes give 2^p copies, the original among them.
+Flat layers of other permittivity are kept beside them; their images are in ``kernels``.
 """
 
 from __future__ import annotations
@@ -12,6 +13,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
+from bem.geometry.layers import Layers
 from bem.geometry.wording import metre_text
 
 AXES = "xyz"
@@ -54,10 +56,12 @@ class Planes:
     Args:
         ground: infinite plane at potential zero, or None.
         mirrors: planes of symmetry.
+        layers: flat layers of different permittivity, normal to another axis; or None.
     """
 
     ground: Plane | None = None
     mirrors: tuple[Plane, ...] = field(default=())
+    layers: Layers | None = None
 
     @property
     def all(self) -> tuple[Plane, ...]:
@@ -97,6 +101,12 @@ class Planes:
             out.append(image)
         return np.array(out)
 
+    def layer_of(self, points: np.ndarray) -> np.ndarray:
+        """(n,) layer that each of the points (n, 3) lies in, 0 without layers."""
+        if self.layers is None:
+            return np.zeros(len(points), dtype=np.int64)
+        return self.layers.layer_of(points)
+
     def mirrored(self, points: np.ndarray, tolerance: float) -> np.ndarray:
         """(n,) whether all of the points (n, m, 3) of each row lie in one mirror plane."""
         found = np.zeros(len(points), dtype=bool)
@@ -107,7 +117,9 @@ class Planes:
     def moved(self, scale: float, center: np.ndarray) -> Planes:
         """The planes after every point x goes to ``scale * (x - center)``."""
         ground = None if self.ground is None else self.ground.moved(scale, center)
-        return Planes(ground, tuple(mirror.moved(scale, center) for mirror in self.mirrors))
+        mirrors = tuple(mirror.moved(scale, center) for mirror in self.mirrors)
+        layers = None if self.layers is None else self.layers.moved(scale, center)
+        return Planes(ground, mirrors, layers)
 
 
 NO_PLANES = Planes()

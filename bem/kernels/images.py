@@ -1,62 +1,143 @@
-"""Panels with their images behind grounded and mirror planes."""
+"""Panels with their images behind grounded planes, mirror planes and planes between layers."""
 
 from __future__ import annotations
 
+import itertools
+from typing import NamedTuple
+
 import numpy as np
 
+from bem.compiled import njit
+from bem.geometry.planes import Planes
 from bem.kernels.arrays import PanelArrays, panel_arrays
 from bem.kernels.pairs import Sources
 
 COINCIDENT = 1e-6
 """An image nearer to its panel than this part of the radius lies in the same place."""
-BLOCK = 256
-"""Panels handled together, so that memory stays small."""
 
 
-def sources_of(images: np.ndarray, signs: np.ndarray) -> Sources:
+class Images(NamedTuple):
+    """Copies of every panel, each point x of it at ``flip * x + shift``; the original is first.
+
+    Args:
+        flip: (g, 3) -1 for coordinates that are mirrored.
+        shift: (g, 3).
+        weight: (l, l, g) charge on each image over that of the panel, by the layer of the
+            target and that of the panel.
+    """
+
+    flip: np.ndarray
+    shift: np.ndarray
+    weight: np.ndarray
+
+    @property
+    def parity(self) -> np.ndarray:
+        """(g,) -1 for images that are mirrored."""
+        return self.flip.prod(axis=1)
+
+    def of(self, points: np.ndarray) -> np.ndarray:
+        """(g, ..., 3) images of points (..., 3)."""
+        shape = (len(self.flip),) + (1,) * (points.ndim - 1) + (3,)
+        return self.flip.reshape(shape) * points + self.shift.reshape(shape)
+
+    def times(self, other: Images) -> Images:
+        """Images of images, those of ``other`` changing slowest."""
+        flip = other.flip[:, None] * self.flip
+        shift = other.flip[:, None] * self.shift + other.shift[:, None]
+        weight = np.einsum("abh,abg->abhg", other.weight, self.weight)
+        layers = max(len(self.weight), len(other.weight))
+        return Images(flip.reshape(-1, 3), shift.reshape(-1, 3), weight.reshape(layers, layers, -1))
+
+
+def images_of(planes: Planes) -> Images:
+    """All images of a scene in one medium: reflections in grounded and mirror planes.
+
+    Args:
+        planes: that bound or mirror the scene.
+    """
+    flips, shifts = [], []
+    for taken in itertools.product((False, True), repeat=len(planes.all)):
+        flip, shift = np.ones(3), np.zeros(3)
+        for plane in itertools.compress(planes.all, taken):
+            flip[plane.axis], shift[plane.axis] = -1.0, 2.0 * plane.at
+        flips.append(flip)
+        shifts.append(shift)
+    return Images(np.array(flips), np.array(shifts), planes.signs[None, None])
+
+
+def sources_of(corners: np.ndarray, planes: Planes) -> Sources:
     """Arrays of panels and their images.
 
     Args:
-        images: (g, n, 4, 3) corners, those of the panels themselves first.
-        signs: (g,) sign of the charge on each image.
+        corners: (n, 4, 3) of the panels themselves.
+        planes: that bound or mirror the scene.
     """
-    return Sources(panel_arrays(images.reshape(-1, 4, 3)), np.asarray(signs, dtype=float))
+    images = images_of(planes)
+    panels = panel_arrays(images.of(corners).reshape(-1, 4, 3))
+    layer = np.zeros(len(corners), dtype=np.int64)
+    return Sources(panels, np.ascontiguousarray(images.weight), images.parity, layer)
 
 
-def with_images(density: np.ndarray, signs: np.ndarray) -> np.ndarray:
-    """Densities (g n, ...) of panels and images from those of the panels (n, ...)."""
-    return np.concatenate([sign * density for sign in signs])
+def plain_sources(panels: PanelArrays) -> Sources:
+    """Panels in one medium, without images."""
+    layer = np.zeros(len(panels.area), dtype=np.int64)
+    return Sources(panels, np.ones((1, 1, 1)), np.ones(1), layer)
 
 
-def own_images(sources: Sources, count: int) -> np.ndarray:
-    """(count,) how many images of each panel lie where it lies itself, the panel among them.
+def originals(sources: Sources) -> PanelArrays:
+    """The panels themselves, without their images."""
+    count = len(sources.layer)
+    return PanelArrays(*(array[:count] for array in sources.panels))
+
+
+def with_images(density: np.ndarray, sources: Sources, layer: int = 0) -> np.ndarray:
+    """Densities (g n,) of panels and images, as points in a layer see those of the panels (n,)."""
+    return (sources.weight[layer, sources.layer].T * density).ravel()
+
+
+def own_images(sources: Sources) -> np.ndarray:
+    """(n,) weight of those images of each panel that lie where it lies, the panel among them.
 
     A sheet in a mirror plane is its own image, and its charge counts twice in its energy.
     """
-    panels = sources.panels
-    center = panels.center.reshape(-1, count, 3)
+    panels, layer = sources.panels, sources.layer
+    center = panels.center.reshape(-1, len(layer), 3)
     apart = np.linalg.norm(center - center[0], axis=2)
-    return (apart <= COINCIDENT * panels.radius[:count]).sum(axis=0)
+    weight = sources.weight[layer, layer].T
+    return np.where(apart <= COINCIDENT * panels.radius[: len(layer)], weight, 0.0).sum(axis=0)
 
 
-def plain_energy(panels: PanelArrays, left: np.ndarray, right: np.ndarray) -> np.ndarray:
+def plain_energy(sources: Sources, left: np.ndarray, right: np.ndarray) -> np.ndarray:
     """(k, m) energy of charges of one sign on n panels, their images counted as positive too.
 
     Panels count as points, those nearer than a radius as that far: good to some ten per
     cent, and meant for error estimates.
 
     Args:
-        panels: n panels, then their images.
+        sources: n panels and their images.
         left: (n, k) densities.
         right: (n, m) densities.
     """
-    count = len(left)
-    copies = len(panels.area) // count
-    charge = panels.area[:, None] * np.tile(right, (copies, 1))
-    total = np.zeros((left.shape[1], right.shape[1]))
-    for start in range(0, count, BLOCK):
-        block = slice(start, min(start + BLOCK, count))
-        apart = np.linalg.norm(panels.center[block, None] - panels.center, axis=2)
-        inverse = 1.0 / np.maximum(apart, panels.radius[block, None])
-        total += (panels.area[block, None] * left[block]).T @ (inverse @ charge)
+    area = sources.panels.area[: len(left), None]
+    return (area * left).T @ _plain_potential(sources, np.ascontiguousarray(area * right))
+
+
+@njit(cache=True, nogil=True, error_model="numpy")
+def _plain_potential(sources, charge):
+    """(n, m) sum of |weight| charge / distance over all panels and images."""
+    center, radius, layer = sources.panels.center, sources.panels.radius, sources.layer
+    n, m = charge.shape
+    total = np.zeros((n, m))
+    for i in range(n):
+        for image in range(sources.weight.shape[2]):
+            for j in range(n):
+                weight = abs(sources.weight[layer[i], layer[j], image])
+                source = image * n + j
+                square = radius[i] ** 2
+                apart = 0.0
+                for c in range(3):
+                    apart += (center[i, c] - center[source, c]) ** 2
+                inverse = weight / np.sqrt(max(apart, square))
+                for k in range(m):
+                    total[i, k] += inverse * charge[j, k]
     return total

@@ -12,8 +12,8 @@ near    (distance below ``near`` times both radii): A exact where a closed form 
         all near panels are seen from the same samples and the residual is sampled
         consistently.
 
-With grounded or mirror planes the images of all panels are sources too, each with its sign:
-A_ij and T_k,ij are sums over the images of j.
+With grounded planes, mirror planes or flat layers the images of all panels are sources too, each
+with its weight: A_ij and T_k,ij are weighted sums over the images of j.
 """
 
 from __future__ import annotations
@@ -204,39 +204,47 @@ def _copy_row(i, origin, old, new):
 
 
 class Sources(NamedTuple):
-    """Panels and their images behind grounded and mirror planes.
+    """Panels and their images behind planes.
 
     Args:
         panels: n panels, then all n of each image in turn.
-        signs: (g,) sign of the charge on each image, 1 for the panels themselves.
+        weight: (l, l, g) charge on each image over that of the panel, by the layer of the
+            target and that of the panel.
+        parity: (g,) -1 for images that are mirrored, whose computed normals are reversed.
+        layer: (n,) layer of each panel.
     """
 
     panels: PanelArrays
-    signs: np.ndarray
+    weight: np.ndarray
+    parity: np.ndarray
+    layer: np.ndarray
 
 
 @njit(inline="always")
-def _put(i, j, image, sign, out, new):
+def _put(i, j, image, weight, out, new):
     """Let the original (image 0) start the sums over the images of panel j, others add to them."""
     if image == 0:
-        new.single[i, j] = out[0]
+        new.single[i, j] = weight * out[0]
         for k in range(4):
-            new.tests[k, i, j] = out[k + 1]
+            new.tests[k, i, j] = weight * out[k + 1]
     else:
-        new.single[i, j] += sign * out[0]
+        new.single[i, j] += weight * out[0]
         for k in range(4):
-            new.tests[k, i, j] += sign * out[k + 1]
+            new.tests[k, i, j] += weight * out[k + 1]
 
 
 @njit(cache=True, error_model="numpy")
 def _fill_row(i, sources, targets, reach, origin, new):
-    panels, signs = sources.panels, sources.signs
+    panels, weight, layer = sources.panels, sources.weight, sources.layer
     work = np.empty((ROWS, targets.weights.shape[1]))
-    out = np.empty(5)
+    out = np.zeros(5)
     sampled = 0
-    for image in range(signs.size):
+    for image in range(weight.shape[2]):
         for j in range(origin.size):
             if origin[i] >= 0 and origin[j] >= 0:
+                continue
+            w = weight[layer[i], layer[j], image]
+            if w == 0.0 and image > 0:
                 continue
             source = image * origin.size + j
             dx = panels.center[i] - panels.center[source]
@@ -249,7 +257,7 @@ def _fill_row(i, sources, targets, reach, origin, new):
                 sampled += 1
                 if distance <= reach[0]:
                     out[0] = near_pair(i, source, panels) if j >= i else math.nan
-            _put(i, j, image, signs[image], out, new)
+            _put(i, j, image, w, out, new)
     return sampled
 
 

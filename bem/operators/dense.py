@@ -117,6 +117,6 @@ class DenseOperator:
 
     def magnitude(self, left: np.ndarray, right: np.ndarray) -> np.ndarray:
         """(k, m) energies |left|^T A |right| without cancellation, from (n, k) and (n, m)."""
-        if (self.sources.signs < 0.0).any():
-            return plain_energy(self.sources.panels, np.abs(left), np.abs(right))
+        if (self.sources.weight < 0.0).any():
+            return plain_energy(self.sources, np.abs(left), np.abs(right))
         return np.abs(left).T @ (self.matrices.single @ np.abs(right))
