@@ -19,7 +19,7 @@ from bem.geometry.planes import Plane, Planes
 from bem.geometry.surface import Surface
 from bem.geometry.topology import edges_of
 from bem.kernels.arrays import panel_arrays
-from bem.kernels.images import images_of, plain_energy, plain_sources, sources_of, with_images
+from bem.kernels.images import plain_energy, plain_sources, reflections, sources_of, with_images
 from bem.kernels.targets import make_targets
 from bem.operators.dense import DenseOperator
 from bem.panels.curved import CurvedFamily
@@ -63,7 +63,7 @@ def test_images_are_all_products_of_reflections_with_their_signs() -> None:
     below = np.isclose(images[:, 2], -3.6)
     assert np.array_equal(signs, np.where(below, -1.0, 1.0))
     assert len(np.unique(images.round(12), axis=0)) == 8
-    maps = images_of(EVERYTHING)
+    maps = reflections(EVERYTHING)
     assert maps.of(point) == pytest.approx(images, abs=1e-15)
     assert np.array_equal(maps.parity, [1, -1, -1, 1, -1, 1, 1, -1])
     assert set(images[:, 0].round(12)) == {1.0, -0.8} and set(images[:, 1].round(12)) == {2.0, -2.4}

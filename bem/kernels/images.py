@@ -8,16 +8,19 @@ from typing import NamedTuple
 import numpy as np
 
 from bem.compiled import njit
+from bem.geometry.layers import Layers
 from bem.geometry.planes import Planes
 from bem.kernels.arrays import PanelArrays, panel_arrays
+from bem.kernels.layered import layer_images
+from bem.kernels.mixed_arrays import Images, no_images
 from bem.kernels.pairs import Sources
 
 COINCIDENT = 1e-6
 """An image nearer to its panel than this part of the radius lies in the same place."""
 
 
-class Images(NamedTuple):
-    """Copies of every panel, each point x of it at ``flip * x + shift``; the original is first.
+class Copies(NamedTuple):
+    """Images of every panel, each point x of it at ``flip * x + shift``; the original is first.
 
     Args:
         flip: (g, 3) -1 for coordinates that are mirrored.
@@ -40,21 +43,18 @@ class Images(NamedTuple):
         shape = (len(self.flip),) + (1,) * (points.ndim - 1) + (3,)
         return self.flip.reshape(shape) * points + self.shift.reshape(shape)
 
-    def times(self, other: Images) -> Images:
+    def times(self, other: Copies) -> Copies:
         """Images of images, those of ``other`` changing slowest."""
         flip = other.flip[:, None] * self.flip
         shift = other.flip[:, None] * self.shift + other.shift[:, None]
-        weight = np.einsum("abh,abg->abhg", other.weight, self.weight)
-        layers = max(len(self.weight), len(other.weight))
-        return Images(flip.reshape(-1, 3), shift.reshape(-1, 3), weight.reshape(layers, layers, -1))
+        weight = other.weight[..., :, None] * self.weight[..., None, :]
+        return Copies(
+            flip.reshape(-1, 3), shift.reshape(-1, 3), weight.reshape(*weight.shape[:2], -1)
+        )
 
 
-def images_of(planes: Planes) -> Images:
-    """All images of a scene in one medium: reflections in grounded and mirror planes.
-
-    Args:
-        planes: that bound or mirror the scene.
-    """
+def reflections(planes: Planes) -> Copies:
+    """Images in grounded and mirror planes."""
     flips, shifts = [], []
     for taken in itertools.product((False, True), repeat=len(planes.all)):
         flip, shift = np.ones(3), np.zeros(3)
@@ -62,7 +62,22 @@ def images_of(planes: Planes) -> Images:
             flip[plane.axis], shift[plane.axis] = -1.0, 2.0 * plane.at
         flips.append(flip)
         shifts.append(shift)
-    return Images(np.array(flips), np.array(shifts), planes.signs[None, None])
+    return Copies(np.array(flips), np.array(shifts), planes.signs[None, None])
+
+
+def copies_in_layers(layers: Layers, occupied: np.ndarray, size: float) -> tuple[Copies, float]:
+    """Images that stand for flat layers, and the error of the potential that they leave.
+
+    Args:
+        layers: the stack.
+        occupied: layers that hold panels.
+        size: largest distance of two panels.
+    """
+    known = tuple(int(k) for k in occupied)
+    found = layer_images(layers, known, float(2.0 ** np.ceil(np.log2(size))))
+    flip, shift = np.ones((len(found.flip), 3)), np.zeros((len(found.flip), 3))
+    flip[:, layers.axis], shift[:, layers.axis] = found.flip, found.shift
+    return Copies(flip, shift, found.weight), found.error
 
 
 def sources_of(corners: np.ndarray, planes: Planes) -> Sources:
@@ -70,29 +85,33 @@ def sources_of(corners: np.ndarray, planes: Planes) -> Sources:
 
     Args:
         corners: (n, 4, 3) of the panels themselves.
-        planes: that bound or mirror the scene.
+        planes: that bound, mirror or fill the scene.
     """
-    images = images_of(planes)
-    panels = panel_arrays(images.of(corners).reshape(-1, 4, 3))
-    layer = np.zeros(len(corners), dtype=np.int64)
-    return Sources(panels, np.ascontiguousarray(images.weight), images.parity, layer)
+    layer = planes.layer_of(corners.mean(axis=1))
+    copies, error = reflections(planes), 0.0
+    if planes.layers is not None:
+        size = float(np.linalg.norm(np.ptp(corners.reshape(-1, 3), axis=0)))
+        there, error = copies_in_layers(planes.layers, np.unique(layer), size)
+        copies = there.times(copies)
+    panels = panel_arrays(copies.of(corners).reshape(-1, 4, 3))
+    weight = np.ascontiguousarray(copies.weight)
+    return Sources(panels, Images(weight, copies.parity, layer), error)
 
 
 def plain_sources(panels: PanelArrays) -> Sources:
     """Panels in one medium, without images."""
-    layer = np.zeros(len(panels.area), dtype=np.int64)
-    return Sources(panels, np.ones((1, 1, 1)), np.ones(1), layer)
+    return Sources(panels, no_images(len(panels.area)), 0.0)
 
 
 def originals(sources: Sources) -> PanelArrays:
     """The panels themselves, without their images."""
-    count = len(sources.layer)
+    count = len(sources.images.layer)
     return PanelArrays(*(array[:count] for array in sources.panels))
 
 
 def with_images(density: np.ndarray, sources: Sources, layer: int = 0) -> np.ndarray:
     """Densities (g n,) of panels and images, as points in a layer see those of the panels (n,)."""
-    return (sources.weight[layer, sources.layer].T * density).ravel()
+    return (sources.images.weight[layer, sources.images.layer].T * density).ravel()
 
 
 def own_images(sources: Sources) -> np.ndarray:
@@ -100,10 +119,10 @@ def own_images(sources: Sources) -> np.ndarray:
 
     A sheet in a mirror plane is its own image, and its charge counts twice in its energy.
     """
-    panels, layer = sources.panels, sources.layer
+    panels, layer = sources.panels, sources.images.layer
     center = panels.center.reshape(-1, len(layer), 3)
     apart = np.linalg.norm(center - center[0], axis=2)
-    weight = sources.weight[layer, layer].T
+    weight = sources.images.weight[layer, layer].T
     return np.where(apart <= COINCIDENT * panels.radius[: len(layer)], weight, 0.0).sum(axis=0)
 
 
@@ -125,13 +144,13 @@ def plain_energy(sources: Sources, left: np.ndarray, right: np.ndarray) -> np.nd
 @njit(cache=True, nogil=True, error_model="numpy")
 def _plain_potential(sources, charge):
     """(n, m) sum of |weight| charge / distance over all panels and images."""
-    center, radius, layer = sources.panels.center, sources.panels.radius, sources.layer
+    center, radius, layer = sources.panels.center, sources.panels.radius, sources.images.layer
     n, m = charge.shape
     total = np.zeros((n, m))
     for i in range(n):
-        for image in range(sources.weight.shape[2]):
+        for image in range(sources.images.weight.shape[2]):
             for j in range(n):
-                weight = abs(sources.weight[layer[i], layer[j], image])
+                weight = abs(sources.images.weight[layer[i], layer[j], image])
                 source = image * n + j
                 square = radius[i] ** 2
                 apart = 0.0

@@ -26,6 +26,7 @@ import numpy as np
 from bem.compiled import njit
 from bem.kernels.arrays import PanelArrays
 from bem.kernels.expansion import dot, far_pair
+from bem.kernels.mixed_arrays import Images
 from bem.kernels.parallel import sum_over_rows
 from bem.kernels.polygons import coplanar_pair
 from bem.kernels.potential import ROWS, potential
@@ -208,16 +209,13 @@ class Sources(NamedTuple):
 
     Args:
         panels: n panels, then all n of each image in turn.
-        weight: (l, l, g) charge on each image over that of the panel, by the layer of the
-            target and that of the panel.
-        parity: (g,) -1 for images that are mirrored, whose computed normals are reversed.
-        layer: (n,) layer of each panel.
+        images: weights of the images, and the layer of each panel.
+        error: of the potential over that of the source itself, where images stand for layers.
     """
 
     panels: PanelArrays
-    weight: np.ndarray
-    parity: np.ndarray
-    layer: np.ndarray
+    images: Images
+    error: float
 
 
 @njit(inline="always")
@@ -235,7 +233,7 @@ def _put(i, j, image, weight, out, new):
 
 @njit(cache=True, error_model="numpy")
 def _fill_row(i, sources, targets, reach, origin, new):
-    panels, weight, layer = sources.panels, sources.weight, sources.layer
+    panels, weight, layer = sources.panels, sources.images.weight, sources.images.layer
     work = np.empty((ROWS, targets.weights.shape[1]))
     out = np.zeros(5)
     sampled = 0

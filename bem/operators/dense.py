@@ -112,11 +112,11 @@ class DenseOperator:
 
     @property
     def far_error(self) -> float:
-        """Relative error of the energy of charges of one sign that expansions may cause."""
-        return FAR_ERROR * (LEAST_FAR / self.far) ** FAR_ORDER
+        """Relative error of the energy of charges of one sign from expansions and layers."""
+        return FAR_ERROR * (LEAST_FAR / self.far) ** FAR_ORDER + self.sources.error
 
     def magnitude(self, left: np.ndarray, right: np.ndarray) -> np.ndarray:
         """(k, m) energies |left|^T A |right| without cancellation, from (n, k) and (n, m)."""
-        if (self.sources.weight < 0.0).any():
+        if (self.sources.images.weight < 0.0).any():
             return plain_energy(self.sources, np.abs(left), np.abs(right))
         return np.abs(left).T @ (self.matrices.single @ np.abs(right))
