@@ -7,9 +7,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from bem.geometry.folding import folded
+from bem.geometry.layer_cut import cut_in_layers
 from bem.geometry.parts import INTERFACE, Part
 from bem.geometry.planes import Planes
 from bem.geometry.surface import Surface
+from bem.scene.layering import planes_of
 from bem.scene.scene import Scene
 from bem.units import EPS0
 
@@ -23,7 +25,7 @@ class ScaledScene:
         length: metres per unit, the largest side of the scene's bounding box.
         center: (3,) m, what was subtracted first.
         farad: capacitance in farad of one unit of L = C / (4 pi eps), mirror images included.
-        planes: grounded and mirror planes.
+        planes: grounded and mirror planes, and flat layers.
         parts: of all surfaces, by what lies on both sides; empty without dielectrics.
         permittivity: (r,) of each region over that of the surroundings, which come first.
         coincidence: faces closer than this coincide.
@@ -45,11 +47,13 @@ class ScaledScene:
         """Scale a scene, to its own size and center or to those of another."""
         length, center = _frame(scene) if like is None else (like.length, like.center)
         matrix = np.eye(3) / length
-        planes = scene.planes.moved(1.0 / length, center)
+        planes = planes_of(scene).moved(1.0 / length, center)
         surfaces = [
             folded(c.surface.placed(matrix, -center / length), planes, c.body == "solid")
             for c in scene.conductors
         ]
+        if planes.layers is not None:
+            surfaces = [cut_in_layers(surface, planes.layers) for surface in surfaces]
         farad = 4.0 * np.pi * EPS0 * scene.relative_permittivity * length
         parts, notes = _partition(scene, matrix, -center / length)
         media = [scene.relative_permittivity, *(d.relative_permittivity for d in scene.dielectrics)]

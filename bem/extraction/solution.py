@@ -83,14 +83,28 @@ class Solution:
         """(k,) relative change of each L_ii if the facets of i became what they may stand for."""
         return file_facet_shares(self)
 
-    def potential(self, points: np.ndarray, column: int) -> np.ndarray:
-        """(m,) potential at points (m, 3) with conductor ``column`` at 1 and the others at 0."""
-        density, layer = self.density[:, column], self.mesh.planes.layer_of(points)
+    @property
+    def direct(self) -> np.ndarray:
+        """(n,) weight of each panel itself: 1 over the permittivity that it lies in."""
+        layer = self.sources.images.layer
+        return self.sources.images.weight[layer, layer, 0]
+
+    def potential(
+        self, points: np.ndarray, column: int, layer: np.ndarray | None = None
+    ) -> np.ndarray:
+        """(m,) potential with conductor ``column`` at 1 and the others at 0.
+
+        Args:
+            points: (m, 3).
+            column: conductor.
+            layer: (m,) layers that count as those of the points; left out, where they lie.
+        """
+        layer = self.mesh.planes.layer_of(points) if layer is None else layer
         total = np.empty(len(points))
-        for here in (layer == k for k in np.unique(layer)):
-            charge = with_images(density, self.sources, layer[here][0])
-            at = np.ascontiguousarray(points[here].T)
-            total[here] = potential_of_panels(self.sources.panels, at, charge)
+        for k in np.unique(layer):
+            charge = with_images(self.density[:, column], self.sources, k)
+            at = np.ascontiguousarray(points[layer == k].T)
+            total[layer == k] = potential_of_panels(self.sources.panels, at, charge)
         return total
 
 
@@ -178,10 +192,11 @@ def faceting_effect(solution: Solution) -> np.ndarray:
 
     With a and b the densities on the outer and the inner side of a panel the change is 4 pi
     times the integral of (a_i a_j - b_i b_j) times the displacement along the normal
-    (Hadamard 1908); inside a closed body b is zero. At a curved free rim of a sheet the
-    density is K / sqrt(r) and the change is 2 pi^2 times the integral along the rim of
-    K_i K_j times the in-plane displacement (the energy release of a crack front, with the
-    constant of the disk); a panel of width w at the rim has the mean density 2 K / sqrt(w).
+    (Hadamard 1908), over the permittivity; inside a closed body b is zero. At a curved free
+    rim of a sheet the density is K / sqrt(r) and the change is 2 pi^2 times the integral along
+    the rim of K_i K_j times the in-plane displacement (the energy release of a crack front,
+    with the constant of the disk); a panel of width w at the rim has the mean density
+    2 K / sqrt(w).
     """
     faceting, density = solution.mesh.faceting(), solution.density
     count = density.shape[1]
@@ -203,7 +218,7 @@ def rim_effect(solution: Solution) -> np.ndarray:
 def _pushes(solution: Solution, faceting: Faceting) -> tuple[np.ndarray, np.ndarray]:
     """Factors (n,) of products of densities: for moves along the normal, and of a free rim."""
     area = solution.panels.area
-    normal = 4.0 * np.pi * area * faceting.offset
+    normal = 4.0 * np.pi * solution.direct * area * faceting.offset
     rim = 0.5 * np.pi**2 * solution.own * area * faceting.rim_offset * faceting.rim_width
     return normal, rim
 
@@ -267,7 +282,7 @@ def _side_difference(solution: Solution, faceting: Faceting) -> np.ndarray:
         [panels.center[rows] + step * normal, panels.center[rows] - step * normal]
     )
     for column in range(solution.density.shape[1]):
-        u = solution.potential(points, column)
+        u = solution.potential(points, column, np.tile(solution.sources.images.layer[rows], 2))
         slope = (u[: len(rows)] - u[len(rows) :]) / (2.0 * step[:, 0])
-        difference[rows, column] = -slope / (2.0 * np.pi)
+        difference[rows, column] = -slope / (2.0 * np.pi * solution.direct[rows])
     return difference

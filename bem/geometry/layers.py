@@ -58,7 +58,7 @@ class Layers:
         """
         at = np.asarray(points)[:, self.axis]
         layer = np.searchsorted(self.planes, at, side="right")
-        tolerance = ON_PLANE * np.abs(at).max(initial=0.0)
+        tolerance = ON_PLANE * np.abs(points).max(initial=0.0)
         for k, plane in enumerate(self.planes):
             outer = 0 if k == 0 and not self.grounded_below else k + 1
             if k + 1 == self.count - 1 and self.grounded_above:

@@ -100,7 +100,7 @@ def _aligned_ball(curve: Revolution, mirrors: list[Plane]) -> Revolution:
 
 def _half_profile(curve: Revolution, mirror: Plane, level: float, solid: bool) -> Revolution:
     """The pieces of a profile that lie on the kept side of z = level."""
-    pieces = [part for piece in curve.profile for part in _split_at(piece, level)]
+    pieces = [part for piece in curve.profile for part in split_at(piece, level)]
     upward = curve.matrix[mirror.axis, 2] > 0.0
     side = np.array([_above(piece, level, EXACT * _size(curve)) for piece in pieces])
     side = side if upward else -side
@@ -139,8 +139,8 @@ def _own_image(pieces: list[Piece], level: float, tolerance: float) -> bool:
     return bool((apart.min(axis=1) <= tolerance).all() and close.all())
 
 
-def _split_at(piece: Piece, level: float) -> list[Piece]:
-    """A piece cut where it passes through z = level."""
+def split_at(piece: Piece, level: float) -> list[Piece]:
+    """Pieces of one cut where it passes through z = level."""
     cuts = sorted(t for t in _crossings(piece, level) if 1e-9 < t < 1.0 - 1e-9)
     stops = [0.0, *cuts, 1.0]
     return [_between(piece, a, b, level) for a, b in itertools.pairwise(stops)]

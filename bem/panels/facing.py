@@ -15,6 +15,7 @@ import numpy as np
 from bem.geometry.flat_faces import FLATNESS
 from bem.geometry.parts import INTERFACE
 from bem.geometry.planes import NO_PLANES, Planes
+from bem.panels.layer_walls import layer_walls, with_layer_mirrors
 from bem.panels.planar import Patch
 
 NEAR = 0.5
@@ -87,7 +88,7 @@ class FacingTable:
         sizes: (n,).
         bodies: (n,) body of each; images of opposite sign count as one of their own.
         least: smaller patches are not looked at.
-        planes: grounded and mirror planes; a wall in a mirror is no rim.
+        planes: grounded and mirror planes, and layers; a wall in a mirror is no rim.
         coincidence: faces nearer to each other than this touch.
     """
 
@@ -105,7 +106,8 @@ class FacingTable:
         cls, patches: list[Patch], planes: Planes = NO_PLANES, coincidence: float = 0.0
     ) -> FacingTable:
         """Table of the patches of all parts, followed by their images."""
-        patches = [*patches, *(image for patch in patches for image in _images(patch, planes))]
+        every = [(patch, where) for patch in patches for where in with_layer_mirrors(planes)]
+        patches = [*patches, *(image for each in every for image in _images(*each))]
         sizes = np.array([p.size for p in patches])
         return cls(
             patches,
@@ -175,7 +177,7 @@ class FacingTable:
         return [s for s in seen if s.body != self.patches[k].owner.body]
 
     def walls(self, k: int) -> Walls:
-        """Outline and shadows of patch k."""
+        """Outline and shadows of patch k, and planes between layers that cut it."""
         patch = self.patches[k]
         ends, gap = patch.edges, np.full(len(patch.edges), np.inf)
         outline = len(ends)
@@ -188,6 +190,8 @@ class FacingTable:
             )
             ends = np.concatenate([ends, shadow.edges[new]])
             gap = np.concatenate([gap, shadow.gap[new]])
+        cuts = layer_walls(patch, self.planes.layers)
+        ends, gap = np.concatenate([ends, cuts]), np.append(gap, np.full(len(cuts), np.inf))
         gap[self.planes.mirrored(patch.lift(ends), FLATNESS * patch.size)] = np.inf
         return Walls(ends, np.arange(len(ends)) < outline, gap)
 

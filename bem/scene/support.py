@@ -11,11 +11,13 @@ def check_support(scene: Scene) -> None:
     """Refuse what no solver knows.
 
     Raises:
-        InputError: the scene has flat layers, or dielectrics and mirror planes.
+        InputError: the scene has dielectrics and flat layers or mirror planes.
     """
-    kind = "half_space" if scene.half_space else "flat_layers"
+    if not scene.dielectrics:
+        return
+    names = listed(d.name for d in scene.dielectrics[:4])
     if scene.stack is not None:
-        raise InputError(f"{kind}: only scenes without half-space and layers are solved")
-    if scene.dielectrics and scene.planes.mirrors:
-        names = listed(d.name for d in scene.dielectrics[:4])
+        kind = "half_space" if scene.half_space else "flat_layers"
+        raise InputError(f"{kind}: found with the dielectrics {names}; drop it, or draw the layers")
+    if scene.planes.mirrors:
         raise InputError(f"mirror_plane: found with the dielectrics {names}; drop it")
