@@ -25,6 +25,7 @@ from bem.extraction.extract import (
     warnings_of,
 )
 from bem.extraction.facets import facet_lines, facet_record
+from bem.extraction.layer_check import check_layers
 from bem.extraction.lockstep import Carrier, Lockstep
 from bem.extraction.loop import Limits, Run
 from bem.extraction.marking import Goal
@@ -204,6 +205,7 @@ def _of_scenes(before: Scene, after: Scene, asked: Asked, effort: Effort) -> Com
     limits = Limits(effort.max_panels, MemoryPlan.of(effort.memory, 2))
     mesh = forth.start(limits.check_start)
     back = Counterparts.of(after, before)
+    check_layers(before, mesh)
     finer = None if back.motionless else back.start(limits.check_start)
     if finer is not None and len(finer.conductor) > len(mesh.conductor):
         task = _Task(after, before, back, lines[::-1])

@@ -9,6 +9,8 @@ import numpy as np
 
 from bem.errors import UsageError
 from bem.extraction.scaled import ScaledScene
+from bem.geometry.layers import Layers
+from bem.geometry.surface import Surface
 from bem.geometry.wording import listed
 from bem.panels.mesh import Body, Mesh
 from bem.panels.motion import ByFaces, Motion, loosened, motion_of, redrawn
@@ -57,7 +59,11 @@ class Counterparts:
         """Match two scenes with the same conductors in the same order."""
         first = ScaledScene.of(before)
         second = ScaledScene.of(after, first)
-        motions = list(map(motion_of, first.surfaces, second.surfaces))
+        motions = [
+            None if _cut_elsewhere((a, first.planes.layers), (b, second.planes.layers)) else motion
+            for a, b in zip(first.surfaces, second.surfaces, strict=True)
+            for motion in [motion_of(a, b)]
+        ]
         return cls(first, second, (_shells(before), _shells(after)), motions)
 
     @property
@@ -88,6 +94,18 @@ class Counterparts:
         motions = [motion for motion in self.motions if motion is not None]
         bodies = _bodies(mesh, self.second, self.hollow[1])
         return transported(mesh, Other(motions, bodies, self.second.planes))
+
+
+def _cut_elsewhere(
+    first: tuple[Surface, Layers | None], second: tuple[Surface, Layers | None]
+) -> bool:
+    """Whether planes between layers cut a body, in other places before than after."""
+    (a, before), (b, after) = first, second
+    crossed = [layers is not None and layers.cut(s.bounds) for s, layers in (first, second)]
+    if not any(crossed) or before is None or after is None:
+        return any(crossed)
+    alike = np.array_equal(a.vertices, b.vertices) and before.planes == after.planes
+    return not (alike and before.axis == after.axis)
 
 
 def _bodies(mesh: Mesh, scaled: ScaledScene, hollow: list[int]) -> tuple[Body, ...]:

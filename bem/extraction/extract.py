@@ -15,6 +15,7 @@ from bem import __version__
 from bem.errors import SolutionError, UsageError
 from bem.extraction.audit import Audit, audit
 from bem.extraction.facets import facet_lines, facet_record
+from bem.extraction.layer_check import check_layers, layer_record
 from bem.extraction.loop import Limits, RoundState, Run
 from bem.extraction.lossy import with_losses
 from bem.extraction.marking import Goal
@@ -82,6 +83,7 @@ def extract(
     scaled = ScaledScene.of(scene)
     limits = Limits(max_panels, MemoryPlan.of(memory))
     mesh = starting_mesh(scene, scaled, limits)
+    check_layers(scene, mesh)
     solve = solver_of(mesh, scaled.permittivity)
     run = Run(len(scene.conductors), goal, limits, report, started=started, solve=solve)
     with use_threads(threads) as used:
@@ -104,6 +106,7 @@ def extract(
         "relative_permittivity": scene.relative_permittivity,
         **planes_record(scene.planes),
         **media_record(scene),
+        **layer_record(run.rounds[-1].solution),
         "operator": "dense",
         "facets": facets,
     }

@@ -131,6 +131,10 @@ def with_losses(
         UsageError: there is no medium with losses.
     """
     media = [scene.surroundings, *(d.material for d in scene.dielectrics)]
+    if frequencies and scene.stack is not None:
+        raise UsageError(
+            "frequencies: found some with flat layers, which have no losses here; drop them"
+        )
     if frequencies and not any(medium.lossy for medium in media):
         raise UsageError(
             "frequencies: found some, but no medium has losses; give a loss_tangent or a "

@@ -51,6 +51,20 @@ class Layers:
         ends = (-np.inf, *self.planes, np.inf)
         return float(ends[layer]), float(ends[layer + 1])
 
+    def cut(self, bounds: np.ndarray) -> bool:
+        """Whether a plane between layers runs through a box, bounds (2, 3)."""
+        low, high = np.asarray(bounds)[:, self.axis]
+        return any(low < plane < high for plane in self.between)
+
+    def crossed(self, corners: np.ndarray, tolerance: float) -> np.ndarray:
+        """(n,) whether a plane between layers runs through panels (n, m, 3)."""
+        at = np.asarray(corners)[..., self.axis]
+        low, high = at.min(axis=1) + tolerance, at.max(axis=1) - tolerance
+        found = np.zeros(len(at), dtype=bool)
+        for plane in self.between:
+            found |= (low < plane) & (plane < high)
+        return found
+
     def layer_of(self, points: np.ndarray) -> np.ndarray:
         """(n,) layer of points (n, 3); one in a plane counts to the outermost of both layers.
 
