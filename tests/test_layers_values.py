@@ -62,11 +62,11 @@ def test_a_plate_in_the_plane(permittivity: float) -> None:
     check(over_half_space(bem.plate(1.0, 1.0), at(0, 0, 0), permittivity), want, 1e-6 * want)
 
 
-@pytest.mark.parametrize("turned", [False, True])
-def test_flat_faces_are_cut_at_the_plane(turned: bool) -> None:
-    """A cube half sunk: L0 (1 + e)/2; the plane runs through its faces, also on a corner of it."""
+@pytest.mark.parametrize("axis", [(0, 0, 1), (1, 0, 0)])
+def test_flat_faces_are_cut_at_the_plane(axis: tuple[float, float, float]) -> None:
+    """A cube half sunk: L0 (1 + e)/2; the plane runs through its faces, or through its edges."""
     shape = bem.box(1.0, 1.0, 1.0, center=(0.0, 0.0, 0.0))
-    place = bem.Place(turn_axis=(1, -1, 0), turn_degrees=54.7356) if turned else at(0, 0, 0)
+    place = bem.Place(turn_axis=axis, turn_degrees=45)
     check(over_half_space(shape, place, 4.0), 2.5 * CUBE)
 
 
