@@ -185,7 +185,7 @@ def test_bodies_that_cannot_be_cut_are_refused() -> None:
 
 
 def test_bodies_across_or_behind_grounded_layers_are_refused() -> None:
-    for height, message in ((0.4, "crosses by"), (-2.0, "lies below the grounded plane z = 0 mm")):
+    for height, message in ((0.4, "crosses by"), (-2.0, "lies behind the grounded plane z = 0 mm")):
         scene = bem.Scene(unit="mm").set_flat_layers(
             from_z=0.0, thickness=[1.0], relative_permittivity=[4.0], grounded_below=True
         )
