@@ -7,8 +7,7 @@ With (X, Y, Z) the position of x in the frame of the panel and r its distance fr
     n r^2 d_pq = (2n + 1) (X d_p-1,q + Y d_p,q-1) - (n + 1) (d_p-2,q + d_p,q-2),
 
 the recurrences of the polynomials of Legendre and of Gegenbauer (1874). Layers of a function are
-these sums over its moments: to the fourth order where the panel is ``far``, to the third where
-it is ``distant``, for which there are also fewer samples of the target.
+these sums over its moments, to the fourth order here and to the third in ``mixed_lanes``.
 """
 
 from __future__ import annotations
@@ -17,7 +16,7 @@ import math
 
 from bem.compiled import njit
 
-ORDER, DISTANT_ORDER = 4, 3
+ORDER = 4
 POWERS = [(n - q, q) for n in range(ORDER + 1) for q in range(n + 1)]
 """Powers of both coordinates, by rising order: 1, x, y, xx, xy, yy, xxx, ..."""
 FAST = {"contract", "reassoc", "nsz", "arcp"}
@@ -54,31 +53,41 @@ def _fourth(x, y, up, down, second, third):
 
 
 @njit(inline="always")
-def _coefficients(x, y, w, c0, kind):
-    """Orders 1 to 4 above c0; x and y are divided by r^2, w = 1/r^2; kind 0: c, 2: d."""
+def three_orders(x, y, w, c0, kind):
+    """Orders 1 to 3 above c0; x and y are divided by r^2, w = 1/r^2; kind 0: c, 2: d."""
     first = ((1 + kind) * x * c0, (1 + kind) * y * c0)
     second = _second(x, y, (3 + kind) / 2.0, (1 + kind) * w / 2.0, c0, first)
-    third = _third(x, y, (5 + kind) / 3.0, (2 + kind) * w / 3.0, first, second)
+    return first, second, _third(x, y, (5 + kind) / 3.0, (2 + kind) * w / 3.0, first, second)
+
+
+@njit(inline="always")
+def _four_orders(x, y, w, c0, kind):
+    first, second, third = three_orders(x, y, w, c0, kind)
     fourth = _fourth(x, y, (7 + kind) / 4.0, (3 + kind) * w / 4.0, second, third)
     return first, second, third, fourth
 
 
 @njit(inline="always")
-def _beyond(m, c, order):
-    """Part of the orders from 2 on; ``m`` the moments of one function, ``c`` coefficients."""
-    _, second, third, fourth = c
+def upper_two(m, c):
+    """Part of the orders 2 and 3; ``m`` the moments of one function, ``c`` coefficients."""
+    _, second, third = c[:3]
     total = m[3] * second[0] + m[4] * second[1] + m[5] * second[2]
-    total += m[6] * third[0] + m[7] * third[1] + m[8] * third[2] + m[9] * third[3]
-    if order > 3:
-        total += m[10] * fourth[0] + m[11] * fourth[1] + m[12] * fourth[2]
-        total += m[13] * fourth[3] + m[14] * fourth[4]
-    return total
+    total += m[6] * third[0] + m[7] * third[1]
+    return total + m[8] * third[2] + m[9] * third[3]
 
 
 @njit(inline="always")
-def _sloped(m, c, order):
-    """Sum for a function without mean."""
-    return m[1] * c[0][0] + m[2] * c[0][1] + _beyond(m, c, order)
+def slope(m, c):
+    """Part of the order 1."""
+    return m[1] * c[0][0] + m[2] * c[0][1]
+
+
+@njit(inline="always")
+def _upper(m, c):
+    """Part of the orders 2 to 4."""
+    fourth = c[3]
+    total = m[10] * fourth[0] + m[11] * fourth[1] + m[12] * fourth[2]
+    return upper_two(m, c) + total + m[13] * fourth[3] + m[14] * fourth[4]
 
 
 @njit(inline="always")
@@ -106,53 +115,27 @@ def _start(j, panels, points, block, k):
     return along * w, across * w, w, c0, height * w * c0
 
 
-@njit(inline="always", error_model="numpy")
-def _constant(j, moments, panels, points, block, work, order):
-    one = _of(moments, j % moments.shape[0], 0)
-    for k in range(work.shape[1]):
-        x, y, w, c0, d0 = _start(j, panels, points, block, k)
-        work[3, k] = one[0] * c0 + _beyond(one, _coefficients(x, y, w, c0, 0.0), order)
-        work[4, k] = one[0] * d0 + _beyond(one, _coefficients(x, y, w, d0, 2.0), order)
-
-
-@njit(inline="always", error_model="numpy")
-def _double(j, moments, panels, points, block, work, order):
-    s = j % moments.shape[0]
-    m0, m1, m2 = _of(moments, s, 0), _of(moments, s, 1), _of(moments, s, 2)
-    m3, m4, m5 = _of(moments, s, 3), _of(moments, s, 4), _of(moments, s, 5)
-    for k in range(work.shape[1]):
-        x, y, w, _, d0 = _start(j, panels, points, block, k)
-        d = _coefficients(x, y, w, d0, 2.0)
-        work[4, k] = m0[0] * d0 + _beyond(m0, d, order)
-        work[5, k] = _sloped(m1, d, order)
-        work[6, k] = _sloped(m2, d, order)
-        work[7, k] = _beyond(m3, d, order)
-        work[8, k] = _beyond(m4, d, order)
-        work[9, k] = _beyond(m5, d, order)
-
-
-@njit(inline="always", error_model="numpy")
-def _single(j, moments, panels, points, block, work, order):
-    s = j % moments.shape[0]
-    m0, m1, m2 = _of(moments, s, 0), _of(moments, s, 1), _of(moments, s, 2)
-    for k in range(work.shape[1]):
-        x, y, w, c0, _ = _start(j, panels, points, block, k)
-        c = _coefficients(x, y, w, c0, 0.0)
-        work[3, k] = m0[0] * c0 + _beyond(m0, c, order)
-        work[10, k] = _sloped(m1, c, order)
-        work[11, k] = _sloped(m2, c, order)
-
-
 @njit(cache=True, error_model="numpy", fastmath=FAST)
 def far_constant(j, moments, panels, points, block, work):
     """V[1] in row 3 and K[1] in row 4 of ``work``; arguments as of ``far_double``."""
-    _constant(j, moments, panels, points, block, work, ORDER)
+    one = _of(moments, j % moments.shape[0], 0)
+    for k in range(work.shape[1]):
+        x, y, w, c0, d0 = _start(j, panels, points, block, k)
+        work[3, k] = one[0] * c0 + _upper(one, _four_orders(x, y, w, c0, 0.0))
+        work[4, k] = one[0] * d0 + _upper(one, _four_orders(x, y, w, d0, 2.0))
 
 
 @njit(cache=True, error_model="numpy", fastmath=FAST)
 def far_single(j, moments, panels, points, block, work):
     """V of 1, f1, f2 in rows 3, 10, 11 of ``work``; arguments as of ``far_double``."""
-    _single(j, moments, panels, points, block, work, ORDER)
+    s = j % moments.shape[0]
+    m0, m1, m2 = _of(moments, s, 0), _of(moments, s, 1), _of(moments, s, 2)
+    for k in range(work.shape[1]):
+        x, y, w, c0, _ = _start(j, panels, points, block, k)
+        c = _four_orders(x, y, w, c0, 0.0)
+        work[3, k] = m0[0] * c0 + _upper(m0, c)
+        work[10, k] = slope(m1, c) + _upper(m1, c)
+        work[11, k] = slope(m2, c) + _upper(m2, c)
 
 
 @njit(cache=True, error_model="numpy", fastmath=FAST)
@@ -161,10 +144,19 @@ def far_double(j, moments, panels, points, block, work):
 
     Args:
         j: index of the panel, or of an image of it.
-        moments: (n, 6, 15) of ``far_panels``.
+        moments: (n, 6, 15) of ``source_moments``.
         panels: n panels and their images.
         points: (b, 3, k).
         block: which of the b blocks.
         work: (12, k) scratch; rows 4 to 9 get the result.
     """
-    _double(j, moments, panels, points, block, work, ORDER)
+    s = j % moments.shape[0]
+    m0, m1, m2 = _of(moments, s, 0), _of(moments, s, 1), _of(moments, s, 2)
+    m3, m4, m5 = _of(moments, s, 3), _of(moments, s, 4), _of(moments, s, 5)
+    for k in range(work.shape[1]):
+        x, y, w, _, d0 = _start(j, panels, points, block, k)
+        d = _four_orders(x, y, w, d0, 2.0)
+        work[4, k] = m0[0] * d0 + _upper(m0, d)
+        work[5, k] = slope(m1, d) + _upper(m1, d)
+        work[6, k] = slope(m2, d) + _upper(m2, d)
+        work[7, k], work[8, k], work[9, k] = _upper(m3, d), _upper(m4, d), _upper(m5, d)

@@ -50,6 +50,11 @@ def source_moments(panels: PanelArrays, basis: np.ndarray) -> np.ndarray:
     return np.ascontiguousarray(functions @ np.stack(powers, axis=2))
 
 
+def legendre(xi: np.ndarray, eta: np.ndarray) -> np.ndarray:
+    """P1(xi), P1(eta), P2(xi), P2(eta): (4, k)."""
+    return np.array([xi, eta, 1.5 * xi**2 - 0.5, 1.5 * eta**2 - 0.5])
+
+
 def _biquadratic(xi: np.ndarray, eta: np.ndarray) -> np.ndarray:
     """The nine products of powers up to the second, (k, 9)."""
     return np.stack([xi**p * eta**q for p in range(3) for q in range(3)], axis=1)
