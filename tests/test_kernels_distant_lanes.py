@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from panel_shapes import NEEDLE, SHAPES, SKEW, SQUARE, TRIANGLE, turned
+from panel_shapes import NEEDLE, SKEW, SQUARE, TRIANGLE, turned
 
 from bem.kernels.arrays import PanelArrays, bilinear, gauss_square
 from bem.kernels.basis import values
@@ -31,7 +31,7 @@ def rule(panels: PanelArrays, j: int) -> tuple[np.ndarray, ...]:
     return places, jacobian[0] * weight, np.stack([xi, eta]), at
 
 
-def tests_of(setup: MixedPanels, i: int) -> tuple[np.ndarray, np.ndarray]:
+def weighted_tests(setup: MixedPanels, i: int) -> tuple[np.ndarray, np.ndarray]:
     """Points and the six test functions times weights (6, m)."""
     points, weights, square, at = rule(setup.panels, i)
     if i >= setup.counts[0]:
@@ -43,7 +43,7 @@ def tests_of(setup: MixedPanels, i: int) -> tuple[np.ndarray, np.ndarray]:
 
 def exact(setup: MixedPanels, i: int, j: int) -> tuple[np.ndarray, np.ndarray]:
     """All tests of i against V of 1, f1, f2 (6, 3) and K of all functions (6, 6) of j."""
-    points, tests = tests_of(setup, i)
+    points, tests = weighted_tests(setup, i)
     places, weights, _, at = rule(setup.panels, j)
     functions = values(setup.basis[j : j + 1], at)[0] * weights
     apart = points[:, None] - places
@@ -87,3 +87,51 @@ def pair_errors(shapes: list[np.ndarray], distance: float, seed: int) -> tuple:
             error = np.abs(found[p] - true[p]) * r ** (1 + p) / area
             np.fmax(worst[p], error, out=worst[p])
     return worst
+
+
+def row_errors(worst: tuple) -> tuple[float, float]:
+    """Of the constant's row against f0, and of everything."""
+    single, double = worst
+    return max(single[0, 0], double[0, 0]), max(single.max(), double.max())
+
+
+PAIRS = {
+    "squares": [SQUARE, SQUARE],
+    "skew": [SKEW, TRIANGLE],
+    "needles": [NEEDLE, 0.7 * NEEDLE],
+}
+
+
+@pytest.mark.parametrize("seed", range(2))
+@pytest.mark.parametrize("name", PAIRS)
+def test_pairs_where_the_tier_begins(name: str, seed: int) -> None:
+    """Eight times the sum of the radii away, all kinds of panels, all that is stored."""
+    plain, all_rows = row_errors(pair_errors(PAIRS[name], 8.0, seed))
+    assert plain < 5e-6 and all_rows < 3e-5
+
+
+@pytest.mark.parametrize("seed", range(2))
+def test_small_panels_and_large(seed: int) -> None:
+    """The whole distance counts for one panel's size alone."""
+    assert row_errors(pair_errors([SQUARE, 0.05 * SQUARE], 8.0, seed))[1] < 6e-5
+    assert row_errors(pair_errors([0.05 * SQUARE, SQUARE], 8.0, seed))[1] < 2e-4
+
+
+@pytest.mark.parametrize("name", PAIRS)
+def test_errors_fall_with_the_third_power_at_least(name: str) -> None:
+    """The fourth where both panels are rectangles."""
+    near, distant = (pair_errors(PAIRS[name], d, 1) for d in (8.0, 16.0))
+    fall = 7.5 if name == "skew" else 13.0
+    for a, b in zip(near, distant, strict=True):
+        assert b.max() < a.max() / fall
+
+
+def test_lanes_hold_every_panel_once_and_kinds_apart() -> None:
+    corners = np.array([turned(SQUARE, k) + 4.0 * k for k in range(SPLIT + 5)])
+    setup = mixed_panels(corners[None], SPLIT, no_images(len(corners)))
+    chosen = np.array([0, 3, 4, 16, 17, 20])
+    for indices in (np.arange(SPLIT + 5), chosen, np.array([], dtype=int)):
+        lanes = lanes_of(setup.panels, setup.far.moments, indices, SPLIT)
+        assert np.array_equal(np.sort(lanes.source[lanes.source >= 0]), indices)
+        assert np.all((lanes.source < SPLIT) == (lanes.metal[:, None] | (lanes.source < 0)))
+        assert lanes.data.shape[:2] == (1, len(lanes.source))

@@ -17,6 +17,7 @@ import numpy as np
 
 from bem.kernels.arrays import PanelArrays, panel_arrays, side_frames
 from bem.kernels.basis import LINEAR, long_frames, panel_basis, values
+from bem.kernels.mixed_samples import FarPanels, far_panels
 from bem.kernels.targets import ETA, XI, Targets, make_targets
 
 TESTS = 4
@@ -53,6 +54,7 @@ class MixedPanels(NamedTuple):
         mean: (n, 4) means of the Legendre polynomials.
         counts: (2,) conductor and interface panels.
         images: their weights.
+        far: what the expansions know of the n panels.
     """
 
     panels: PanelArrays
@@ -62,6 +64,7 @@ class MixedPanels(NamedTuple):
     mean: np.ndarray
     counts: np.ndarray
     images: Images
+    far: FarPanels
 
 
 def no_images(count: int) -> Images:
@@ -85,14 +88,16 @@ def mixed_panels(corners: np.ndarray, conductors: int, images: Images) -> MixedP
     panels = panel_arrays(flat, axes)
     own = PanelArrays(*(part[:count] for part in panels))
     targets, basis = make_targets(own), panel_basis(own)
+    weights = _test_weights(own, targets, basis, conductors)
     return MixedPanels(
         panels=panels,
         basis=basis,
         points=targets.points,
-        weights=_test_weights(own, targets, basis, conductors),
+        weights=weights,
         mean=_polynomial_means(own, targets),
         counts=np.array([conductors, count - conductors]),
         images=images,
+        far=far_panels(own, basis, weights),
     )
 
 

@@ -65,7 +65,7 @@ def lanes_of(
     place = [panels.center[taken], panels.axes[taken].reshape(*taken.shape, 9)]
     shape = moments[taken % count, :, :_MOMENTS].reshape(*taken.shape, 6 * _MOMENTS)
     rows = np.concatenate([*place, shape], axis=-1).swapaxes(2, 3)
-    data = np.ascontiguousarray(rows).reshape(copies, len(source), -1)
+    data = np.ascontiguousarray(rows).reshape(copies, len(source), _ROWS * LANES)
     return Lanes(data, source, np.arange(len(source)) < len(parts[0]))
 
 

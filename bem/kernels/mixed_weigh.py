@@ -7,6 +7,7 @@ f0, f1, f2, and ``double`` (6, 6), tests against K of f0 to f5. Only what is sto
 from __future__ import annotations
 
 from bem.compiled import njit
+from bem.kernels.mixed_expansion import far_constant, far_double, far_single
 from bem.kernels.moments import constant_moments, double_moments, moments
 
 FAST = {"contract", "reassoc", "nsz"}
@@ -109,3 +110,20 @@ def sampled(source, setup, metal, block, points, weights, work, single, double):
     else:
         double_moments(source, setup.basis, setup.panels, points, block, work)
         weigh_double(block, weights, work, double)
+
+
+@njit(cache=True, error_model="numpy")
+def expanded(source, setup, metal, i, work, single, double):
+    """The same for a far source, its layers expanded, at the samples of panel i."""
+    panels, points, weights = setup.panels, setup.points, setup.weights
+    moments_of = setup.far.moments
+    if source % setup.basis.shape[0] < setup.counts[0]:
+        far_constant(source, moments_of, panels, points, i, work)
+        weigh_conductor(i, weights, work, single, double)
+        return
+    far_double(source, moments_of, panels, points, i, work)
+    if metal:
+        far_single(source, moments_of, panels, points, i, work)
+        weigh_both(i, weights, work, single, double)
+    else:
+        weigh_double(i, weights, work, double)
