@@ -22,6 +22,10 @@ METRES_PER = {
 """Length units that scenes and commands accept, in metres."""
 
 _FARAD_STEPS = [("aF", 1e-18), ("fF", 1e-15), ("pF", 1e-12), ("nF", 1e-9), ("uF", 1e-6), ("F", 1.0)]
+_SIEMENS_STEPS = [
+    *(("aS", 1e-18), ("fS", 1e-15), ("pS", 1e-12), ("nS", 1e-9)),
+    *(("uS", 1e-6), ("mS", 1e-3), ("S", 1.0)),
+]
 _METRE_STEPS = [("nm", 1e-9), ("um", 1e-6), ("mm", 1e-3), ("m", 1.0), ("km", 1e3)]
 
 
@@ -47,6 +51,11 @@ def _step(value: float, steps: list[tuple[str, float]]) -> tuple[str, float]:
         if size >= scale:
             chosen = (name, scale)
     return chosen
+
+
+def siemens_unit(value: float) -> tuple[str, float]:
+    """Name and size in siemens of a unit that shows ``value`` (siemens) as 1 to 1000 or so."""
+    return _step(value, _SIEMENS_STEPS)
 
 
 def farad_unit(value: float) -> tuple[str, float]:

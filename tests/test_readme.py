@@ -19,12 +19,24 @@ def blocks(language: str) -> list[str]:
 
 def test_the_python_example_prints_what_it_says() -> None:
     """Run as a user would, in a process of its own, and compare to the last digit shown."""
-    (example,) = blocks("python")
+    example = blocks("python")[-1]
     done = subprocess.run(
         [sys.executable, "-c", example], capture_output=True, text=True, timeout=300, check=False
     )
     assert done.returncode == 0, done.stderr
     assert done.stdout == blocks("text")[0]
+
+
+def test_the_example_with_a_dielectric_runs() -> None:
+    done = subprocess.run(
+        [sys.executable, "-c", blocks("python")[0]],
+        capture_output=True,
+        text=True,
+        timeout=600,
+        check=False,
+    )
+    assert done.returncode == 0, done.stderr
+    assert done.stdout.endswith("inside the bar: True\n")
 
 
 def test_the_exact_value_lies_inside_the_printed_bar() -> None:
@@ -47,11 +59,24 @@ def test_files_that_are_named_exist(path: str) -> None:
     assert (ROOT / path).exists()
 
 
-def test_scene_example_has_only_known_keys(tmp_path: Path) -> None:
-    """Reading it stops at the missing mesh file, not at a key."""
+@pytest.mark.parametrize(("number", "missing"), [(0, "probe_rod.stl"), (1, "electrode.stl")])
+def test_scene_examples_have_only_known_keys(tmp_path: Path, number: int, missing: str) -> None:
+    """Reading one stops at the missing mesh file, not at a key."""
     import bem
 
     scene = tmp_path / "scene.toml"
-    scene.write_text(blocks("toml")[0], encoding="utf-8")
-    with pytest.raises(bem.InputError, match="probe_rod.stl: no such file"):
+    scene.write_text(blocks("toml")[number], encoding="utf-8")
+    with pytest.raises(bem.InputError, match=f"{missing}: no such file"):
         bem.load_scene(scene)
+
+
+def test_the_example_with_dielectrics_reads(tmp_path: Path) -> None:
+    """With shapes instead of its files it is a scene with dielectrics and a half-space."""
+    import bem
+
+    box = "shape = { kind = 'box', lx = 1, ly = 1, lz = 1 }"
+    text = re.sub(r"^mesh = .*$", box, blocks("toml")[1], flags=re.M)
+    (tmp_path / "scene.toml").write_text(text, encoding="utf-8")
+    scene = bem.load_scene(tmp_path / "scene.toml")
+    assert scene.dielectrics[0].loss_tangent == 0.01
+    assert scene.half_space is not None

@@ -5,8 +5,9 @@ from __future__ import annotations
 import numpy as np
 
 from bem.exports.digits import Reading
+from bem.exports.layout import Row, Table, Unit
 from bem.exports.names import shown
-from bem.exports.tables import Row, Table, Unit, unit_of
+from bem.exports.tables import unit_of
 from bem.exports.text import table_text, wrapped
 from bem.results.result import CapacitanceResult
 

@@ -8,7 +8,8 @@ from typing import NamedTuple
 import numpy as np
 
 from bem.exports.digits import UNKNOWN, Reading
-from bem.exports.tables import ELSEWHERE, LONGEST_LIST, WIDEST_MATRIX, Row, Table, Unit, unit_of
+from bem.exports.layout import ELSEWHERE, WIDEST_MATRIX, Row, Table, Unit
+from bem.exports.tables import LONGEST_LIST, unit_of
 from bem.results.comparison import Comparison
 from bem.units import farad_unit
 

@@ -4,9 +4,10 @@ from __future__ import annotations
 
 from html import escape
 
+from bem.exports.layout import Row, Table
 from bem.exports.names import shown
 from bem.exports.summary import lines_of
-from bem.exports.tables import Row, Table, tables_of
+from bem.exports.tables import tables_of
 from bem.exports.text import PLUS_MINUS
 from bem.results.result import CapacitanceResult
 

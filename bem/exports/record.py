@@ -9,7 +9,9 @@ import numpy as np
 
 from bem.errors import InputError
 from bem.exports.arrays import pack, unpack
+from bem.exports.lossy_record import lossy_of, lossy_record
 from bem.exports.plain import plain, put_non_finite, take_non_finite
+from bem.results.lossy import Lossy
 from bem.results.result import CapacitanceResult, Reduction, Round
 from bem.scene.states import STATES
 
@@ -31,6 +33,8 @@ def to_record(result: CapacitanceResult, arrays: bool = True) -> dict[str, Any]:
         arrays: also the panels and densities.
     """
     record = {**_values(result), **_origin(result), **_wiring_record(result)}
+    if result.lossy:
+        record["frequencies"] = [lossy_record(entry) for entry in result.lossy]
     tidy, found = take_non_finite(plain(record), [])
     tidy["non_finite"] = found
     if arrays:
@@ -124,6 +128,7 @@ def from_record(record: Any) -> CapacitanceResult:
         **_history(entries, n),
         **_circumstances(entries),
         **_wiring(entries, n),
+        lossy=entries.later("frequencies", lambda found: _lossy(found, n), ()),
         **_unpacked(record),
     )
 
@@ -219,6 +224,10 @@ def _wiring(entries: _Entries, n: int) -> dict[str, Any]:
         "nodes": entries.later("nodes", nodes, ()),
         "reduction": entries.later("reduction", _reduction, None),
     }
+
+
+def _lossy(found: list[dict[str, Any]], n: int) -> tuple[Lossy, ...]:
+    return tuple(lossy_of(entry, n, _floats) for entry in found)
 
 
 def _all_or_none(found: list[Any], n: int) -> tuple[Any, ...]:

@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from bem.exports.lossy_tables import frequency_text
 from bem.exports.media import media_lines, surroundings_text
 from bem.exports.names import shown
 from bem.geometry.wording import metre_text
@@ -42,6 +43,7 @@ def lines_of(result: CapacitanceResult, sign: str) -> list[str]:
         *_bodies(result),
         *_planes(result),
         *media_lines(result.settings),
+        *_frequencies(result),
         _audit(result),
         *_changes(result),
         *(f"warning: {shown(line)}" for line in result.warnings),
@@ -155,6 +157,17 @@ def _planes(result: CapacitanceResult) -> list[str]:
             f"mirror planes {where}: all values are for the whole, each body together with its "
             f"images; 1/{2 ** len(mirrors)} of it was solved"
         )
+    return lines
+
+
+def _frequencies(result: CapacitanceResult) -> list[str]:
+    """Say what holds at frequencies, and where the tolerance was not reached."""
+    if not result.lossy:
+        return []
+    lines = ["at a frequency f: currents I = (G + j 2 pi f C) V; above, C without losses"]
+    missed = [frequency_text(entry.frequency) for entry in result.lossy if not entry.converged]
+    if missed:
+        lines.append(f"TOLERANCE NOT REACHED at {', '.join(_few_of(missed))}; raise max panels")
     return lines
 
 

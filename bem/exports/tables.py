@@ -4,51 +4,18 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass
 
 import numpy as np
 
-from bem.exports.digits import UNKNOWN, Reading, reading
+from bem.exports.digits import UNKNOWN, Reading
+from bem.exports.layout import ELSEWHERE, WIDEST_MATRIX, Row, Table, Unit
+from bem.exports.lossy_tables import lossy_tables
 from bem.exports.media import grounded_layers
 from bem.results.result import CapacitanceResult
 from bem.units import farad_unit
 
-WIDEST_MATRIX = 8
-"""More conductors than this: no matrix, but the self-capacitances and the largest couplings."""
-
 LONGEST_LIST = 40
 MOST_COUPLINGS = 20
-ELSEWHERE = "every entry is in the JSON and CSV files (--json, --csv; to_json, to_csv)"
-
-
-@dataclass(frozen=True)
-class Row:
-    """One line of a table: the conductors that it is about, and its cells."""
-
-    names: tuple[str, ...]
-    cells: tuple[Reading, ...]
-
-
-@dataclass(frozen=True)
-class Table:
-    """A titled table; every cell is a reading in the unit that the title names."""
-
-    title: str
-    heads: tuple[str, ...]
-    rows: tuple[Row, ...]
-    note: str = ""
-
-
-@dataclass(frozen=True)
-class Unit:
-    """A unit of capacitance, 10**power farad."""
-
-    name: str
-    power: int
-
-    def reading(self, value: float, bar: float) -> Reading:
-        """``value`` and ``bar`` (farad) in this unit."""
-        return reading(value, bar, self.power)
 
 
 def unit_of(result: CapacitanceResult) -> Unit:
@@ -64,7 +31,7 @@ def tables_of(result: CapacitanceResult) -> list[Table]:
     unit = unit_of(result)
     small = len(result.conductors) <= WIDEST_MATRIX
     first = [_matrix(result, unit), _row_sums(result, unit)] if small else [_own(result, unit)]
-    return [*first, *_couplings(result, unit)]
+    return [*first, *_couplings(result, unit), *lossy_tables(result, unit)]
 
 
 def outward(result: CapacitanceResult) -> str:

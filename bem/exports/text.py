@@ -6,9 +6,10 @@ import textwrap
 from collections.abc import Iterator
 
 from bem.exports.digits import Reading
+from bem.exports.layout import Row, Table
 from bem.exports.names import columns, padded, shown
 from bem.exports.summary import lines_of
-from bem.exports.tables import Row, Table, tables_of
+from bem.exports.tables import tables_of
 from bem.results.result import CapacitanceResult
 
 WIDTH = 80

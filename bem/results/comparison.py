@@ -9,6 +9,7 @@ from os import PathLike
 import numpy as np
 
 from bem.errors import UsageError
+from bem.results.lossy_reduction import lossy_in_order
 from bem.results.result import CapacitanceResult, Round
 
 
@@ -172,6 +173,7 @@ def in_order(result: CapacitanceResult, names: Sequence[str]) -> CapacitanceResu
         density=None if density is None else density[:, order],
         states=tuple(result.states[k] for k in order) if result.states else (),
         nodes=tuple(result.nodes[k] for k in order) if result.nodes else (),
+        lossy=tuple(lossy_in_order(entry, order) for entry in result.lossy),
     )
 
 

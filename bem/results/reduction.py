@@ -30,6 +30,7 @@ import numpy as np
 
 from bem.errors import SolutionError
 from bem.geometry.wording import shown
+from bem.results.lossy_reduction import Selection, reduced_lossy
 from bem.results.result import CapacitanceResult, Reduction, Round
 from bem.results.wiring import Wiring
 from bem.scene.states import FLOATING, GROUNDED, TERMINAL
@@ -178,6 +179,7 @@ def reduced(result: CapacitanceResult, wiring: Wiring) -> CapacitanceResult:
         reduction=_record(result, wiring),
         panel_conductor=_owners(result, wiring),
         density=None if result.density is None else result.density @ weights,
+        lossy=tuple(reduced_lossy(e, Selection(nodes.kept, nodes.floating)) for e in result.lossy),
     )
     *earlier, last = result.rounds
     rounds = [_round(entry, entry.error.sum(axis=1), nodes, small) for entry in earlier]
