@@ -187,6 +187,7 @@ class Revolution:
         turn: part of the full turn that is there, from u = 0: 1, or 1/2 or 1/4 where planes of
             symmetry through the axis stand for the rest.
         cut: whether the profile is cut short at its start, and at its end, by a plane of symmetry.
+        joined: whether other surfaces go on from its start, and from its end.
     """
 
     profile: tuple[Piece, ...]
@@ -194,6 +195,7 @@ class Revolution:
     shift: np.ndarray
     turn: float = 1.0
     cut: tuple[bool, bool] = (False, False)
+    joined: tuple[bool, bool] = (False, False)
 
     def __post_init__(self) -> None:
         # The body is its own mirror image in y, so a proper map to the same surface exists.
@@ -222,7 +224,8 @@ class Revolution:
     def free_rims(self) -> tuple[bool, bool]:
         """Whether the surface has a free rim at s = 0, and at s = K."""
         (at_start, at_end), (cut_start, cut_end) = self.poles, self.cut
-        return not (self.loops or at_start or cut_start), not (self.loops or at_end or cut_end)
+        start, end = at_start or cut_start or self.joined[0], at_end or cut_end or self.joined[1]
+        return not (self.loops or start), not (self.loops or end)
 
     def point(self, u: np.ndarray | float, s: np.ndarray | float) -> np.ndarray:
         """(..., 3): points of the placed surface; ``u`` and ``s`` broadcast."""

@@ -117,7 +117,7 @@ def _recurved(before: Revolution, after: Revolution) -> Recurved | None:
         before.pieces == after.pieces
         and before.loops == after.loops
         and before.poles == after.poles
-        and (before.turn, before.cut) == (after.turn, after.cut)
+        and (before.turn, before.cut, before.joined) == (after.turn, after.cut, after.joined)
         and all(map(_alike, before.profile, after.profile))
     )
     if not alike:
