@@ -272,7 +272,7 @@ class Revolution:
     def reversed(self) -> Revolution:
         """Give the same surface with its normal on the other side."""
         backwards = tuple(piece.reversed() for piece in self.profile[::-1])
-        return replace(self, profile=backwards, cut=self.cut[::-1])
+        return replace(self, profile=backwards, cut=self.cut[::-1], joined=self.joined[::-1])
 
     def _mapped(self, x: np.ndarray) -> np.ndarray:
         # Written out: a matrix product may round one row differently from another.

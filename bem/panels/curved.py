@@ -34,6 +34,8 @@ LARGEST_BEND = np.pi / 3.0
 """Largest angle of an arc along the profile that a leaf of the starting mesh covers."""
 FEWEST_AROUND, MOST_AROUND = 8, 32
 """Range of the number of leaves around in a starting mesh that chooses it."""
+FEWEST_JOINED = 16
+"""The fewest where other surfaces go on, whose panels need not have their corners here."""
 ALIKE = 6
 """Decimals of the logarithm to which two triangulations count as equally good."""
 
@@ -554,7 +556,7 @@ def _start_counts(surface: Revolution, around: int | None) -> tuple[int, tuple[i
     rings = np.linalg.norm(np.roll(points, -1, axis=2) - points, axis=3).sum(axis=2).max(axis=1)
     lengths = np.linalg.norm(np.diff(points, axis=1), axis=3).sum(axis=1).mean(axis=1)
     if around is None:
-        around = FEWEST_AROUND
+        around = FEWEST_JOINED if any(surface.joined) else FEWEST_AROUND
         while around < MOST_AROUND and 4.0 * around * lengths.sum() < rings.max():
             around *= 2
     bends = np.array([piece.bend for piece in surface.profile])

@@ -69,6 +69,20 @@ def with_axis(ball: Revolution, normal: np.ndarray) -> Revolution:
     return replace(ball, matrix=matrix, shift=centre_of(ball) - matrix[:, 2] * arc.centre[1])
 
 
+def aligned(curve: Revolution) -> Revolution:
+    """The same surface with u = 0 where all that share its axis have it.
+
+    Points at equal u on circles that two surfaces share are then the same points.
+    """
+    up = np.cross(curve.matrix[:, 0], curve.matrix[:, 1])
+    up = up / np.linalg.norm(up)
+    aside = np.eye(3)[np.argmin(np.round(np.abs(up), 6))]
+    local = np.linalg.solve(curve.matrix, aside - (aside @ up) * up)
+    c, s = local[:2] / np.hypot(*local[:2])
+    turn = np.array([[c, -s, 0.0], [s, c, 0.0], [0.0, 0.0, 1.0]])
+    return replace(curve, matrix=curve.matrix @ turn)
+
+
 def seen_by(curve: Revolution, other: Revolution, tolerance: float) -> tuple[Piece, ...] | None:
     """Profile of another surface in the half-plane of ``curve``; None without a common axis.
 

@@ -19,7 +19,7 @@ import numpy as np
 from bem.geometry.parts import INTERFACE, METAL, SURROUNDINGS, Part
 from bem.geometry.regions.axes import with_suited_axis
 from bem.geometry.regions.chains import Stretch, chains, stretches
-from bem.geometry.regions.coaxial import scale_of
+from bem.geometry.regions.coaxial import aligned, scale_of
 from bem.geometry.regions.inside import inside
 from bem.geometry.regions.marks import Mark, boxes_meet, mark_of
 from bem.geometry.regions.notes import names_of
@@ -233,7 +233,7 @@ class _Round:
         conductor = INTERFACE if body.kind == "dielectric" else body.conductor
         if curve.profile == self.curve.profile:
             return Part(body.surface, conductor, *regions, self.index)
-        surface = replace(faceted(curve, AROUND), rounding=body.surface.rounding)
+        surface = replace(faceted(aligned(curve), AROUND), rounding=body.surface.rounding)
         return Part(surface, conductor, *regions, self.index)
 
     def overlaps(self, j: int) -> bool:
