@@ -245,13 +245,16 @@ def test_conductors_do_not_cut_each_other() -> None:
     assert signatures(found.parts) == [(0, M, 0, 0), (1, M, 0, 1)]
 
 
-def test_overlaps_are_told_and_nested_bodies_are_not() -> None:
+def test_overlaps_and_contacts_are_told_and_nested_bodies_are_not() -> None:
+    assert turned(CASES["stacked cylinders"].bodies, TOLERANCE).notes == [
+        "dielectric 1 touches dielectric 2 over 1.131 m^2"
+    ]
     assert turned(CASES["two coats"].bodies, TOLERANCE).notes == []
     assert turned(CASES["balls that overlap"].bodies, TOLERANCE).notes == [
-        "dielectric 1 overlaps dielectric 2: dielectric 2 counts"
+        "dielectric 1 overlaps dielectric 2: there dielectric 2 counts"
     ]
     assert turned(CASES["ball half in a cylinder"].bodies, TOLERANCE).notes == [
-        "dielectric 1 overlaps conductor 1: conductor 1 counts"
+        "dielectric 1 overlaps conductor 1: there conductor 1 counts"
     ]
 
 

@@ -20,13 +20,17 @@ NEAR = 2.0
 """Triangles further apart than this many tolerances do not meet."""
 
 
-def near_others(index: int, bodies: list[Facets], tolerance: float) -> dict[int, np.ndarray]:
+def near_others(
+    index: int, bodies: list[Facets], tolerance: float, apart: set[tuple[int, int]]
+) -> dict[int, np.ndarray]:
     """Pairs (n, 2) of a body's own triangles and those near them, for each other body."""
     own = bodies[index]
     return {
         k: near_pairs(own.tree, other.tree, NEAR * tolerance)
         for k, other in enumerate(bodies)
-        if k != index and boxes_meet(own, other, NEAR * tolerance)
+        if k != index
+        and (min(index, k), max(index, k)) not in apart
+        and boxes_meet(own, other, NEAR * tolerance)
     }
 
 
@@ -50,9 +54,11 @@ def boxes_meet(one: Facets, two: Facets, margin: float) -> bool:
     return bool(((low - margin <= two.bounds[1]) & (two.bounds[0] <= high + margin)).all())
 
 
-def scraps_of(index: int, bodies: list[Facets], tolerance: float) -> list[Scrap]:
-    """All scraps of a body."""
-    own, near = bodies[index], near_others(index, bodies, tolerance)
+def scraps_of(
+    index: int, bodies: list[Facets], tolerance: float, apart: set[tuple[int, int]]
+) -> list[Scrap]:
+    """All scraps of a body; pairs of bodies in ``apart``, the lower first, do not meet."""
+    own, near = bodies[index], near_others(index, bodies, tolerance, apart)
     whole, flags = matched(own, bodies, near, tolerance)
     scraps = _uncut(own, np.flatnonzero(whole[own.flat.label[own.owner]]), flags)
     for flat, touch in touches_of(own, near).items():
@@ -64,12 +70,13 @@ def scraps_of(index: int, bodies: list[Facets], tolerance: float) -> list[Scrap]
 def _uncut(own: Facets, triangles: np.ndarray, flags: np.ndarray) -> list[Scrap]:
     """Scraps of triangles, by their numbers, that hang together and meet the same bodies."""
     scraps = []
-    kinds, kind = np.unique(flags[triangles], axis=0, return_inverse=True)
-    for k, meets in enumerate(kinds):
+    told = np.column_stack([flags, own.covered[own.owner]])[triangles]
+    kinds, kind = np.unique(told, axis=0, return_inverse=True)
+    for k, (*meets, _) in enumerate(kinds):
         alike = triangles[kind.ravel() == k]
         _, piece = pieces_of(own.triangles[alike])
         order = np.argsort(piece, kind="stable")
         starts = np.flatnonzero(np.diff(piece[order], prepend=-1))
         groups = np.split(alike[order], starts[1:])
-        scraps += [replace(whole_scrap(own, group, 0), meets=meets) for group in groups]
+        scraps += [replace(whole_scrap(own, group, 0), meets=np.array(meets)) for group in groups]
     return scraps

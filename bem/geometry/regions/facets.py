@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
 
 from bem.geometry.flat_faces import FlatFaces
 from bem.geometry.rays import points_inside, ray_directions
+from bem.geometry.regions.inside import inside_curve
+from bem.geometry.revolved import Revolution
 from bem.geometry.surface import NO_CORNER, Surface
 from bem.geometry.topology import edges_of, open_edges, orient, pieces_of
 from bem.geometry.tree import Tree, build_tree
@@ -27,20 +29,25 @@ class Facets:
         rows: (f, 4) corners of the faces, a triangle repeating its last.
         flat: the same faces, before they were turned, grouped by flat face.
         hollow: whether no point counts as inside, as for a sheet or a shell.
+        curve: the true surface that the faces stand for, or None.
+        covered: (f,) faces of which the partition of curved bodies has taken care.
     """
 
     vertices: np.ndarray
     rows: np.ndarray
     flat: FlatFaces
     hollow: bool
+    curve: Revolution | None
+    covered: np.ndarray
 
     @classmethod
     def of(cls, surface: Surface, hollow: bool) -> Facets:
         """Facets of a surface; a curve that it may have does not count."""
         flat = FlatFaces.of(surface)
-        raw = cls(flat.vertices, flat.corners, flat, hollow)
+        covered = np.zeros(len(flat.corners), dtype=bool)
+        raw = cls(flat.vertices, flat.corners, flat, hollow, None, covered)
         rows = np.where(raw._turned()[:, None], reversed_rows(flat.corners), flat.corners)
-        return cls(flat.vertices, rows, flat, hollow)
+        return replace(raw, rows=rows)
 
     @cached_property
     def triangles(self) -> np.ndarray:
@@ -114,6 +121,8 @@ class Facets:
 
     def inside(self, points: np.ndarray) -> np.ndarray:
         """Which points (n, 3), none of them on the surface, lie inside closed pieces."""
+        if self.curve is not None:
+            return inside_curve(self.curve, points) & self.closed.all()
         low, high = self.bounds
         near = ((points >= low) & (points <= high)).all(axis=1)
         if near.any() and self.closed.any():

@@ -8,8 +8,8 @@ from typing import Literal
 
 import numpy as np
 
-from bem.geometry.fine import fine_facets
 from bem.geometry.parts import INTERFACE, METAL, SURROUNDINGS, Part
+from bem.geometry.regions.measures import measures
 from bem.geometry.surface import Surface
 
 Kind = Literal["metal", "skin", "dielectric"]
@@ -78,17 +78,20 @@ def _neighbours(part: Part) -> list[tuple[int, int]]:
 
 def _vector_areas(surface: Surface) -> tuple[np.ndarray, np.ndarray]:
     """Corners (t, 3, 3) of the facets and their vector areas (t, 3)."""
-    fine = surface if surface.curve is None else fine_facets(surface.curve)
-    corners = fine.vertices[fine.triangles]
+    corners = surface.vertices[surface.triangles]
     return corners, 0.5 * np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
 
 
 def _flux(part: Part) -> float:
     """A third of the flux of the position vector through a part."""
+    if part.surface.curve is not None:
+        return measures(part.surface.curve).volume
     corners, areas = _vector_areas(part.surface)
     return float(np.einsum("tx,tx->", corners.mean(axis=1), areas)) / 3.0
 
 
 def area_of(surface: Surface) -> float:
-    """Area of a surface, of fine facets if it is curved."""
+    """Area of a surface, the true one if it is curved."""
+    if surface.curve is not None:
+        return measures(surface.curve).area
     return float(np.linalg.norm(_vector_areas(surface)[1], axis=1).sum())

@@ -61,3 +61,9 @@ def whole_scrap(own: Facets, triangles: np.ndarray, bodies: int) -> Scrap:
         solid=bool(own.closed[best]),
         meets=np.zeros(bodies, dtype=np.int64),
     )
+
+
+def is_covered(scrap: Scrap, own: Facets) -> bool:
+    """Whether the partition of curved bodies has taken care of what a scrap stands for."""
+    rows = scrap.rows if scrap.flat == NOT_FLAT else own.flat.label == scrap.flat
+    return bool(own.covered[rows].all())

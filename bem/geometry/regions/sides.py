@@ -9,7 +9,7 @@ import numpy as np
 from bem.geometry.parts import INTERFACE, METAL, SURROUNDINGS
 from bem.geometry.regions.facets import Facets
 from bem.geometry.regions.partition import Solid
-from bem.geometry.regions.scraps import BEFORE, BEHIND, LIES_ON, Scrap
+from bem.geometry.regions.scraps import BEFORE, BEHIND, LIES_ON, Scrap, is_covered
 
 
 class Sides(NamedTuple):
@@ -56,8 +56,9 @@ def sides_of_scraps(
     behind, before = within | (flags & BEHIND > 0), within | (flags & BEFORE > 0)
     back, front = region_of(behind, numbers), region_of(before, numbers)
     lies_on = flags & LIES_ON > 0
-    first = lies_on.argmax(axis=1) == index
-    return Sides(back, front, first & _bounds(back, front, numbers[index]), behind, before, lies_on)
+    kept = (lies_on.argmax(axis=1) == index) & _bounds(back, front, numbers[index])
+    kept &= ~np.array([is_covered(scrap, bodies[index]) for scrap in scraps])
+    return Sides(back, front, kept, behind, before, lies_on)
 
 
 def _bounds(back: np.ndarray, front: np.ndarray, number: int) -> np.ndarray:

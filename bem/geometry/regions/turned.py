@@ -22,6 +22,7 @@ from bem.geometry.regions.chains import Stretch, chains, stretches
 from bem.geometry.regions.coaxial import aligned, scale_of
 from bem.geometry.regions.inside import inside
 from bem.geometry.regions.marks import Mark, boxes_meet, mark_of
+from bem.geometry.regions.measures import measures
 from bem.geometry.regions.notes import names_of
 from bem.geometry.regions.stand_ins import stand_in
 from bem.geometry.revolved import Revolution
@@ -52,7 +53,8 @@ class Turned(NamedTuple):
         stand_ins: per curved body the facets by which it cuts the faces of others.
         covered: per curved body, which of these facets (f,) ``parts`` stands for already.
         apart: pairs of bodies, the lower first, that do not cut each other, whatever facets say.
-        notes: one line for each body that loses its curve, and for each overlap of curved bodies.
+        notes: one line for each body that loses its curve, and on contacts and overlaps of
+            curved bodies that are apart.
     """
 
     parts: list[Part]
@@ -236,8 +238,19 @@ class _Round:
         surface = replace(faceted(aligned(curve), AROUND), rounding=body.surface.rounding)
         return Part(surface, conductor, *regions, self.index)
 
+    def contact_area(self, j: int) -> float:
+        """Area over which it touches another body."""
+        if j not in self.marks:
+            return 0.0
+        spans = self.marks[j].touching
+        touch = [any(_within(span, stretch) for span in spans) for stretch in self.line]
+        labels = [(0, 0) if here else None for here in touch]
+        return sum(measures(curve).area for _, curve in chains(self.curve, self.line, labels))
+
     def overlaps(self, j: int) -> bool:
-        """Whether it lies partly inside another body, and is cut by it."""
+        """Whether it is cut by another body, and lies partly inside."""
+        if j not in self.marks:
+            return False
         both = self.sides[:, :, j].all(axis=1)
         return bool(both.any() and not both.all())
 
@@ -264,7 +277,8 @@ def turned(bodies: Sequence[Solid], tolerance: float) -> Turned:
         stand_ins[k] = replace(bodies[k].surface, curve=None)
         covered[k] = np.zeros(len(stand_ins[k].faces), dtype=bool)
     parts = [part for r in rounds.values() for part in r.parts()]
-    return Turned(parts, stand_ins, covered, _apart(scene, rounds), _notes(scene, rounds))
+    apart = _apart(scene, rounds)
+    return Turned(parts, stand_ins, covered, apart, _notes(scene, rounds, apart))
 
 
 def _apart(scene: _Scene, rounds: dict[int, _Round]) -> set[tuple[int, int]]:
@@ -279,18 +293,20 @@ def _apart(scene: _Scene, rounds: dict[int, _Round]) -> set[tuple[int, int]]:
     }
 
 
-def _notes(scene: _Scene, rounds: dict[int, _Round]) -> list[str]:
+def _notes(scene: _Scene, rounds: dict[int, _Round], apart: set[tuple[int, int]]) -> list[str]:
+    """One line for each body that loses its curve; on contacts and overlaps among the others."""
     names = names_of(list(scene.bodies))
     lines = [SPOILT_LINE.format(name=names[k]) for k in sorted(scene.spoilt)]
-    for k, r in rounds.items():
-        for j in sorted(rounds):
-            if j in r.marks and r.overlaps(j) and not (j < k and rounds[j].overlaps(k)):
-                first, second = _by_rank(scene, k, j)
-                lines.append(f"{names[second]} overlaps {names[first]}: {names[first]} counts")
+    for i, j in sorted(pair for pair in apart if {*pair} <= {*rounds}):
+        area = rounds[i].contact_area(j)
+        if area > 0.0:
+            lines.append(f"{names[i]} touches {names[j]} over {area:.4g} m^2")
+        if rounds[i].overlaps(j) or rounds[j].overlaps(i):
+            first, second = _by_rank(scene, i, j)
+            lines.append(f"{names[second]} overlaps {names[first]}: there {names[first]} counts")
     return lines
 
 
 def _by_rank(scene: _Scene, i: int, j: int) -> tuple[int, int]:
-    """The body that counts where both are, and the other."""
-    low, high = min(i, j), max(i, j)
-    return (low, high) if scene.numbers[low] == METAL else (high, low)
+    """The body that counts where two are, the lower given first, and the other."""
+    return (i, j) if scene.numbers[i] == METAL else (j, i)
