@@ -32,6 +32,8 @@ NEIGHBOURS = 0.7
 """How much more a test on an interface of high contrast adds, as neighbours answer it: the series
 of the double layer's operator goes on with the square of the contrast (measured on coated cubes
 and on boxes standing on blocks)."""
+LAYER_ERROR = 2e-4
+"""Error of the double layer of linear potentials by samples, near and far together."""
 SAME = 1e-12
 """Permittivities closer than this, relative, are one: the interface does nothing."""
 
@@ -258,6 +260,12 @@ def _by_function(layout: Layout, values: np.ndarray) -> np.ndarray:
     return out
 
 
+def _by_unknown(layout: Layout, values: np.ndarray) -> np.ndarray:
+    """(N, k) coefficients of unknowns from those of panels (n, 3, k)."""
+    behind = values[layout.metal :].reshape(-1, values.shape[2])
+    return np.concatenate([values[: layout.metal, 0], behind])
+
+
 def _by_test(layout: Layout, values: np.ndarray) -> np.ndarray:
     """(4, n, k) residuals by direction: P1 and P2, or xy in halves and xx, yy on interfaces."""
     metal, k = layout.metal, values.shape[1]
@@ -315,7 +323,8 @@ def quadrature_effect(solution: MixedSolution) -> np.ndarray:
     """(k, k + 1) effect of rules and expansions on L.
 
     Single layer: the choice between both rows of a pair. Double layer: what region by region
-    was missed before it was put right, times how far the potential varies about there.
+    was missed before it was put right, times how far the potential varies about there, and a
+    part of what the linear terms of the potential do.
     """
     operator, layout = solution.operator, solution.operator.layout
     metal = layout.metal
@@ -329,7 +338,12 @@ def quadrature_effect(solution: MixedSolution) -> np.ndarray:
     near = operator.boundaries.nearest.max(axis=1)
     variation[:metal] = variation[near[:metal]]
     layers = np.abs(solution.charge[layout.order, 0]).T @ (missed[:, None] * variation)
-    return with_all(_symmetric(rows + far + layers))
+    turned = np.abs(_by_unknown(layout, solution.charge[layout.order]))
+    linear = solution.field[layout.order].copy()
+    linear[:, 0] = 0.0
+    stepped = np.abs(operator.stepped(_by_unknown(layout, linear)))
+    sampled = LAYER_ERROR * (turned.T @ (np.abs(operator.matrices.double) @ stepped))
+    return with_all(_symmetric(rows + far + layers + sampled))
 
 
 def rounding_effect(solution: MixedSolution) -> np.ndarray:

@@ -286,10 +286,11 @@ class MixedOperator:
 
     def layer(self, full: np.ndarray) -> np.ndarray:
         """Weighted double layer (N, k) of potentials (N, k), of conductors and interfaces."""
-        out = self.matrices.double @ self._stepped(full)
+        out = self.matrices.double @ self.stepped(full)
         return out + self._corrected(self.missed, self.layout.unknown, full)
 
-    def _stepped(self, full: np.ndarray) -> np.ndarray:
+    def stepped(self, full: np.ndarray) -> np.ndarray:
+        """Potentials (N, k) times D/(4 pi) of their panels."""
         return (self.layout.step[self.layout.unknown] / FOUR_PI)[:, None] * full
 
     def _corrected(self, missed: np.ndarray, panel: np.ndarray, full: np.ndarray) -> np.ndarray:
@@ -302,7 +303,7 @@ class MixedOperator:
         layout, kept = self.layout, self.matrices
         panel = layout.spread(TESTS, QUADRATIC)
         single = kept.single_tests @ _narrow(density)
-        double = kept.double_tests @ _narrow(self._stepped(full))
+        double = kept.double_tests @ _narrow(self.stepped(full))
         correction = self._corrected(self._missed(kept.double_tests, panel), panel, full)
         return -layout.turn[panel][:, None] * (single - double - correction)
 
