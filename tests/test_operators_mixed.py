@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from dielectric_scenes import with_dielectrics
 
 import bem
 from bem.extraction.mixed import MixedSolution, solve_dielectric
@@ -14,6 +13,16 @@ from bem.operators.mixed import FOUR_PI
 from bem.panels.mesh import Mesh
 
 FAR = 2.5
+
+
+def with_dielectrics(conductors, fillings):
+    """Scene with conductors c0, c1, ... and dielectrics d0, d1, ... of given permittivities."""
+    scene = bem.Scene(unit="m")
+    for k, surface in enumerate(conductors):
+        scene.add_conductor(f"c{k}", surface)
+    for k, (surface, permittivity) in enumerate(fillings):
+        scene.add_dielectric(f"d{k}", surface, relative_permittivity=permittivity)
+    return scene
 
 
 def at(surface, *shift):

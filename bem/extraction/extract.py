@@ -76,7 +76,7 @@ def extract(
     wanted = frequencies_of(frequencies)
     report = progress or (lambda _: None)
     report(Progress("checking the geometry", 0, 0, float("nan"), 0.0))
-    if must_compile():
+    if must_compile(mixed=bool(scene.dielectrics)):
         report(Progress("compiling kernels, first run only", 0, 0, float("nan"), 0.0))
     inspection = check_scene(scene)
     checked = time.perf_counter()
@@ -209,14 +209,19 @@ def check_counts(max_panels: int, memory: int | None) -> None:
         raise UsageError(f"memory: found {memory!r} bytes, needs a number of at least 1")
 
 
-def must_compile() -> bool:
-    """Whether the largest kernel is in no cache yet."""
-    from bem.compiled import FOLDER
-    from bem.kernels.pairs import fill_block
+def must_compile(mixed: bool = False) -> bool:
+    """Whether the largest kernel is in no cache yet.
 
-    if fill_block.signatures:
+    Args:
+        mixed: that for dielectrics, instead of that for conductors alone.
+    """
+    from bem.compiled import FOLDER
+    from bem.kernels import mixed as interfaces
+    from bem.kernels import pairs
+
+    if (interfaces if mixed else pairs).fill_block.signatures:
         return False
-    return not any(FOLDER.rglob("pairs.fill_block-*.nbi"))
+    return not any(FOLDER.rglob(f"{'mixed' if mixed else 'pairs'}.fill_block-*.nbi"))
 
 
 def _record(state: RoundState, farad: float) -> Round:
