@@ -107,3 +107,31 @@ def test_the_sleeve_takes_charge_off_the_rod(solved: dict[str, CapacitanceResult
     guarded = full.capacitance[rod, rod] + full.capacitance[rod, sleeve]
     alone = bare.capacitance[1, 1]
     assert guarded + full.error[rod, rod] + full.error[rod, sleeve] < alone - bare.error[1, 1]
+
+
+@pytest.fixture(scope="module")
+def strips() -> CapacitanceResult:
+    scene = bem.load_scene(MESHES / "board_pair" / "board_pair.toml")
+    return bem.extract(scene, tolerance=1e-2, threads=1)
+
+
+def test_the_scene_on_a_board_solves(strips: CapacitanceResult) -> None:
+    assert strips.converged
+    assert all(found["ok"] for found in strips.audit.values())
+    assert [body["name"] for body in strips.settings["dielectrics"]] == ["board"]
+    assert "dielectrics: board (4.4, loss tangent 0.02)" in str(strips)
+
+
+def test_strips_on_the_board_are_alike(strips: CapacitanceResult) -> None:
+    own, bar = np.diagonal(strips.capacitance), np.diagonal(strips.error)
+    assert abs(own[0] - own[1]) <= bar.sum()
+
+
+def test_the_board_raises_what_strips_have_to_the_ground(strips: CapacitanceResult) -> None:
+    """Between those without a board and those wholly in its medium, beyond the bars."""
+    scene = bem.load_scene(MESHES / "board_pair" / "board_pair.toml")
+    permittivity = scene.dielectrics.pop().relative_permittivity
+    bare = bem.extract(scene, tolerance=1e-2, threads=1)
+    low, high = strips.row_sum - strips.row_sum_error, strips.row_sum + strips.row_sum_error
+    assert np.all(low > bare.row_sum + bare.row_sum_error)
+    assert np.all(high < permittivity * (bare.row_sum - bare.row_sum_error))
