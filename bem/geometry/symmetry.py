@@ -36,6 +36,26 @@ def kept_part(curve: Revolution, mirrors: list[Plane], solid: bool) -> Revolutio
     Raises:
         GeometryError: a plane cuts the surface, which is not its own mirror image there.
     """
+    found = kept_share(curve, mirrors, solid, whole=True)
+    if found is None:
+        raise _asymmetric(mirrors[0])
+    return found
+
+
+def kept_share(
+    curve: Revolution, mirrors: list[Plane], solid: bool, whole: bool
+) -> Revolution | None:
+    """The same of a part of a surface, which need not be its own mirror image; maybe nothing.
+
+    Args:
+        curve: the surface.
+        mirrors: planes of symmetry.
+        solid: pieces that lie in a plane go.
+        whole: it must be its own mirror image.
+
+    Raises:
+        GeometryError: the planes do not map the surface onto itself.
+    """
     curve = _aligned_ball(curve, mirrors)
     across = []
     for mirror in mirrors:
@@ -46,7 +66,10 @@ def kept_part(curve: Revolution, mirrors: list[Plane], solid: bool) -> Revolutio
                 raise _asymmetric(mirror)
             across.append(mirror)
         elif _close(local, np.diag([1, 1, -1])) and np.abs(offset[:2]).max() <= EXACT * size:
-            curve = _half_profile(curve, mirror, 0.5 * float(offset[2]), solid)
+            half = _half_profile(curve, (mirror, 0.5 * float(offset[2])), solid, whole)
+            if half is None:
+                return None
+            curve = half
         else:
             raise _asymmetric(mirror)
     return _turned(curve, across) if across else curve
@@ -98,22 +121,44 @@ def _aligned_ball(curve: Revolution, mirrors: list[Plane]) -> Revolution:
     return replace(curve, matrix=matrix, shift=center - matrix[:, 2] * arc.centre[1])
 
 
-def _half_profile(curve: Revolution, mirror: Plane, level: float, solid: bool) -> Revolution:
-    """The pieces of a profile that lie on the kept side of z = level."""
+def off_plane(curve: Revolution, plane: Plane) -> Revolution | None:
+    """What is left of a surface on one side of a plane without its pieces that lie in it."""
+    local, offset = _local(curve, plane)
+    if not _close(local, np.diag([1, 1, -1])):
+        return curve
+    level, pieces = 0.5 * float(offset[2]), list(curve.profile)
+    slack = EXACT * (np.abs(offset).max() + _size(curve))
+    stay = np.array([_above(piece, level, slack) != 0 for piece in pieces])
+    return _chain(curve, pieces, stay, plane)
+
+
+def _half_profile(
+    curve: Revolution, mirror: tuple[Plane, float], solid: bool, whole: bool
+) -> Revolution | None:
+    """The pieces of a profile that lie on the kept side of a plane, z = level in local ones."""
+    plane, level = mirror
     pieces = [part for piece in curve.profile for part in split_at(piece, level)]
-    upward = curve.matrix[mirror.axis, 2] > 0.0
+    upward = curve.matrix[plane.axis, 2] > 0.0
     side = np.array([_above(piece, level, EXACT * _size(curve)) for piece in pieces])
     side = side if upward else -side
-    if (side < 0).any() and not _own_image(pieces, level, EXACT * _size(curve)):
-        raise _asymmetric(mirror)
-    stay = (side > 0) | ((side == 0) & (not solid))
+    if whole and (side < 0).any() and not _own_image(pieces, level, EXACT * _size(curve)):
+        raise _asymmetric(plane)
+    return _chain(curve, pieces, (side > 0) | ((side == 0) & (not solid)), plane)
+
+
+def _chain(
+    curve: Revolution, pieces: list[Piece], stay: np.ndarray, plane: Plane
+) -> Revolution | None:
+    """The pieces that stay, which must follow each other, cut short where others are missing."""
     if stay.all():
         return curve
+    if not stay.any():
+        return None
     first = int(np.flatnonzero(stay & ~np.roll(stay, 1))[0]) if curve.loops else 0
     order = np.roll(np.arange(len(pieces)), -first)
     kept = np.flatnonzero(stay[order])
     if kept[-1] - kept[0] + 1 != len(kept):
-        raise _asymmetric(mirror)
+        raise _asymmetric(plane)
     chain = tuple(pieces[order[k]] for k in kept)
     low = curve.cut[0] if kept[0] == 0 and not curve.loops else True
     high = curve.cut[1] if kept[-1] == len(order) - 1 and not curve.loops else True

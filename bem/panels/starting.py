@@ -14,12 +14,12 @@ from bem.geometry.parts import METAL, SURROUNDINGS, Part
 from bem.geometry.planes import Planes
 from bem.geometry.surface import Surface
 from bem.geometry.topology import edges_of
+from bem.geometry.turning import curve_along
 from bem.panels.align import align_patches
 from bem.panels.fitted import FittedFamily
 from bem.panels.flat import FlatFamily
 from bem.panels.planar import Owner, Patch, patches_of
 from bem.panels.rims import Rims
-from bem.panels.turning import curve_along
 
 if TYPE_CHECKING:
     from bem.geometry.revolved import Revolution
