@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from bem.geometry.folding import folded
 from bem.geometry.layer_cut import cut_in_layers
-from bem.geometry.parts import INTERFACE, Part
+from bem.geometry.parts import Part
 from bem.geometry.planes import Planes
 from bem.geometry.surface import Surface
 from bem.scene.layering import planes_of
@@ -55,7 +55,7 @@ class ScaledScene:
         if planes.layers is not None:
             surfaces = [cut_in_layers(surface, planes.layers) for surface in surfaces]
         farad = 4.0 * np.pi * EPS0 * scene.relative_permittivity * length
-        parts, notes = _partition(scene, matrix, -center / length)
+        parts, notes = _partition(scene, (matrix, -center / length), planes)
         media = [scene.relative_permittivity, *(d.relative_permittivity for d in scene.dielectrics)]
         return cls(
             surfaces,
@@ -71,26 +71,30 @@ class ScaledScene:
 
 
 def _partition(
-    scene: Scene, matrix: np.ndarray, shift: np.ndarray
+    scene: Scene, move: tuple[np.ndarray, np.ndarray], planes: Planes
 ) -> tuple[tuple[Part, ...], tuple[str, ...]]:
-    """Parts of all surfaces, moved by ``matrix @ x + shift``, and notes; none without dielectrics.
+    """Parts of all surfaces, and notes; none without dielectrics.
+
+    Bodies on the far side of a mirror plane are reflected first; those that it cuts take part
+    as a whole, and their parts are cut afterwards.
+
+    Args:
+        scene: in metres.
+        move: matrix and shift, x -> matrix @ x + shift, to scaled units.
+        planes: in these.
 
     Raises:
         GeometryError: a dielectric is not closed.
     """
     if not scene.dielectrics:
         return (), ()
+    from bem.geometry.part_folding import folded_parts
     from bem.geometry.regions.parted import parted
-    from bem.geometry.regions.partition import Solid
+    from bem.scene.regions import solids_of
 
-    solids = [
-        Solid(c.surface.placed(matrix, shift), "metal" if c.body == "solid" else "skin", k, c.name)
-        for k, c in enumerate(scene.conductors)
-    ]
-    for d in scene.dielectrics:
-        solids.append(Solid(d.surface.placed(matrix, shift), "dielectric", INTERFACE, d.name))
+    solids = [replace(s, surface=s.surface.placed(*move)) for s in solids_of(scene)]
     found = parted(solids, scene.coincidence)
-    return tuple(found.parts), tuple(found.notes)
+    return tuple(folded_parts(found.parts, planes, scene.coincidence)), tuple(found.notes)
 
 
 def _frame(scene: Scene) -> tuple[float, np.ndarray]:

@@ -13,19 +13,11 @@ from dataclasses import replace
 import numpy as np
 
 from bem.geometry.clip import clipped
-from bem.geometry.folding import reflected, side_of
 from bem.geometry.parts import INTERFACE, METAL, Part
 from bem.geometry.planes import Plane, Planes
 from bem.geometry.surface import NO_CORNER, Surface
 from bem.geometry.symmetry import kept_share, off_plane
 from bem.geometry.turning import curve_along
-
-
-def on_kept_side(surface: Surface, planes: Planes) -> Surface:
-    """A whole body, or its mirror image if it lies on the far side of a mirror plane."""
-    for mirror in planes.mirrors:
-        surface = reflected(surface, mirror) if side_of(surface, mirror) < 0 else surface
-    return surface
 
 
 def folded_parts(parts: list[Part], planes: Planes, tolerance: float) -> list[Part]:

@@ -11,7 +11,7 @@ def check_support(scene: Scene) -> None:
     """Refuse what no solver knows.
 
     Raises:
-        InputError: the scene has dielectrics and flat layers or mirror planes.
+        InputError: the scene has dielectrics and flat layers.
     """
     if not scene.dielectrics:
         return
@@ -19,5 +19,3 @@ def check_support(scene: Scene) -> None:
     if scene.stack is not None:
         kind = "half_space" if scene.half_space else "flat_layers"
         raise InputError(f"{kind}: found with the dielectrics {names}; drop it, or draw the layers")
-    if scene.planes.mirrors:
-        raise InputError(f"mirror_plane: found with the dielectrics {names}; drop it")
