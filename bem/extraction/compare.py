@@ -44,6 +44,10 @@ from bem.scene.plane_checks import planes_record
 from bem.scene.scene import Scene
 
 CHANGE_ACCURACY = 0.02
+WITH_DIELECTRICS = (
+    "scenes with dielectrics are solved each on panels of its own: errors do not cancel, and the "
+    "bars of both add up"
+)
 
 Side = Scene | CapacitanceResult
 """A scene, or what was computed of it before."""
@@ -194,6 +198,8 @@ def _of_scenes(before: Scene, after: Scene, asked: Asked, effort: Effort) -> Com
     if must_compile():
         effort.report(Progress("compiling kernels, first run only", 0, 0, float("nan"), 0.0))
     lines = [warnings_of(scene, check_scene(scene)) for scene in (before, after)]
+    if before.dielectrics or after.dielectrics:
+        return _independent(before, after, asked, effort, [WITH_DIELECTRICS])
     forth = Counterparts.of(before, after)
     if forth.motionless:
         names = listed([before.conductors[k].name for k in forth.motionless])

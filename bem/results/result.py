@@ -81,8 +81,8 @@ class CapacitanceResult:
         nodes: of each conductor, the node that it is tied to, or None; empty: none is tied.
         reduction: how this matrix came from a larger one, or None.
         panel_corners: (p, 4, 3) m, the last mesh; a triangle repeats its last corner.
-        panel_conductor: (p,) index of the conductor that owns each panel; after a reduction
-            -1 for grounded and floating ones.
+        panel_conductor: (p,) index of the conductor that owns each panel, -1 on the faces of
+            dielectrics; after a reduction also for grounded and floating ones.
         density: (p, n) C/m^2 per volt: column j for 1 V on conductor j, 0 V on the others.
         lossy: C and G at each frequency that was asked for.
     """
