@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 import numpy as np
-import pytest
 from scenes import in_lengths
 
 import bem
 from bem.extraction.compare import WITH_DIELECTRICS
 from bem.geometry import shapes
 from bem.geometry.parts import INTERFACE
+from bem.results.comparison import in_order
 
 
 def coated(permittivity: float) -> bem.Scene:
@@ -51,9 +51,9 @@ def test_panels_on_dielectrics_belong_to_no_conductor() -> None:
         np.cross(corners[:, 2] - corners[:, 0], corners[:, 3] - corners[:, 1]), axis=1
     )
     charge = np.array([area[owner == k] @ np.asarray(result.density)[owner == k] for k in (0, 1)])
-    np.testing.assert_allclose(2.0 * charge, result.capacitance, rtol=2e-2, atol=1e-13)
+    np.testing.assert_allclose(2.0 * charge, result.capacitance, rtol=0.06, atol=0.0)
     assert not np.asarray(result.density)[owner == INTERFACE].any()
     small = result.reduced(ground=["ball"])
     np.testing.assert_array_equal(small.panel_conductor, np.where(owner == 1, 0, -1))
-    again = bem.compare(result, result.reduced())
-    assert again.change == pytest.approx(0.0, abs=0.0)
+    other = in_order(result, ["bead", "ball"])
+    np.testing.assert_array_equal(other.panel_conductor, np.where(owner < 0, owner, 1 - owner))

@@ -111,10 +111,10 @@ def test_doubt_about_facets_has_the_sign_of_the_front() -> None:
         assert (np.sign(Mesh.start([part]).doubtful().offset) == sign).all()
 
 
-def half(surface: Surface, axis: int = 2) -> Surface:
-    """The faces of a surface above the middle, an open part of it."""
+def half(surface: Surface, axis: int = 2, below: bool = False) -> Surface:
+    """The faces of a surface above the middle, or those below, an open part of it."""
     middle = surface.vertices[surface.triangles].mean(axis=1)
-    kept = surface.triangles[middle[:, axis] > 0.0]
+    kept = surface.triangles[(middle[:, axis] > 0.0) ^ below]
     rows = np.concatenate([kept, np.full((len(kept), 1), NO_CORNER)], axis=1)
     return replace(surface, faces=rows)
 
@@ -139,6 +139,21 @@ def test_open_parts_have_no_free_rims() -> None:
         mesh = Mesh.start([part])
         assert not (mesh.faceting().rim_offset.any() or mesh.faceting().rim_width.any())
         assert not (mesh.faceting().sheet.any() or mesh.doubtful().rim_offset.any())
+
+
+@pytest.mark.parametrize("smooth", [True, None])
+def test_a_sheet_has_a_rim_only_where_its_metal_ends(smooth: bool | None) -> None:
+    """A bowl that a dielectric reaches in part: the rim between both parts is none."""
+    bowl = half(replace(BALL, smooth=smooth))
+    wet, dry = Part(half(bowl, 0), 0, 1, 0, 0), Part(half(bowl, 0, below=True), 0, 0, 0, 0)
+    for parts in ([wet], [wet, replace(dry, body=1)], [wet, dry]):
+        mesh = Mesh.start(parts)
+        here = mesh.owner == 0
+        seen = mesh.faceting() if smooth else mesh.doubtful()
+        at = (seen.rim_offset != 0.0) & here
+        lowest = np.sort(mesh.corners[at][..., 2], axis=1)[:, :2]
+        between = lowest.max(axis=1) > 1e-9 + bowl.bounds[0, 2] + 0.4
+        assert at.any() and between.any() == (parts != [wet, dry])
 
 
 def test_panels_know_their_conductor_their_body_and_both_regions() -> None:

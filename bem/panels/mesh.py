@@ -113,7 +113,7 @@ class Mesh:
         for k, surface in enumerate(surfaces):
             if isinstance(surface, Surface):
                 parts.append(whole(surface, k in skins, planes, k))
-        blanks = Blanks.of(parts, turned, accept)
+        blanks = Blanks.of(parts, turned, planes, accept)
         families, owners = families_of(blanks, planes, coincidence)
         accept(sum(len(owner) for owner in owners))
         bodies = [Body.of_part(part) for part in parts]

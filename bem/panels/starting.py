@@ -18,6 +18,7 @@ from bem.geometry.turning import curve_along
 from bem.panels.align import align_patches
 from bem.panels.fitted import FittedFamily
 from bem.panels.flat import FlatFamily
+from bem.panels.joined import with_joints
 from bem.panels.planar import Owner, Patch, patches_of
 from bem.panels.rims import Rims
 
@@ -57,7 +58,9 @@ class Blanks:
     fits: dict[int, Fit]
 
     @classmethod
-    def of(cls, parts: list[Part], turned: bool, accept: Callable[[int], None]) -> Blanks:
+    def of(
+        cls, parts: list[Part], turned: bool, planes: Planes, accept: Callable[[int], None]
+    ) -> Blanks:
         """Look at the faces of all parts; ``accept`` is told how many flat ones there are."""
         size: dict[int, float] = {}
         for part in parts:
@@ -69,7 +72,8 @@ class Blanks:
         }
         accept(sum(faces.count for faces in flat.values()))
         found = {k: fit_of(parts[k].surface, faces, turned) for k, faces in flat.items()}
-        return cls(parts, turned, flat, {k: fit for k, fit in found.items() if fit})
+        fits = {k: with_joints(fit, parts[k], parts, planes) for k, fit in found.items() if fit}
+        return cls(parts, turned, flat, fits)
 
     @property
     def fitted(self) -> list[int]:
