@@ -135,3 +135,15 @@ def test_the_board_raises_what_strips_have_to_the_ground(strips: CapacitanceResu
     low, high = strips.row_sum - strips.row_sum_error, strips.row_sum + strips.row_sum_error
     assert np.all(low > bare.row_sum + bare.row_sum_error)
     assert np.all(high < permittivity * (bare.row_sum - bare.row_sum_error))
+
+
+def test_the_probe_sees_the_grain(solved: dict[str, CapacitanceResult]) -> None:
+    """Rod to hopper is more than when empty, and less than if grain filled all of space."""
+    scene = bem.load_scene(MESHES / "grain_hopper" / "grain_full.toml")
+    result = bem.extract(scene, tolerance=1e-2, threads=1)
+    assert result.converged
+    value, bar = -result.capacitance[0, 1], result.error[0, 1]
+    bare, doubt = (array[0, 1] for array in (-solved["grain_hopper"].capacitance,
+                                             solved["grain_hopper"].error))  # fmt: skip
+    assert bare + doubt < value - bar
+    assert value + bar < scene.dielectrics[0].relative_permittivity * (bare - doubt)
