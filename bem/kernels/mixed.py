@@ -29,7 +29,7 @@ from bem.kernels.mixed_weigh import expanded, sampled
 from bem.kernels.moments import ROWS
 from bem.kernels.pairs import mirror
 from bem.kernels.parallel import sum_over_rows
-from bem.kernels.rim_samples import rim_samples
+from bem.kernels.rim_samples import UNCUT, rim_samples
 
 DISTANT, LEAST_FAR = 8.0, 2.5
 """Where the distant tier begins, for the nearest ``far``: the error of far expansions falls with
@@ -136,7 +136,7 @@ def _fill_image(i, image, setup, limits, origin, mutual, new):
     work = np.empty((ROWS, setup.points.shape[2]))
     single, double = np.zeros((6, 3)), np.zeros((6, 6))
     rows = (single.reshape((18, 1)), double.reshape((36, 1)))
-    rims = (rim_samples(i, setup, False), rim_samples(i, setup, True))
+    plain = rim_samples(i, setup, (UNCUT, UNCUT))
     count = 0
     for j in range(origin.size):
         weight, source = _weight(i, j, image, images), image * origin.size + j
@@ -150,7 +150,7 @@ def _fill_image(i, image, setup, limits, origin, mutual, new):
             points, weights = setup.points, setup.weights
             sampled(source, setup, metal, i, points, weights, work, single, double)
         else:
-            near_mixed(i, source, setup, rims, mutual, work, single, double)
+            near_mixed(i, source, setup, plain, mutual, work, single, double)
         count += distance <= limits[1]
         factors = (weight, weight * images.parity[image])
         _put(i, j, 0, setup.counts, factors, image == 0, rows[0], rows[1], new)

@@ -1,7 +1,6 @@
-"""Samples of a panel clustered at its rim, with its test functions, for near pairs.
+"""Samples of a panel clustered at its rim and at cuts, with its test functions, for near pairs.
 
-Nodes t of Gauss's rule are moved to 3 t^2 - 2 t^3, or, along a panel more than six times as
-long as wide and where a parallel panel is close, to 10 t^3 - 15 t^4 + 6 t^5.
+On each stretch between two cuts nodes t of Gauss's rule are moved to 3 t^2 - 2 t^3.
 """
 
 from __future__ import annotations
@@ -11,21 +10,23 @@ import numpy as np
 from bem.compiled import njit
 from bem.kernels.pairs import clustered_rule
 
-SLENDER = 6.0
-"""Ratio of sides beyond which the longer direction has more samples."""
-_FEW, _FEW_WEIGHT = clustered_rule(6, False)
-_MANY, _MANY_WEIGHT = clustered_rule(10, True)
+UNCUT = np.array([-1.0, 1.0])
+_WHOLE, _PART, _SMALL = clustered_rule(8, False), clustered_rule(6, False), clustered_rule(5, False)
+"""Rules for directions of one, two or three, and more stretches."""
 
 
 @njit(cache=True, error_model="numpy")
-def _nodes(i, panels, many):
-    """Nodes and weights in both directions."""
-    side = panels.sides[i, :, 2]
-    wide, tall = max(side[0], side[2]), max(side[1], side[3])
-    few, more = (_FEW, _FEW_WEIGHT), (_MANY, _MANY_WEIGHT)
-    u = more if many or wide > SLENDER * tall else few
-    v = more if many or tall > SLENDER * wide else few
-    return u, v
+def _nodes(cuts):
+    """Nodes and weights on (-1, 1), clustered at all cuts."""
+    rule = _WHOLE if cuts.size == 2 else _PART if cuts.size < 5 else _SMALL
+    each = rule[0].size
+    nodes, weights = np.empty(each * (cuts.size - 1)), np.empty(each * (cuts.size - 1))
+    for k in range(cuts.size - 1):
+        half = 0.5 * (cuts[k + 1] - cuts[k])
+        for q in range(each):
+            nodes[each * k + q] = cuts[k] + half * (1.0 + rule[0][q])
+            weights[each * k + q] = half * rule[1][q]
+    return nodes, weights
 
 
 @njit(cache=True, error_model="numpy")
@@ -62,20 +63,20 @@ def _place(corners, s, t):
 
 
 @njit(cache=True, error_model="numpy")
-def rim_samples(p, setup, many):
+def rim_samples(p, setup, cuts):
     """Samples of panel or image p.
 
     Args:
         p: index among panels and images.
         setup: the ``MixedPanels``.
-        many: ten samples in both directions, else six, or ten along a slender panel.
+        cuts: of both directions, as from ``rim_cuts``.
 
     Returns:
         points (1, 3, m), and test functions times integration weights (1, 6, m).
     """
     panels, count = setup.panels, setup.basis.shape[0]
     i = p % count
-    u, v = _nodes(p, panels, many)
+    u, v = _nodes(cuts[0]), _nodes(cuts[1])
     m = u[0].size * v[0].size
     points, weights = np.empty((1, 3, m)), np.empty((1, 6, m))
     corners, axes, center = panels.corners[p], panels.axes[p], panels.center[p]
