@@ -202,7 +202,7 @@ def test_potentials_of_conductors_are_those_of_the_conductors_alone() -> None:
     )
     origin = np.full(len(corners), -1)
     empty = pairs.Matrices(np.empty((0, 0)), np.empty((4, 0, 0), dtype=np.float32))
-    sources = pairs.Sources(panels, np.ones(1))
+    sources = pairs.Sources(panels, no_images(len(corners)), 0.0)
     pairs.fill(sources, make_targets(panels), REACH, origin, empty, alone)
     metal = len(corners)
     assert found.single[:metal] == pytest.approx(alone.single, rel=1e-12)
