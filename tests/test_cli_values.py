@@ -8,7 +8,7 @@ from typing import Any
 import pytest
 
 from bem.cli.pairs import match_pairs, read_pair
-from bem.cli.values import count, fraction, memory, positive
+from bem.cli.values import count, fraction, frequency, memory, positive
 from bem.errors import UsageError
 
 CONDUCTORS = ["probe rod", "wall", "a,b", "x=y", "Füllstand"]
@@ -135,3 +135,17 @@ def test_pairs_that_make_no_sense() -> None:
     assert "is given twice" in match_refusal("wall,probe rod=1%", "probe rod,wall=2%")
     ambiguous = ["a", "b,c", "a,b", "c"]
     assert "can be read in 2 ways" in match_refusal("a,b,c=1%", conductors=ambiguous)
+
+
+@pytest.mark.parametrize(
+    ("text", "value"),
+    [("50", 50.0), ("50Hz", 50.0), ("1.5 kHz", 1500.0), ("1MHz", 1e6), ("2.4ghz", 2.4e9)],
+)
+def test_frequency(text: str, value: float) -> None:
+    assert frequency("--frequency")(text) == pytest.approx(value, rel=1e-15)
+
+
+@pytest.mark.parametrize("text", ["", "0", "-1Hz", "1THz", "fast", "inf", "nan"])
+def test_frequency_that_is_refused(text: str) -> None:
+    with pytest.raises(UsageError, match="give a frequency above 0, such as 50Hz"):
+        frequency("--frequency")(text)

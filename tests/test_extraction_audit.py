@@ -12,7 +12,7 @@ import pytest
 from scenes import scene_of
 
 import bem
-from bem.extraction import loop
+from bem.extraction import rounds
 from bem.extraction.audit import WILD, WRONG_SIGN, audit
 from bem.extraction.estimate import Estimate
 from bem.extraction.extract import Limits, MemoryPlan
@@ -141,12 +141,12 @@ def test_a_lopsided_operator_is_caught(solved: SimpleNamespace) -> None:
 
 
 def doctor_the_solver(monkeypatch: pytest.MonkeyPatch, factor: float) -> None:
-    plain = loop.solve_round
+    plain = rounds.solve_round
 
     def solve(*arguments: Any) -> Solution:
         return doctored(plain(*arguments), lambda d: factor * d)
 
-    monkeypatch.setattr(loop, "solve_round", solve)
+    monkeypatch.setattr(rounds, "solve_round", solve)
 
 
 @pytest.mark.filterwarnings("ignore:invalid value encountered in sqrt")

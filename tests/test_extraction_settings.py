@@ -13,7 +13,7 @@ from scenes import moved, scene_of
 
 import bem
 from bem.extraction import extract as module
-from bem.extraction import loop
+from bem.extraction import rounds
 from bem.extraction.memory import MemoryPlan, readable
 from bem.extraction.progress import Progress
 from bem.extraction.threads import use_threads
@@ -126,7 +126,7 @@ def test_memory_refuses_before_anything_is_allocated(monkeypatch: pytest.MonkeyP
     def never(*arguments: Any) -> None:
         raise AssertionError("a round was begun")
 
-    monkeypatch.setattr(loop, "solve_round", never)
+    monkeypatch.setattr(rounds, "solve_round", never)
     scene = scene_of([moved(shapes.box(1, 1, 1)), moved(shapes.plate(1, 1), 0.0, (9, 9, 9))])
     tracemalloc.start()
     try:
@@ -202,7 +202,7 @@ def test_records_of_rounds_lead_to_the_result() -> None:
 
 def interrupted_at(number: int, monkeypatch: pytest.MonkeyPatch) -> None:
     """Have the solver interrupted in the round of that number, from one."""
-    plain, begun = loop.solve_round, []
+    plain, begun = rounds.solve_round, []
 
     def solve(*arguments: Any) -> Any:
         begun.append(1)
@@ -210,7 +210,7 @@ def interrupted_at(number: int, monkeypatch: pytest.MonkeyPatch) -> None:
             raise KeyboardInterrupt
         return plain(*arguments)
 
-    monkeypatch.setattr(loop, "solve_round", solve)
+    monkeypatch.setattr(rounds, "solve_round", solve)
 
 
 def test_an_interrupt_returns_the_best_result_so_far(monkeypatch: pytest.MonkeyPatch) -> None:
@@ -241,7 +241,7 @@ def test_an_interrupt_from_the_progress_call_counts_too() -> None:
 
 
 def broken_at(number: int, monkeypatch: pytest.MonkeyPatch) -> None:
-    plain, begun = loop.solve_round, []
+    plain, begun = rounds.solve_round, []
 
     def solve(*arguments: Any) -> Any:
         begun.append(1)
@@ -249,7 +249,7 @@ def broken_at(number: int, monkeypatch: pytest.MonkeyPatch) -> None:
             raise bem.SolutionError("not positive definite")
         return plain(*arguments)
 
-    monkeypatch.setattr(loop, "solve_round", solve)
+    monkeypatch.setattr(rounds, "solve_round", solve)
 
 
 def test_a_breakdown_late_keeps_the_result_and_early_does_not(
@@ -328,7 +328,7 @@ def test_a_scene_without_conductors_is_refused() -> None:
 
 
 def test_bodies_that_touch_are_refused_before_solving(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(loop, "solve_round", lambda *_: pytest.fail("a round was begun"))
+    monkeypatch.setattr(rounds, "solve_round", lambda *_: pytest.fail("a round was begun"))
     touching = scene_of([shapes.box(1, 1, 1), shapes.box(1, 1, 1, (1.0, 0.2, 0.0))])
     with pytest.raises(bem.GeometryError) as refusal:
         bem.extract(touching, threads=1)

@@ -58,6 +58,19 @@ def _add_scene_options(parser: argparse.ArgumentParser) -> None:
         type=values.positive("--surroundings-permittivity"),
         help="relative permittivity of the medium (default: the scene's, or 1)",
     )
+    _add_frequency(group)
+
+
+def _add_frequency(group: argparse._ArgumentGroup) -> None:
+    group.add_argument(
+        "--frequency",
+        metavar="FREQUENCY",
+        type=values.frequency("--frequency"),
+        action="append",
+        default=[],
+        help="also C and G with the losses of all media at this frequency, such as 50Hz or 1MHz; "
+        "may be repeated",
+    )
 
 
 def _add_accuracy_options(parser: argparse.ArgumentParser) -> None:
@@ -121,6 +134,7 @@ def _extract(
             memory=args.memory,
             threads=args.threads,
             progress=live,
+            frequencies=args.frequency,
         )
     finally:
         if live is not None:

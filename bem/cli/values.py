@@ -14,6 +14,7 @@ _BYTES = {
     **{name: 1000 ** (k + 1) for k, name in enumerate(["kB", "MB", "GB", "TB"])},
     **{name: 1024 ** (k + 1) for k, name in enumerate(["KiB", "MiB", "GiB", "TiB"])},
 }
+_HERTZ = {"": 1.0, "hz": 1.0, "khz": 1e3, "mhz": 1e6, "ghz": 1e9}
 _BYTES_OF = {name.lower(): size for name, size in _BYTES.items()}
 _AMOUNT = re.compile(r"\s*([0-9.eE+-]*[0-9.])\s*([A-Za-z]*)\s*")
 
@@ -42,6 +43,22 @@ def count(option: str) -> Callable[[str], int]:
         if not (digits.isascii() and digits.isdigit() and 0 < len(digits) < 19 and int(digits)):
             raise UsageError(f"{option}: found {text!r}; give a whole number of 1 or more")
         return int(digits)
+
+    return read
+
+
+def frequency(option: str) -> Callable[[str], float]:
+    """Reader of a frequency in Hz, written 50, 50Hz, 1.5kHz, 1MHz or 2.4GHz."""
+
+    def read(text: str) -> float:
+        found = _AMOUNT.fullmatch(text)
+        scale = _HERTZ.get(found[2].lower()) if found else None
+        value = _number(found[1]) * scale if found and scale else math.nan
+        if not 0.0 < value < math.inf:
+            raise UsageError(
+                f"{option}: found {text!r}; give a frequency above 0, such as 50Hz, 10kHz or 1MHz"
+            )
+        return value
 
     return read
 

@@ -17,7 +17,7 @@ from bem.extraction.audit import Audit, audit
 from bem.extraction.facets import facet_lines, facet_record
 from bem.extraction.layer_check import check_layers, layer_record
 from bem.extraction.loop import Limits, RoundState, Run
-from bem.extraction.lossy import with_losses
+from bem.extraction.lossy import check_losses, with_losses
 from bem.extraction.marking import Goal
 from bem.extraction.memory import MemoryPlan, count_of
 from bem.extraction.progress import Progress
@@ -64,7 +64,8 @@ def extract(
         The result; ``converged`` says whether all bars came below what was asked.
 
     Raises:
-        UsageError: a setting is out of range or names no conductor.
+        UsageError: a setting is out of range or names no conductor, or frequencies are given
+            though nothing depends on them.
         GeometryError: conductors touch, cross, or lie inside solid metal.
         MemoryRefused: the starting mesh alone exceeds the limit.
         InputError: the starting mesh alone exceeds ``max_panels``.
@@ -74,6 +75,8 @@ def extract(
     goal = goal_of(scene, tolerance, pairs or {})
     check_counts(max_panels, memory)
     wanted = frequencies_of(frequencies)
+    if wanted:
+        check_losses(scene)
     report = progress or (lambda _: None)
     report(Progress("checking the geometry", 0, 0, float("nan"), 0.0))
     if must_compile(mixed=bool(scene.dielectrics)):

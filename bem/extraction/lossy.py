@@ -116,6 +116,24 @@ def complex_estimate(rounds: Sequence[Sums]) -> Estimate:
     return Estimate(value, sum(parts.values()), parts, KAPPA_USUAL, facets)
 
 
+def check_losses(scene: Scene) -> None:
+    """Refuse frequencies that nothing depends on, and losses that are not solved.
+
+    Raises:
+        UsageError: no medium has losses, or there are flat layers.
+    """
+    if scene.stack is not None:
+        raise UsageError(
+            "frequencies: found some with flat layers, which have no losses here; drop them"
+        )
+    media = [scene.surroundings, *(d.material for d in scene.dielectrics)]
+    if not any(medium.lossy for medium in media):
+        raise UsageError(
+            "frequencies: found some, but no medium has losses; give a loss_tangent or a "
+            "conductivity, or leave the frequencies out"
+        )
+
+
 def with_losses(
     run: Run, scene: Scene, frequencies: Sequence[float], farad: float
 ) -> tuple[Lossy, ...]:
@@ -126,20 +144,8 @@ def with_losses(
         scene: with the losses of its media.
         frequencies: Hz.
         farad: capacitance of one unit of L.
-
-    Raises:
-        UsageError: there is no medium with losses.
     """
     media = [scene.surroundings, *(d.material for d in scene.dielectrics)]
-    if frequencies and scene.stack is not None:
-        raise UsageError(
-            "frequencies: found some with flat layers, which have no losses here; drop them"
-        )
-    if frequencies and not any(medium.lossy for medium in media):
-        raise UsageError(
-            "frequencies: found some, but no medium has losses; give a loss_tangent or a "
-            "conductivity, or leave the frequencies out"
-        )
     solution = run.rounds[-1].solution
     out = []
     for frequency in frequencies:
