@@ -172,13 +172,18 @@ def fill_block(first, last, setup, limits, lanes, origin, mutual, new):
     return count
 
 
-def _all_limits(reach: np.ndarray) -> np.ndarray:
-    """(3,) ``near``, ``far`` and ``distant``, where both expansions are about as good."""
+def all_limits(reach: np.ndarray) -> np.ndarray:
+    """(3,) ``near``, ``far`` and ``distant``, where both expansions are about as good.
+
+    Args:
+        reach: (2,) ``near`` and ``far``: distances over the sum of both radii.
+    """
     distant = DISTANT * (reach[1] / LEAST_FAR) ** 1.5
     return np.array([*reach, max(distant, *reach)])
 
 
-def _lanes(setup: MixedPanels, indices: np.ndarray) -> Lanes:
+def blocks_of(setup: MixedPanels, indices: np.ndarray) -> Lanes:
+    """Panels ``indices`` (m,), rising, and their images as sources of the distant tier."""
     return lanes_of(setup.panels, setup.far.moments, indices, setup.counts[0])
 
 
@@ -205,9 +210,9 @@ def fill_mixed(
     def block(first: int, last: int) -> int:
         return int(fill_block(first, last, setup, limits, lanes, origin, mutual, new))
 
-    weight, limits = setup.images.weight, _all_limits(reach)
+    weight, limits = setup.images.weight, all_limits(reach)
     mutual = np.array_equal(weight, weight.swapaxes(0, 1))
-    lanes = tuple(_lanes(setup, j) for j in (np.arange(len(origin)), np.flatnonzero(origin < 0)))
+    lanes = tuple(blocks_of(setup, j) for j in (np.arange(len(origin)), np.flatnonzero(origin < 0)))
 
     if (origin >= 0).any():
         take_over(origin, old, new)
