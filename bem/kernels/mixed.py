@@ -14,7 +14,7 @@ import numpy as np
 
 from bem.compiled import njit
 from bem.kernels.expansion import dot
-from bem.kernels.mixed_arrays import LINEAR, QUADRATIC, TESTS, MixedMatrices, MixedPanels
+from bem.kernels.mixed_arrays import MixedMatrices, MixedPanels
 from bem.kernels.mixed_lanes import (
     LANES,
     Lanes,
@@ -25,6 +25,7 @@ from bem.kernels.mixed_lanes import (
 )
 from bem.kernels.mixed_near import near_mixed
 from bem.kernels.mixed_reuse import take_over
+from bem.kernels.mixed_store import put, slot
 from bem.kernels.mixed_weigh import expanded, sampled
 from bem.kernels.moments import ROWS
 from bem.kernels.pairs import mirror
@@ -34,53 +35,6 @@ from bem.kernels.rim_samples import UNCUT, rim_samples
 DISTANT, LEAST_FAR = 8.0, 2.5
 """Where the distant tier begins, for the nearest ``far``: the error of far expansions falls with
 the sixth power of the distance, that of distant ones with the fourth."""
-
-
-@njit(inline="always")
-def _add(array, row, column, first, value):
-    """Let the original start the sum over the images, others add to it."""
-    if first:
-        array[row, column] = value
-    else:
-        array[row, column] += value
-
-
-@njit(cache=True, error_model="numpy")
-def _put(i, j, lane, counts, factors, first, single, double, new):
-    """Store what the matrices keep of one pair; ``factors`` of V and of K.
-
-    Row 3 t + b of ``single`` and 6 t + b of ``double`` hold test t against function b.
-    """
-    metal = counts[0]
-    own = 1 if i < metal else LINEAR
-    tests = TESTS if i < metal else QUADRATIC
-    row = i if i < metal else metal + LINEAR * (i - metal)
-    test = TESTS * i if i < metal else TESTS * metal + QUADRATIC * (i - metal)
-    v, k = factors
-    if j < metal:
-        for t in range(own):
-            _add(new.single, row + t, j, first, v * single[3 * t, lane])
-            _add(new.double, row + t, j, first, k * double[6 * t, lane])
-        for t in range(tests):
-            _add(new.single_tests, test + t, j, first, v * single[3 * (own + t), lane])
-            _add(new.double_tests, test + t, j, first, k * double[6 * (own + t), lane])
-        return
-    place = LINEAR * (j - metal)
-    for b in range(LINEAR):
-        for t in range(own):
-            _add(new.double, row + t, metal + place + b, first, k * double[6 * t + b, lane])
-            _add(new.quadratic, row + t, place + b, first, k * double[6 * t + LINEAR + b, lane])
-        for t in range(tests):
-            _add(
-                new.double_tests,
-                test + t,
-                metal + place + b,
-                first,
-                k * double[6 * (own + t) + b, lane],
-            )
-        if i < metal:
-            for t in range(tests):
-                _add(new.linear, test + t, place + b, first, v * single[3 * (own + t) + b, lane])
 
 
 @njit(inline="always", error_model="numpy")
@@ -97,36 +51,41 @@ def _weight(i, j, image, images):
 
 
 @njit(cache=True, error_model="numpy")
-def _mark(i, image, block, lanes, setup, limit, wanted):
-    """Mark the lanes of a block that are distant from i; whether there are any."""
-    wanted[:] = False
+def _mark(i, image, block, lanes, setup, limit, slots, factors):
+    """Slots and factors of the lanes of a block that are distant from i; whether there are any."""
+    images, metal, count = setup.images, setup.counts[0], setup.basis.shape[0]
+    some = False
     for k in range(LANES):
-        j = lanes.source[block, k]
-        if j >= 0 and (image == 0 or _weight(i, j, image, setup.images) != 0.0):
-            wanted[k] = _distance(i, image * setup.basis.shape[0] + j, setup.panels) > limit
-    return wanted.any()
+        slots[k], j = -1, lanes.source[block, k]
+        if j >= 0 and _distance(i, image * count + j, setup.panels) > limit:
+            weight = _weight(i, j, image, images)
+            factors[0][k], factors[1][k] = weight, weight * images.parity[image]
+            slots[k] = slot(j, metal) if image == 0 or weight != 0.0 else -1
+            some = some or slots[k] >= 0
+    return some
+
+
+@njit(inline="always")
+def _room(lanes):
+    """Slots, factors and results of so many lanes."""
+    factors = (np.zeros(lanes), np.zeros(lanes))
+    return np.full(lanes, -1), factors, np.zeros((18, lanes)), np.zeros((36, lanes))
 
 
 @njit(cache=True, error_model="numpy")
 def _fill_distant(i, image, lanes, setup, limit, new):
     """All pairs of panel i with distant sources of one image."""
-    metal, images = i < setup.counts[0], setup.images
-    single, double = np.zeros((18, LANES)), np.zeros((36, LANES))
-    u, wanted = scratch(), np.empty(LANES, dtype=np.bool_)
+    metal = setup.counts[0]
+    slots, factors, single, double = _room(LANES)
+    u = scratch()
     for b in range(lanes.metal.size):
-        if not _mark(i, image, b, lanes, setup, limit, wanted):
+        if not _mark(i, image, b, lanes, setup, limit, slots, factors):
             continue
-        place = (image, b)
         if lanes.metal[b]:
-            distant_conductors(i, setup.far, lanes, place, u, single, double)
+            distant_conductors(i, setup.far, lanes, (image, b), u, single, double)
         else:
-            distant_interfaces(i, setup.far, lanes, place, metal, u, single, double)
-        for k in range(LANES):
-            if wanted[k]:
-                j = lanes.source[b, k]
-                weight = _weight(i, j, image, images)
-                factors = (weight, weight * images.parity[image])
-                _put(i, j, k, setup.counts, factors, image == 0, single, double, new)
+            distant_interfaces(i, setup.far, lanes, (image, b), i < metal, u, single, double)
+        put(i, lanes.metal[b], metal, image == 0, slots, factors, single, double, new)
 
 
 @njit(cache=True, error_model="numpy")
@@ -134,8 +93,8 @@ def _fill_image(i, image, setup, limits, origin, mutual, new):
     """All pairs of panel i with sources of one image that are not distant."""
     panels, images, metal = setup.panels, setup.images, i < setup.counts[0]
     work = np.empty((ROWS, setup.points.shape[2]))
-    single, double = np.zeros((6, 3)), np.zeros((6, 6))
-    rows = (single.reshape((18, 1)), double.reshape((36, 1)))
+    slots, factors, singles, doubles = _room(1)
+    single, double = singles.reshape((6, 3)), doubles.reshape((6, 6))
     plain = rim_samples(i, setup, (UNCUT, UNCUT))
     count = 0
     for j in range(origin.size):
@@ -152,8 +111,10 @@ def _fill_image(i, image, setup, limits, origin, mutual, new):
         else:
             near_mixed(i, source, setup, plain, mutual, work, single, double)
         count += distance <= limits[1]
-        factors = (weight, weight * images.parity[image])
-        _put(i, j, 0, setup.counts, factors, image == 0, rows[0], rows[1], new)
+        own = setup.counts[0]
+        slots[0] = slot(j, own)
+        factors[0][0], factors[1][0] = weight, weight * images.parity[image]
+        put(i, j < own, own, image == 0, slots, factors, singles, doubles, new)
     return count
 
 
