@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 
 from bem.errors import GeometryError
+from bem.extraction.mixed_layers import check_regions
 from bem.extraction.solution import Solution
 from bem.extraction.solved import Solved
 from bem.geometry.planes import AXES
@@ -25,12 +26,13 @@ def check_layers(scene: Scene, mesh: Mesh) -> None:
         mesh: in units of the scene's size.
 
     Raises:
-        GeometryError: a curved body crosses a plane that is not normal to its axis, or a smooth
-            surface fitted to facets crosses one.
+        GeometryError: a dielectric crosses a plane, a curved body one that is not normal to its
+            axis, or a smooth surface fitted to facets.
     """
     layers = mesh.planes.layers
     if layers is None:
         return
+    check_regions(mesh, [d.name for d in scene.dielectrics])
     crossed = layers.crossed(mesh.corners, TOLERANCE)
     if crossed.any():
         name = scene.conductors[int(np.min(mesh.conductor[crossed]))].name

@@ -18,11 +18,14 @@ from functools import cached_property
 
 import numpy as np
 
+from bem.extraction.mixed_layers import layers_of_regions, panel_layers, relative
 from bem.extraction.solution import SIDE_STEP, Sums, incidence, with_all
 from bem.kernels.arrays import PanelArrays
+from bem.kernels.images import copies_of, own_images
 from bem.kernels.indicator_energy import indicator_energies
 from bem.kernels.mixed_arrays import Images, MixedPanels, mixed_panels
 from bem.kernels.mixed_potential import mixed_potential
+from bem.kernels.pairs import Sources
 from bem.kernels.targets import make_targets
 from bem.operators.mixed import FOUR_PI, LINEAR, Layout, MixedOperator, MixedReuse
 from bem.panels.mesh import Faceting, Mesh
@@ -45,7 +48,7 @@ class MixedSolution:
     Args:
         mesh: n panels of k conductors and of interfaces.
         panels: their arrays.
-        own: (n,) number of images of each panel that coincide with it, itself among them.
+        own: (n,) weight of the images of each panel that coincide with it, itself among them.
         operator: their operator.
         density: (n, k) free charge, zero on interfaces.
         charge: (n, 3, k) total charge, by the functions 1, f1, f2 of each panel.
@@ -76,16 +79,28 @@ class MixedSolution:
         back, front = (side[:, None] for side in layout.sides)
         return layout.to_mesh(back)[:, 0], layout.to_mesh(front)[:, 0]
 
+    @property
+    def direct(self) -> np.ndarray:
+        """(n,) 1 over the permittivity of the layer of each panel, in mesh order."""
+        images, out = self.operator.setup.images, np.empty(len(self.own))
+        out[self.operator.layout.order] = images.weight[images.layer, images.layer, 0]
+        return out
+
     def potential(self, points: np.ndarray, column: int) -> np.ndarray:
         """(m,) potential at points (m, 3) with conductor ``column`` at 1 and the others at 0."""
         setup, layout = self.operator.setup, self.operator.layout
         charge = self.charge[layout.order, :, column]
-        weight = np.repeat(setup.images.weight[0, 0][:, None], len(charge), axis=1)
-        found = mixed_potential(setup, points, np.ascontiguousarray(charge.real), weight)
-        if np.iscomplexobj(charge):
-            lossy = np.ascontiguousarray(charge.imag)
-            return found + 1j * mixed_potential(setup, points, lossy, weight)
-        return found
+        layer = self.mesh.planes.layer_of(points)
+        out = np.empty(len(points), dtype=charge.dtype)
+        for k in np.unique(layer):
+            weight = setup.images.weight[k, setup.images.layer].T
+            here = points[layer == k]
+            found = mixed_potential(setup, here, np.ascontiguousarray(charge.real), weight)
+            if np.iscomplexobj(charge):
+                lossy = np.ascontiguousarray(charge.imag)
+                found = found + 1j * mixed_potential(setup, here, lossy, weight)
+            out[layer == k] = found
+        return out
 
     @cached_property
     def slope(self) -> np.ndarray:
@@ -106,16 +121,17 @@ class MixedSolution:
         Returns:
             Left and right factors.
         """
-        area = self.panels.area
+        area, direct = self.panels.area, self.direct
         metal, rim = self.conductor >= 0, faceting.rim_offset * faceting.rim_width
-        push = (area * faceting.offset)[:, None]
+        push = (direct * area * faceting.offset)[:, None]
         back, front = self.sides
         left = np.zeros((5, *self.density.shape), dtype=self.density.dtype)
         right = np.zeros_like(left)
         left[0] = np.where(metal[:, None], FOUR_PI * push * self.charge[:, 0], 0.0)
         right[0] = self._outer_less_inner(faceting)
         for axis in (0, 1):
-            left[1 + axis] = push * ((back - front) / FOUR_PI)[:, None] * self.slope[:, axis]
+            step = ((back - front) / (FOUR_PI * direct**2))[:, None]
+            left[1 + axis] = push * step * self.slope[:, axis]
             right[1 + axis] = self.slope[:, axis]
         left[3] = FOUR_PI * push * _across(back, front)[:, None] * self.charge[:, 0]
         right[3] = self.charge[:, 0]
@@ -138,7 +154,7 @@ class MixedSolution:
             u = self.potential(points, column)
             slope = (u[: len(rows)] - u[len(rows) :]) / (2.0 * step[:, 0])
             mean = 0.5 * (back + front)[rows]
-            out[rows, column] = -mean * slope / (2.0 * np.pi)
+            out[rows, column] = -mean * slope / (2.0 * np.pi * self.direct[rows])
         return out
 
     def sums(self) -> Sums:
@@ -179,8 +195,10 @@ def solve_dielectric(
         reuse: what an earlier operator can give.
         permittivity: (r,) of each region over that of the surroundings.
     """
-    layout = Layout.of(mesh.conductor, mesh.regions, permittivity)
-    setup = _setup(mesh, layout)
+    home = layers_of_regions(mesh, len(permittivity))
+    rho = relative(permittivity, home, mesh)
+    layout = Layout.of(mesh.conductor, mesh.regions, rho)
+    setup = _setup(mesh, layout, panel_layers(mesh, home))
     operator = MixedOperator(setup, layout, far, reuse)
     owner = incidence(layout.owner, count)
     area = setup.panels.area[: len(layout.order)]
@@ -190,7 +208,7 @@ def solve_dielectric(
     sides = operator.right(owner), goal
     x, z = solve_mixed(matrix, _scales(matrix, layout, area), sides)
     full = np.concatenate([owner, x[layout.metal :]])
-    own = _coincident(setup, len(area))
+    own = own_images(Sources(setup.panels, setup.images, 0.0))
     root = 1.0 / np.sqrt(_energies(setup, layout, own))
     residual = operator.test(x[: layout.metal], full)
     dual = operator.test_adjoint(z)
@@ -213,13 +231,11 @@ def solve_dielectric(
     )
 
 
-def _setup(mesh: Mesh, layout: Layout) -> MixedPanels:
-    corners = mesh.corners[layout.order]
-    planes = mesh.planes
-    images = Images(
-        planes.signs[None, None], planes.parities, np.zeros(len(corners), dtype=np.int64)
-    )
-    return mixed_panels(planes.images(corners), layout.metal, images)
+def _setup(mesh: Mesh, layout: Layout, layer: np.ndarray) -> MixedPanels:
+    corners, layer = mesh.corners[layout.order], layer[layout.order]
+    copies, _ = copies_of(corners, mesh.planes, layer)
+    images = Images(np.ascontiguousarray(copies.weight), copies.parity, layer)
+    return mixed_panels(copies.of(corners), layout.metal, images)
 
 
 def _scales(matrix: np.ndarray, layout: Layout, area: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
@@ -229,15 +245,6 @@ def _scales(matrix: np.ndarray, layout: Layout, area: np.ndarray) -> tuple[np.nd
     root = 1.0 / np.sqrt(np.repeat(area[metal:], LINEAR))
     mean = np.repeat(layout.mean[metal:], LINEAR)
     return np.concatenate([density, root / mean]), np.concatenate([density, root])
-
-
-def _coincident(setup: MixedPanels, count: int) -> np.ndarray:
-    """(count,) how many images of each panel lie where it lies itself, the panel among them."""
-    from bem.kernels.images import COINCIDENT
-
-    center = setup.panels.center.reshape(-1, count, 3)
-    apart = np.linalg.norm(center - center[0], axis=2)
-    return (apart <= COINCIDENT * setup.panels.radius[:count]).sum(axis=0)
 
 
 def _energies(setup: MixedPanels, layout: Layout, own: np.ndarray) -> np.ndarray:

@@ -56,6 +56,9 @@ class ScaledScene:
             surfaces = [cut_in_layers(surface, planes.layers) for surface in surfaces]
         farad = 4.0 * np.pi * EPS0 * scene.relative_permittivity * length
         parts, notes = _partition(scene, (matrix, -center / length), planes)
+        if planes.layers is not None:
+            cut = [cut_in_layers(part.surface, planes.layers) for part in parts]
+            parts = tuple(replace(p, surface=s) for p, s in zip(parts, cut, strict=True))
         media = [scene.relative_permittivity, *(d.relative_permittivity for d in scene.dielectrics)]
         return cls(
             surfaces,

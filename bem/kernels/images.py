@@ -80,6 +80,21 @@ def copies_in_layers(layers: Layers, occupied: np.ndarray, size: float) -> tuple
     return Copies(flip, shift, found.weight), found.error
 
 
+def copies_of(corners: np.ndarray, planes: Planes, layer: np.ndarray) -> tuple[Copies, float]:
+    """All images of panels, and the error of the potential where they stand for layers.
+
+    Args:
+        corners: (n, 4, 3) of the panels themselves.
+        planes: that bound, mirror or fill the scene.
+        layer: (n,) of each panel.
+    """
+    if planes.layers is None:
+        return reflections(planes), 0.0
+    size = float(np.linalg.norm(np.ptp(corners.reshape(-1, 3), axis=0)))
+    there, error = copies_in_layers(planes.layers, np.unique(layer), size)
+    return there.times(reflections(planes)), error
+
+
 def sources_of(corners: np.ndarray, planes: Planes) -> Sources:
     """Arrays of panels and their images.
 
@@ -88,11 +103,7 @@ def sources_of(corners: np.ndarray, planes: Planes) -> Sources:
         planes: that bound, mirror or fill the scene.
     """
     layer = planes.layer_of(corners.mean(axis=1))
-    copies, error = reflections(planes), 0.0
-    if planes.layers is not None:
-        size = float(np.linalg.norm(np.ptp(corners.reshape(-1, 3), axis=0)))
-        there, error = copies_in_layers(planes.layers, np.unique(layer), size)
-        copies = there.times(copies)
+    copies, error = copies_of(corners, planes, layer)
     panels = panel_arrays(copies.of(corners).reshape(-1, 4, 3))
     weight = np.ascontiguousarray(copies.weight)
     return Sources(panels, Images(weight, copies.parity, layer), error)

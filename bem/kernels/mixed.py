@@ -50,6 +50,13 @@ def _weight(i, j, image, images):
     return images.weight[images.layer[i], images.layer[j], image]
 
 
+@njit(inline="always", error_model="numpy")
+def _factors(j, weight, image, images):
+    """Factors of V and of K; a double layer is taken times the permittivity of its own layer."""
+    home = images.layer[j]
+    return weight, weight / images.weight[home, home, 0] * images.parity[image]
+
+
 @njit(cache=True, error_model="numpy")
 def _mark(i, image, block, lanes, setup, limit, slots, factors):
     """Slots and factors of the lanes of a block that are distant from i; whether there are any."""
@@ -59,7 +66,7 @@ def _mark(i, image, block, lanes, setup, limit, slots, factors):
         slots[k], j = -1, lanes.source[block, k]
         if j >= 0 and _distance(i, image * count + j, setup.panels) > limit:
             weight = _weight(i, j, image, images)
-            factors[0][k], factors[1][k] = weight, weight * images.parity[image]
+            factors[0][k], factors[1][k] = _factors(j, weight, image, images)
             slots[k] = slot(j, metal) if image == 0 or weight != 0.0 else -1
             some = some or slots[k] >= 0
     return some
@@ -113,7 +120,7 @@ def _fill_image(i, image, setup, limits, origin, mutual, new):
         count += distance <= limits[1]
         own = setup.counts[0]
         slots[0] = slot(j, own)
-        factors[0][0], factors[1][0] = weight, weight * images.parity[image]
+        factors[0][0], factors[1][0] = _factors(j, weight, image, images)
         put(i, j < own, own, image == 0, slots, factors, singles, doubles, new)
     return count
 

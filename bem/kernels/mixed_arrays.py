@@ -31,7 +31,7 @@ class Images(NamedTuple):
 
     Args:
         weight: (layers, layers, g) factor of image g on its potential, by the layers of the
-            target and of the source.
+            target and of the source; double layers take it over that of the source itself.
         parity: (g,) 1, or -1 where the image is reflected: the normal that follows from
             reflected corners points backward.
         layer: (n,) layer of each panel.

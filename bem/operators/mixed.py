@@ -164,6 +164,8 @@ def _closed(sign: np.ndarray, setup: MixedPanels) -> np.ndarray:
     panels, images = setup.panels, setup.images
     vector = (panels.area[:, None] * panels.axes[:, 2]).reshape(-1, len(sign), 3)
     factor = images.parity * np.sign(images.weight[0, 0])
+    if len(images.weight) > 1:
+        factor = np.arange(len(factor)) == 0
     total = np.einsum("g,nr,gnx->rx", factor, sign, vector)
     area = np.abs(sign).T @ panels.area[: len(sign)]
     return np.linalg.norm(total, axis=1) <= CLOSED * area

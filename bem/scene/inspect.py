@@ -15,7 +15,6 @@ from bem.scene.pairs import ALL_PAIRS, CONTACT, PairReport, all_pairs
 from bem.scene.plane_checks import ground_gap, on_kept_side, plane_findings
 from bem.scene.regions import Regions, regions_of
 from bem.scene.scene import Scene
-from bem.scene.support import check_support
 
 
 @dataclass(frozen=True)
@@ -128,9 +127,8 @@ def check_scene(scene: Scene) -> Inspection:
 
     Raises:
         GeometryError: conductors touch, cross, or lie in solid metal.
-        InputError: the scene has no conductors, or something that no solver knows.
+        InputError: the scene has no conductors.
     """
-    check_support(scene)
     inspection = inspect(scene, closely=False)
     if inspection.fatal:
         more = len(inspection.fatal) - 1
