@@ -174,6 +174,52 @@ def test_a_comparison_across_layers() -> None:
     assert not lifted.correlated
 
 
+# ---------------------------------------------------------------- dielectric bodies
+
+
+def coated(height: float, permittivity: float, medium: float = 1.0) -> bem.Scene:
+    """A cube of side 1 in a coat of side 1.5 whose lower face is at a height."""
+    center = (0.0, 0.0, height + 0.75)
+    scene = bem.Scene(unit="m", relative_permittivity=medium)
+    scene.add_conductor("cube", bem.box(1.0, 1.0, 1.0, center=center))
+    coat = bem.box(1.5, 1.5, 1.5, center=center)
+    return scene.add_dielectric("coat", coat, relative_permittivity=permittivity)
+
+
+def test_a_coat_in_layers_all_alike() -> None:
+    """0.862646 for a coat of 4 (high-order finite elements, 2e-5), twice that in a medium of 2."""
+    alike = coated(0.25, 8.0, 2.0).set_half_space(below_z=0.0, relative_permittivity=2.0)
+    check(alike, 2.0 * 0.862646, 4e-5)
+
+
+def test_surroundings_and_half_space_may_change_places() -> None:
+    upper = coated(0.05, 16.0).set_half_space(above_z=0.0, relative_permittivity=4.0)
+    lower = coated(0.05, 16.0, 4.0).set_half_space(below_z=0.0, relative_permittivity=1.0)
+    assert solved(upper, 1e-2)[0] == pytest.approx(solved(lower, 1e-2)[0], rel=1e-9)
+
+
+@pytest.mark.parametrize("height", [0.0, 0.25])
+def test_a_coat_on_or_over_a_half_space(height: float) -> None:
+    """Twin: blocks of growing size instead, whose effect goes on as one over their size."""
+    value, bar = solved(
+        coated(height, 7.0).set_half_space(below_z=0.0, relative_permittivity=4.0), 3e-3
+    )
+    twins = []
+    for size in (32.0, 64.0):
+        block = bem.box(size, size, size, center=(0.0, 0.0, -0.5 * size))
+        twin = coated(height, 7.0).add_dielectric("block", block, relative_permittivity=4.0)
+        twins.append(solved(twin, 3e-3))
+    limit = 2.0 * twins[1][0] - twins[0][0]
+    left = 0.1 * (twins[1][0] - twins[0][0])  # what the next order may add
+    assert abs(value - limit) <= bar + 2.0 * twins[1][1] + twins[0][1] + left
+
+
+def test_a_dielectric_across_a_plane_is_refused() -> None:
+    scene = coated(-0.5, 7.0).set_half_space(below_z=0.0, relative_permittivity=4.0)
+    with pytest.raises(GeometryError, match='"coat" crosses a plane between layers; cut the'):
+        bem.extract(scene)
+
+
 # ---------------------------------------------------------------- refused
 
 

@@ -47,10 +47,14 @@ def layer_record(solution: Solved) -> dict[str, Any]:
 
     The error is over the potential of the source itself; empty without layers.
     """
-    if solution.mesh.planes.layers is None or not isinstance(solution, Solution):
+    planes = solution.mesh.planes
+    if planes.layers is None:
         return {}
-    sources = solution.sources
+    if isinstance(solution, Solution):
+        images, error = solution.sources.images, solution.sources.error
+    else:
+        images, error = solution.operator.setup.images, solution.operator.image_error
     return {
-        "layer_images": int(sources.images.weight.shape[2] // solution.mesh.planes.copies),
-        "layer_images_error": float(sources.error),
+        "layer_images": int(images.weight.shape[2] // planes.copies),
+        "layer_images_error": float(error),
     }

@@ -18,7 +18,7 @@ from functools import cached_property
 
 import numpy as np
 
-from bem.extraction.mixed_layers import layers_of_regions, panel_layers, relative
+from bem.extraction.mixed_layers import flux_shares, layers_of_regions, panel_layers, relative
 from bem.extraction.solution import SIDE_STEP, Sums, incidence, with_all
 from bem.kernels.arrays import PanelArrays
 from bem.kernels.images import copies_of, own_images
@@ -197,9 +197,9 @@ def solve_dielectric(
     """
     home = layers_of_regions(mesh, len(permittivity))
     rho = relative(permittivity, home, mesh)
-    layout = Layout.of(mesh.conductor, mesh.regions, rho)
-    setup = _setup(mesh, layout, panel_layers(mesh, home))
-    operator = MixedOperator(setup, layout, far, reuse)
+    layout = Layout.of(mesh.conductor, mesh.regions, rho, flux_shares(mesh))
+    setup, error = _setup(mesh, layout, panel_layers(mesh, home))
+    operator = MixedOperator(setup, layout, far, reuse, error)
     owner = incidence(layout.owner, count)
     area = setup.panels.area[: len(layout.order)]
     goal = np.zeros((len(layout.unknown), count))
@@ -231,11 +231,11 @@ def solve_dielectric(
     )
 
 
-def _setup(mesh: Mesh, layout: Layout, layer: np.ndarray) -> MixedPanels:
+def _setup(mesh: Mesh, layout: Layout, layer: np.ndarray) -> tuple[MixedPanels, float]:
     corners, layer = mesh.corners[layout.order], layer[layout.order]
-    copies, _ = copies_of(corners, mesh.planes, layer)
+    copies, error = copies_of(corners, mesh.planes, layer)
     images = Images(np.ascontiguousarray(copies.weight), copies.parity, layer)
-    return mixed_panels(copies.of(corners), layout.metal, images)
+    return mixed_panels(copies.of(corners), layout.metal, images), error
 
 
 def _scales(matrix: np.ndarray, layout: Layout, area: np.ndarray) -> tuple[np.ndarray, np.ndarray]:

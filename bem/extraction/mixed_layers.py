@@ -58,6 +58,26 @@ def panel_layers(mesh: Mesh, regions: np.ndarray) -> np.ndarray:
     return layer
 
 
+def flux_shares(mesh: Mesh) -> np.ndarray:
+    """(n, 2) part of the flux from a point on each panel that goes to the back, and to the front.
+
+    From a charge in a plane it goes to both sides as their permittivities; elsewhere in halves.
+    """
+    out = np.full((len(mesh.conductor), 2), 0.5)
+    layers = mesh.planes.layers
+    if layers is None:
+        return out
+    corners = mesh.corners
+    normal = np.cross(corners[:, 2] - corners[:, 0], corners[:, 3] - corners[:, 1])
+    upward = (normal[:, layers.axis] > 0.0).astype(int)
+    for k, plane in enumerate(layers.planes):
+        there = np.abs(corners[..., layers.axis] - plane).max(axis=1) <= IN_PLANE
+        below, above = layers.permittivity[k : k + 2]
+        share = np.array([above, below]) / (below + above)
+        out[there] = np.stack([share[upward], share[1 - upward]], axis=1)[there]
+    return out
+
+
 def relative(permittivity: np.ndarray, regions: np.ndarray, mesh: Mesh) -> np.ndarray:
     """(r,) permittivity of each region over that of its layer; 1 for the surroundings.
 

@@ -53,19 +53,29 @@ class Layout:
         owner: (c,) conductor of each of the first c panels.
         regions: (n, 2) region behind and in front of each, METAL where negative.
         permittivity: (r,) of each region over that of the surroundings; complex with loss.
+        share: (n, 2) of the flux from a point on each panel that goes to the back and to the
+            front; halves, but where the panel lies in a plane between layers.
     """
 
     order: np.ndarray
     owner: np.ndarray
     regions: np.ndarray
     permittivity: np.ndarray
+    share: np.ndarray
 
     @classmethod
-    def of(cls, conductor: np.ndarray, regions: np.ndarray, permittivity: np.ndarray) -> Layout:
+    def of(
+        cls,
+        conductor: np.ndarray,
+        regions: np.ndarray,
+        permittivity: np.ndarray,
+        share: np.ndarray | None = None,
+    ) -> Layout:
         """Sort the panels of a mesh, by their conductors (n,), negative on interfaces."""
         order = np.argsort(conductor < 0, kind="stable")
         owner = conductor[order][: int((conductor >= 0).sum())]
-        return cls(order, owner, regions[order], np.asarray(permittivity))
+        share = np.full((len(order), 2), 0.5) if share is None else share[order]
+        return cls(order, owner, regions[order], np.asarray(permittivity), share)
 
     @property
     def metal(self) -> int:
@@ -94,7 +104,7 @@ class Layout:
     def mean(self) -> np.ndarray:
         """(n,) m, mean permittivity of both sides."""
         back, front = self.sides
-        return 0.5 * (back + front)
+        return self.share[:, 0] * back + self.share[:, 1] * front
 
     def spread(self, each: int, every: int) -> np.ndarray:
         """Panel of each of ``each`` rows to a conductor panel and ``every`` to an interface."""
@@ -146,7 +156,7 @@ class Boundaries:
         number = np.arange(len(layout.permittivity))
         behind, before = (layout.regions[:, side, None] == number for side in (0, 1))
         sides = behind.astype(float) + before
-        seen = -0.5 * FOUR_PI * sides
+        seen = -FOUR_PI * (layout.share[:, :1] * behind + layout.share[:, 1:] * before)
         seen[:, SURROUNDINGS] += FOUR_PI
         sign = behind - before.astype(float)
         closed = _closed(sign, setup)
@@ -214,12 +224,18 @@ class MixedOperator:
         layout: their conductors and permittivities.
         far: distance over the sum of radii where expansions begin.
         reuse: an earlier operator, made with the same ``far``.
+        image_error: of the potential over that of the source itself, where images stand for layers.
     """
 
     def __init__(
-        self, setup: MixedPanels, layout: Layout, far: float, reuse: MixedReuse | None = None
+        self,
+        setup: MixedPanels,
+        layout: Layout,
+        far: float,
+        reuse: MixedReuse | None = None,
+        image_error: float = 0.0,
     ) -> None:
-        self.setup, self.layout, self.far = setup, layout, far
+        self.setup, self.layout, self.far, self.image_error = setup, layout, far, image_error
         self.matrices = empty_matrices(layout.metal, layout.interfaces)
         known, origin = empty_matrices(0, 0), np.full(len(layout.order), -1)
         if reuse is not None:
@@ -332,4 +348,4 @@ class MixedOperator:
     @property
     def far_error(self) -> float:
         """Relative error of the energy of charges of one sign that expansions may cause."""
-        return FAR_ERROR * (LEAST_FAR / self.far) ** FAR_ORDER
+        return FAR_ERROR * (LEAST_FAR / self.far) ** FAR_ORDER + self.image_error
