@@ -92,7 +92,7 @@ def copies_of(corners: np.ndarray, planes: Planes, layer: np.ndarray) -> tuple[C
         return reflections(planes), 0.0
     size = float(np.linalg.norm(np.ptp(corners.reshape(-1, 3), axis=0)))
     there, error = copies_in_layers(planes.layers, np.unique(layer), size)
-    return there.times(reflections(planes)), error
+    return reflections(planes).times(there), error
 
 
 def sources_of(corners: np.ndarray, planes: Planes) -> Sources:

@@ -173,9 +173,10 @@ def _closed(sign: np.ndarray, setup: MixedPanels) -> np.ndarray:
     """(r,) whether the boundary of each region is closed, images with their signs included."""
     panels, images = setup.panels, setup.images
     vector = (panels.area[:, None] * panels.axes[:, 2]).reshape(-1, len(sign), 3)
-    factor = images.parity * np.sign(images.weight[0, 0])
-    if len(images.weight) > 1:
-        factor = np.arange(len(factor)) == 0
+    home = np.unique(images.layer)
+    over = images.weight[home, home] / images.weight[home, home, :1]
+    mirrored = np.cumprod((np.abs(over) == 1.0).all(axis=0))  # before those that stand for layers
+    factor = images.parity * np.sign(over[0]) * mirrored
     total = np.einsum("g,nr,gnx->rx", factor, sign, vector)
     area = np.abs(sign).T @ panels.area[: len(sign)]
     return np.linalg.norm(total, axis=1) <= CLOSED * area
