@@ -131,7 +131,7 @@ def estimate(rounds: list[Sums]) -> Estimate:
         trend = np.maximum(trend, last.absolute)
     root = np.sqrt(np.diagonal(last.value))
     floor = FLOOR * root[:, None] * np.append(root, np.sqrt(max(last.value[:, -1].sum(), 0.0)))
-    facets = facet_doubt(last.faceting, last.value)
+    facets = facet_doubt(last.facet_moves, last.value)
     wide = widening(value)
     parts = {
         "discretisation": wide * (SHARE + DOUBT * doubt) * last.absolute,
@@ -139,6 +139,6 @@ def estimate(rounds: list[Sums]) -> Estimate:
         "quadrature": last.quadrature + floor,
         "input rounding": last.rounding,
         "facets of the file": FILES * last.files,
-        "faceting": wide * (facets * np.abs(last.faceting) + RIM * last.rims),
+        "faceting": wide * (facets * last.facet_moves + RIM * last.rims),
     }
     return Estimate(value, sum(parts.values()), parts, kappa, facets, doubt)

@@ -17,7 +17,7 @@ from bem.extraction.audit import Audit, audit
 from bem.extraction.facets import facet_lines, facet_record
 from bem.extraction.layer_check import check_layers, layer_record
 from bem.extraction.loop import Limits, RoundState, Run
-from bem.extraction.lossy import check_losses, with_losses
+from bem.extraction.lossy import check_losses, media_of, with_losses
 from bem.extraction.marking import Goal
 from bem.extraction.memory import MemoryPlan, count_of
 from bem.extraction.progress import Progress
@@ -113,7 +113,7 @@ def extract(
         "operator": "dense",
         "facets": facets,
     }
-    notes = warnings_of(scene, inspection) + tuple(facet_lines(scene, facets))
+    notes = warnings_of(scene, inspection, wanted) + tuple(facet_lines(scene, facets))
     result = result_of(scene, scaled, run, findings, (seconds, settings, notes))
     return replace(result, lossy=lossy)
 
@@ -160,9 +160,16 @@ def audited(run: Run) -> Audit:
     return findings
 
 
-def warnings_of(scene: Scene, inspection: Inspection) -> tuple[str, ...]:
+def warnings_of(
+    scene: Scene, inspection: Inspection, frequencies: Sequence[float] = ()
+) -> tuple[str, ...]:
     """Lines for the user about a scene."""
     lines = list(inspection.warnings)
+    if not frequencies and any(medium.lossy for medium in media_of(scene)):
+        lines.append(
+            "losses of the media are not in these values; give frequencies (--frequency 1kHz) "
+            "to have C and G with them"
+        )
     if scene.relative_permittivity < 1.0:
         lines.append(
             f"relative permittivity {scene.relative_permittivity:g} is below that of vacuum, 1; "

@@ -30,6 +30,7 @@ from bem.extraction.mixed import MixedSolution, solve_dielectric
 from bem.extraction.solution import Sums
 from bem.panels.mesh import Mesh
 from bem.results.lossy import Lossy
+from bem.scene.material import Material
 from bem.scene.scene import Scene
 
 MOST_ROUNDS = 8
@@ -102,18 +103,23 @@ def complex_estimate(rounds: Sequence[Sums]) -> Estimate:
     trend = last.absolute
     if len(values) > 1:
         trend = TREND * np.max([np.abs(value - x) for x in values[:-1]], axis=0)
-    count = len(value)
     root = np.sqrt(np.abs(np.diagonal(value)))
-    facets = facet_doubt(np.abs(last.faceting[:, :count]), np.abs(last.value))
+    facets = facet_doubt(last.facet_moves, np.abs(last.value))
     parts = {
         "discretisation": (SHARE + DOUBT * SLOPE_DOUBT) * last.absolute,
         "trend": trend,
         "quadrature": last.quadrature + FLOOR * root[:, None] * np.append(root, root.max()),
         "input rounding": last.rounding,
         "facets of the file": FILES * last.files,
-        "faceting": facets * np.abs(last.faceting) + RIM * last.rims,
+        "faceting": facets * last.facet_moves + RIM * last.rims,
     }
     return Estimate(value, sum(parts.values()), parts, KAPPA_USUAL, facets)
+
+
+def media_of(scene: Scene) -> list[Material]:
+    """Return the media of a scene: surroundings, dielectric bodies, flat layers."""
+    layers = [] if scene.stack is None else list(scene.stack.materials)
+    return [scene.surroundings, *(d.material for d in scene.dielectrics), *layers]
 
 
 def check_losses(scene: Scene) -> None:
@@ -126,8 +132,7 @@ def check_losses(scene: Scene) -> None:
         raise UsageError(
             "frequencies: found some with flat layers, which have no losses here; drop them"
         )
-    media = [scene.surroundings, *(d.material for d in scene.dielectrics)]
-    if not any(medium.lossy for medium in media):
+    if not any(medium.lossy for medium in media_of(scene)):
         raise UsageError(
             "frequencies: found some, but no medium has losses; give a loss_tangent or a "
             "conductivity, or leave the frequencies out"
@@ -145,7 +150,7 @@ def with_losses(
         frequencies: Hz.
         farad: capacitance of one unit of L.
     """
-    media = [scene.surroundings, *(d.material for d in scene.dielectrics)]
+    media = media_of(scene)
     solution = run.rounds[-1].solution
     out = []
     for frequency in frequencies:

@@ -37,6 +37,8 @@ of the double layer's operator goes on with the square of the contrast (measured
 and on boxes standing on blocks)."""
 LAYER_ERROR = 2e-4
 """Error of the double layer of linear potentials by samples, near and far together."""
+KINDS, RIMS = 6, 5
+"""Products in ``MixedSolution.pushes``, and which of them is that of free rims."""
 SAME = 1e-12
 """Permittivities closer than this, relative, are one: the interface does nothing."""
 
@@ -115,8 +117,9 @@ class MixedSolution:
     def pushes(self, faceting: Faceting) -> tuple[np.ndarray, ...]:
         """What moves of the surface do to L.
 
-        A sum over panels of left (p, n, k) times right (p, n, k), p kinds of products; the
-        normal move of conductors, of interfaces along and across, and of free rims.
+        A sum over panels of left (p, n, k) times right (p, n, k), p kinds of products: normal
+        moves with the charge in front of conductors and behind sheets, of interfaces along (two)
+        and across, and moves of free rims.
 
         Returns:
             Left and right factors.
@@ -125,37 +128,45 @@ class MixedSolution:
         metal, rim = self.conductor >= 0, faceting.rim_offset * faceting.rim_width
         push = (direct * area * faceting.offset)[:, None]
         back, front = self.sides
-        left = np.zeros((5, *self.density.shape), dtype=self.density.dtype)
+        left = np.zeros((KINDS, *self.density.shape), dtype=self.density.dtype)
         right = np.zeros_like(left)
-        left[0] = np.where(metal[:, None], FOUR_PI * push * self.charge[:, 0], 0.0)
-        right[0] = self._outer_less_inner(faceting)
+        right[0], right[1] = self._both_sides(faceting)
+        left[0] = FOUR_PI * push * _over(right[0], front)
+        left[1] = -FOUR_PI * push * _over(right[1], back)
         for axis in (0, 1):
             step = ((back - front) / (FOUR_PI * direct**2))[:, None]
-            left[1 + axis] = push * step * self.slope[:, axis]
-            right[1 + axis] = self.slope[:, axis]
-        left[3] = FOUR_PI * push * _across(back, front)[:, None] * self.charge[:, 0]
-        right[3] = self.charge[:, 0]
-        left[1:4, metal] = 0.0
-        left[4] = (0.5 * np.pi**2 * self.own * area * rim)[:, None] * self.charge[:, 0]
-        right[4] = self.density
+            left[2 + axis] = push * step * self.slope[:, axis]
+            right[2 + axis] = self.slope[:, axis]
+        left[4] = FOUR_PI * push * _across(back, front)[:, None] * self.charge[:, 0]
+        right[4] = self.charge[:, 0]
+        left[:2, ~metal] = 0.0
+        left[2:5, metal] = 0.0
+        left[RIMS] = (0.5 * np.pi**2 * self.own * area * rim)[:, None] * self.charge[:, 0]
+        right[RIMS] = self.density
         return left, right
 
-    def _outer_less_inner(self, faceting: Faceting) -> np.ndarray:
-        """(n, k) free charge in front less that behind, of conductor panels."""
-        out = self.density.copy()
+    def _both_sides(self, faceting: Faceting) -> tuple[np.ndarray, np.ndarray]:
+        """(n, k) free charge in front of conductor panels, and that behind sheets.
+
+        The normal derivatives on both sides of a sheet follow from their mean, taken from the
+        potential a little above and below the centroid, and from their jump, the total charge.
+        """
+        before, behind = self.density.copy(), np.zeros_like(self.density)
         rows = np.flatnonzero(faceting.sheet & (faceting.offset != 0.0) & (self.conductor >= 0))
         if len(rows) == 0:
-            return out
+            return before, behind
         step = SIDE_STEP * self.panels.radius[rows, None]
         normal, center = self.panels.axes[rows, 2], self.panels.center[rows]
         points = np.concatenate([center + step * normal, center - step * normal])
-        back, front = self.sides
-        for column in range(out.shape[1]):
+        direct = self.direct[rows]
+        back, front = (side[rows] / (FOUR_PI * direct) for side in self.sides)
+        for column in range(before.shape[1]):
             u = self.potential(points, column)
-            slope = (u[: len(rows)] - u[len(rows) :]) / (2.0 * step[:, 0])
-            mean = 0.5 * (back + front)[rows]
-            out[rows, column] = -mean * slope / (2.0 * np.pi * self.direct[rows])
-        return out
+            mean = (u[: len(rows)] - u[len(rows) :]) / (2.0 * step[:, 0])
+            half = 0.5 * FOUR_PI * direct * self.charge[rows, 0, column]
+            before[rows, column] = -front * (mean - half)
+            behind[rows, column] = back * (mean + half)
+        return before, behind
 
     def sums(self) -> Sums:
         """What the round says of every entry."""
@@ -174,7 +185,13 @@ class MixedSolution:
         faceting = self.mesh.faceting()
         left, right = self.pushes(faceting)
         found = np.abs(np.einsum("pnk,pnk,k->pn", left, right, weight))
-        return found[:4].sum(axis=0), found[4]
+        return found[:RIMS].sum(axis=0), found[RIMS]
+
+
+def _over(charge: np.ndarray, side: np.ndarray) -> np.ndarray:
+    """(n, k) charge over the permittivity of its side, zero in metal."""
+    there = np.abs(side) > 0.0
+    return np.where(there[:, None], charge / np.where(there, side, 1.0)[:, None], 0.0)
 
 
 def _across(back: np.ndarray, front: np.ndarray) -> np.ndarray:
@@ -297,7 +314,7 @@ def mixed_sums(solution: MixedSolution) -> Sums:
     faceting = solution.mesh.faceting()
     left, right = solution.pushes(faceting)
     change = _symmetric(np.einsum("pni,pnj->ij", left, right))
-    rims = np.abs(left[4]).T @ np.abs(with_all(right[4]))
+    rims = np.abs(left[RIMS]).T @ np.abs(with_all(right[RIMS]))
     return Sums(
         panels=len(area),
         value=with_all(_symmetric(raw)),
@@ -309,6 +326,7 @@ def mixed_sums(solution: MixedSolution) -> Sums:
         rims=rims,
         rounding=rounding_effect(solution),
         files=file_facet_bound(solution),
+        moves=_bound(solution, faceting),
     )
 
 

@@ -147,6 +147,8 @@ class Sums:
         rims: the part of it at curved free rims, all of one sign.
         rounding: largest effect of the rounded numbers of the input files.
         files: largest effect of the smooth surface that facets of files may stand for.
+        moves: what is believed of ``faceting`` with all its terms of one sign, where terms of
+            several bodies may cancel; None: its absolute value.
     """
 
     panels: int
@@ -159,6 +161,12 @@ class Sums:
     rims: np.ndarray
     rounding: np.ndarray
     files: np.ndarray
+    moves: np.ndarray | None = None
+
+    @property
+    def facet_moves(self) -> np.ndarray:
+        """(k, k + 1) size of the faceting effect before terms cancel."""
+        return np.abs(self.faceting) if self.moves is None else self.moves
 
 
 def sums(solution: Solution) -> Sums:
