@@ -34,6 +34,8 @@ of the double layer's operator goes on with the square of the contrast (measured
 and on boxes standing on blocks)."""
 LAYER_ERROR = 2e-4
 """Error of the double layer of linear potentials by samples, near and far together."""
+RIMS = 5
+"""Which of the products of ``pushes`` is that of free rims."""
 SAME = 1e-12
 """Permittivities closer than this, relative, are one: the interface does nothing."""
 
@@ -101,7 +103,8 @@ class MixedSolution:
         """What moves of the surface do to L.
 
         A sum over panels of left (p, n, k) times right (p, n, k), p kinds of products; the
-        normal move of conductors, of interfaces along and across, and of free rims.
+        normal move of conductors, with the field in front and that behind, of interfaces along
+        and across, and of free rims.
 
         Returns:
             Left and right factors.
@@ -110,36 +113,44 @@ class MixedSolution:
         metal, rim = self.conductor >= 0, faceting.rim_offset * faceting.rim_width
         push = (area * faceting.offset)[:, None]
         back, front = self.sides
-        left = np.zeros((5, *self.density.shape), dtype=self.density.dtype)
+        left = np.zeros((6, *self.density.shape), dtype=self.density.dtype)
         right = np.zeros_like(left)
-        left[0] = np.where(metal[:, None], FOUR_PI * push * self.charge[:, 0], 0.0)
-        right[0] = self._outer_less_inner(faceting)
+        total, right[:2] = self._on_both_sides(faceting)
+        left[0], left[1] = FOUR_PI * push * total[0], -FOUR_PI * push * total[1]
+        left[:2, ~metal] = 0.0
         for axis in (0, 1):
-            left[1 + axis] = push * ((back - front) / FOUR_PI)[:, None] * self.slope[:, axis]
-            right[1 + axis] = self.slope[:, axis]
-        left[3] = FOUR_PI * push * _across(back, front)[:, None] * self.charge[:, 0]
-        right[3] = self.charge[:, 0]
-        left[1:4, metal] = 0.0
-        left[4] = (0.5 * np.pi**2 * self.own * area * rim)[:, None] * self.charge[:, 0]
-        right[4] = self.density
+            left[2 + axis] = push * ((back - front) / FOUR_PI)[:, None] * self.slope[:, axis]
+            right[2 + axis] = self.slope[:, axis]
+        left[4] = FOUR_PI * push * _across(back, front)[:, None] * self.charge[:, 0]
+        right[4] = self.charge[:, 0]
+        left[2:5, metal] = 0.0
+        left[RIMS] = (0.5 * np.pi**2 * self.own * area * rim)[:, None] * self.charge[:, 0]
+        right[RIMS] = self.density
         return left, right
 
-    def _outer_less_inner(self, faceting: Faceting) -> np.ndarray:
-        """(n, k) free charge in front less that behind, of conductor panels."""
-        out = self.density.copy()
+    def _on_both_sides(self, faceting: Faceting) -> tuple[np.ndarray, np.ndarray]:
+        """Total and free charge in front of conductor panels and behind them, (2, n, k) each."""
+        total = np.stack([self.charge[:, 0], np.zeros_like(self.density)])
+        free = np.stack([self.density, np.zeros_like(self.density)])
         rows = np.flatnonzero(faceting.sheet & (faceting.offset != 0.0) & (self.conductor >= 0))
         if len(rows) == 0:
-            return out
+            return total, free
+        back, front = (side[rows, None] for side in self.sides)
+        half = self._normal_slope(rows) / FOUR_PI
+        both, apart = total[0, rows], np.array([-1.0, 1.0])[:, None, None]
+        less = 0.5 * (front - back) * both - (front + back) * half
+        total[:, rows] = 0.5 * both + apart * half
+        free[:, rows] = 0.5 * (free[0, rows] - apart * less)
+        return total, free
+
+    def _normal_slope(self, rows: np.ndarray) -> np.ndarray:
+        """(r, k) slope of the potential along the normal of sheets, mean of both sides."""
         step = SIDE_STEP * self.panels.radius[rows, None]
         normal, center = self.panels.axes[rows, 2], self.panels.center[rows]
         points = np.concatenate([center + step * normal, center - step * normal])
-        back, front = self.sides
-        for column in range(out.shape[1]):
-            u = self.potential(points, column)
-            slope = (u[: len(rows)] - u[len(rows) :]) / (2.0 * step[:, 0])
-            mean = 0.5 * (back + front)[rows]
-            out[rows, column] = -mean * slope / (2.0 * np.pi)
-        return out
+        found = [self.potential(points, column) for column in range(self.density.shape[1])]
+        u = np.array(found).T
+        return (u[: len(rows)] - u[len(rows) :]) / (2.0 * step)
 
     def sums(self) -> Sums:
         """What the round says of every entry."""
@@ -158,7 +169,7 @@ class MixedSolution:
         faceting = self.mesh.faceting()
         left, right = self.pushes(faceting)
         found = np.abs(np.einsum("pnk,pnk,k->pn", left, right, weight))
-        return found[:4].sum(axis=0), found[4]
+        return found[:RIMS].sum(axis=0), found[RIMS]
 
 
 def _across(back: np.ndarray, front: np.ndarray) -> np.ndarray:
@@ -290,7 +301,7 @@ def mixed_sums(solution: MixedSolution) -> Sums:
     faceting = solution.mesh.faceting()
     left, right = solution.pushes(faceting)
     change = _symmetric(np.einsum("pni,pnj->ij", left, right))
-    rims = np.abs(left[4]).T @ np.abs(with_all(right[4]))
+    rims = np.abs(left[RIMS]).T @ np.abs(with_all(right[RIMS]))
     return Sums(
         panels=len(area),
         value=with_all(_symmetric(raw)),
