@@ -409,6 +409,174 @@ FILES_AND_FITS = (
     ),
 )
 
+MIXED = ("test_operators_mixed.py",)
+LOSSES = ("test_extraction_lossy.py",)
+REGIONS = ("test_regions.py",)
+
+DIELECTRICS = (
+    Fault(
+        "interface: sides of the step in permittivity exchanged",
+        "operators/mixed.py",
+        "return back - front",
+        "return front - back",
+        MIXED,
+    ),
+    Fault(
+        "interface: sum of both permittivities for their mean",
+        "operators/mixed.py",
+        "return 0.5 * (back + front)",
+        "return back + front",
+        MIXED,
+    ),
+    Fault(
+        "double layer of the surroundings lacks the sphere at infinity",
+        "operators/mixed.py",
+        "seen[:, SURROUNDINGS] += FOUR_PI",
+        "seen[:, SURROUNDINGS] += 0.0",
+        MIXED,
+    ),
+    Fault(
+        "what the double layer misses is added to the system instead of put right",
+        "operators/mixed.py",
+        "out[rows, column[rows]] -= weight * self.missed[rows, region]",
+        "out[rows, column[rows]] += weight * self.missed[rows, region]",
+        MIXED,
+    ),
+    Fault(
+        "adjoint residual of conductors with the wrong sign",
+        "operators/mixed.py",
+        "np.concatenate([-on_metal, on_interfaces])",
+        "np.concatenate([on_metal, on_interfaces])",
+        MIXED,
+    ),
+    Fault(
+        "interface moved: its tangential field takes away what it should add",
+        "extraction/mixed.py",
+        "((back - front) / (FOUR_PI * direct**2))[:, None]",
+        "((front - back) / (FOUR_PI * direct**2))[:, None]",
+        MIXED,
+    ),
+    Fault(
+        "interface moved: its normal field counts by the inverse permittivities",
+        "extraction/mixed.py",
+        "back * front / np.where(apart, back - front, 1.0)",
+        "1.0 / np.where(apart, back - front, 1.0)",
+        MIXED,
+    ),
+    Fault(
+        "hollow conductor moved: media on its sides taken for one",
+        "extraction/mixed.py",
+        "half = 0.5 * FOUR_PI * direct * self.charge[rows, 0, column]",
+        "half = 0.0 * FOUR_PI * direct * self.charge[rows, 0, column]",
+        LOSSES,
+    ),
+    Fault(
+        "loss with the sign of a gain",
+        "extraction/lossy.py",
+        "0.0 - omega * value.imag",
+        "omega * value.imag",
+        LOSSES,
+    ),
+    Fault(
+        "bars of conductances are those of capacitances",
+        "extraction/lossy.py",
+        "omega * bar[square]",
+        "bar[square]",
+        LOSSES,
+    ),
+    Fault(
+        "complex permittivities not taken relative to the surroundings",
+        "extraction/lossy.py",
+        "for medium in media]) / scene.relative_permittivity",
+        "for medium in media])",
+        LOSSES,
+    ),
+    Fault(
+        "conductivity over the frequency instead of the angular frequency",
+        "scene/material.py",
+        "/ (2.0 * math.pi * frequency * EPS0)",
+        "/ (frequency * EPS0)",
+        ("test_scene_dielectrics.py", *LOSSES),
+    ),
+    Fault(
+        "a dielectric counts before the conductor that it overlaps",
+        "geometry/regions/sides.py",
+        "np.where(metal, METAL, highest)",
+        "np.where(metal & (highest == SURROUNDINGS), METAL, highest)",
+        REGIONS,
+    ),
+    Fault(
+        "faces that coincide are given by both bodies",
+        "geometry/regions/sides.py",
+        "kept = (lies_on.argmax(axis=1) == index) &",
+        "kept = (lies_on.argmax(axis=1) >= 0) &",
+        REGIONS,
+    ),
+    Fault(
+        "insides of bodies with triangles in common on the wrong side",
+        "geometry/regions/matching.py",
+        "np.where(ahead, BEHIND, BEFORE)",
+        "np.where(ahead, BEFORE, BEHIND)",
+        REGIONS,
+    ),
+    Fault(
+        "a sheet in a mirror plane keeps the region of the other side",
+        "geometry/part_folding.py",
+        "part.front if normal[mirror.axis] > 0.0",
+        "part.front if normal[mirror.axis] < 0.0",
+        ("test_part_folding.py",),
+    ),
+    Fault(
+        "mirrored interfaces with normals that are not mirrored",
+        "geometry/planes.py",
+        "(-1.0) ** sum(f) for f in flipped",
+        "1.0 ** sum(f) for f in flipped",
+        ("test_planes_dielectric.py",),
+    ),
+    Fault(
+        "second moment of the double layer lacks the solid angle",
+        "kernels/moments.py",
+        "h * xx - flat + x * (kx - gx)",
+        "h * xx + x * (kx - gx)",
+        ("test_kernels_moments.py",),
+    ),
+    Fault(
+        "panels of both kinds in one plane do not see each other",
+        "kernels/mixed_near.py",
+        "if not flat or metal != charged:",
+        "if not flat:",
+        ("test_kernels_mixed.py",),
+    ),
+    Fault(
+        "layers: a wave begins with the permittivity where it ends",
+        "kernels/reflection.py",
+        "found = found / permittivity[first]",
+        "found = found / permittivity[last]",
+        ("test_layers.py",),
+    ),
+    Fault(
+        "layers: the way back has the heights of the way there",
+        "kernels/layered.py",
+        "self._replace(shift=-self.flip * self.shift, pair",
+        "self._replace(shift=self.shift, pair",
+        ("test_layers.py",),
+    ),
+    Fault(
+        "layers not taken relative to the surroundings",
+        "scene/layering.py",
+        "tuple(value / scene.relative_permittivity for value in values)",
+        "tuple(values)",
+        ("test_layers_values.py::test_relative_to_the_surroundings",),
+    ),
+    Fault(
+        "a half-space on the other side of its plane",
+        "scene/stack.py",
+        "both[::-1] if self.above else both",
+        "both if self.above else both[::-1]",
+        ("test_scene_dielectrics.py",),
+    ),
+)
+
 FAULTS: tuple[Fault, ...] = (
     KERNELS
     + UNITS_AND_SIGNS
@@ -416,6 +584,7 @@ FAULTS: tuple[Fault, ...] = (
     + PANELS_AND_EXPORTS
     + PLANES
     + FILES_AND_FITS
+    + DIELECTRICS
     + REDUCTION
     + COMPARISON
 )

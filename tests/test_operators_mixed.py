@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from dielectric_formulas import sphere_and_dielectric_sphere
 
 import bem
 from bem.extraction.mixed import MixedSolution, solve_dielectric
 from bem.extraction.scaled import ScaledScene
 from bem.extraction.solution import solve_round
 from bem.operators.mixed import FOUR_PI
-from bem.panels.mesh import Mesh
+from bem.panels.mesh import Faceting, Mesh
 
 FAR = 2.5
 
@@ -76,6 +77,19 @@ def test_the_sums_of_a_region_are_those_of_a_closed_surface(block):
     assert back.min() == 0.0 and front.min() > 0.0
 
 
+def test_columns_of_the_system_are_the_layer(block):
+    """What is put right in the matrix is what is put right in products with it."""
+    operator, layout = block.operator, block.operator.layout
+    full = np.random.default_rng(3).normal(size=(len(layout.unknown), 2))
+    full[: layout.metal] = 0.0
+    area = block.panels.area[layout.order][layout.unknown]
+    own = (layout.mean[layout.unknown] * area)[:, None] * full
+    want = own - layout.turn[layout.unknown][:, None] * operator.layer(full)
+    scale = np.abs(operator.missed).max()
+    assert scale > 1e-9
+    assert operator.system() @ full == pytest.approx(want, rel=1e-12, abs=1e-4 * scale)
+
+
 def test_what_the_sums_missed_is_small_already(block):
     missed = np.abs(block.operator.missed) / (FOUR_PI * block.panels.area.max())
     assert missed.max() < 1e-3
@@ -88,15 +102,47 @@ def test_one_permittivity_everywhere_is_that_of_the_conductors_alone(value):
     rows = np.flatnonzero(mesh.conductor >= 0)
     area, owner = mixed.panels.area[rows], mesh.conductor[rows]
     from bem.kernels.arrays import panel_arrays
-    from bem.kernels.pairs import Sources
+    from bem.kernels.images import plain_sources
     from bem.kernels.targets import make_targets
     from bem.operators.dense import DenseOperator
 
     panels = panel_arrays(mesh.corners[rows])
-    operator = DenseOperator(Sources(panels, np.ones(1)), make_targets(panels), FAR)
+    operator = DenseOperator(plain_sources(panels), make_targets(panels), FAR)
     right = area[:, None] * (owner[:, None] == np.arange(2))
     density = np.linalg.solve(operator.matrix(), right)
     assert mixed.density[rows] == pytest.approx(value * density, rel=2e-4, abs=1e-4)
+
+
+def test_both_residuals_are_one_where_interfaces_do_nothing():
+    """The conductors' system is then its own transpose, and no interface carries charge."""
+    mesh, mixed = solved(standing(3.0), np.ones(2))
+    metal = mesh.conductor >= 0
+    assert np.abs(mixed.charge[~metal]).max() < 1e-6
+    scale = np.abs(mixed.residual[:, metal]).max()
+    assert mixed.dual[:, metal] == pytest.approx(mixed.residual[:, metal], abs=1e-5 * scale)
+    assert np.abs(mixed.dual[:, ~metal]).max() < 1e-6 < 1e-3 < scale
+
+
+@pytest.mark.parametrize("permittivity", [4.0, 0.25])
+def test_moves_of_an_interface_change_the_value_as_growth_does(permittivity):
+    """A dielectric ball beside a conducting one: slope of the series of multipoles.
+
+    Facets lie within the balls, so that the slope is about a tenth too small.
+    """
+    ball = at(bem.sphere(0.5), 2.0, 0.0, 0.0)
+    scene = with_dielectrics([bem.sphere(1.0)], [(ball, permittivity)])
+    mesh, _ = solved(scene)
+    for direction in (0, 1):
+        every = np.ones(len(mesh.conductor), dtype=bool)
+        mesh, _ = mesh.refine(every, np.full(len(every), direction))
+    mixed = solve_dielectric(mesh, 1, FAR, None, ScaledScene.of(scene).permittivity)
+    outward = np.where(mesh.conductor < 0, 1.0, 0.0)
+    none = np.zeros(len(outward))
+    left, right = mixed.pushes(Faceting(outward, none, none, none > 0.0))
+    radii = 0.5 - 1e-4, 0.5 + 1e-4
+    low, high = (sphere_and_dielectric_sphere(1.0, r, 2.0, permittivity) for r in radii)
+    slope = (high - low) / 2e-4
+    assert np.einsum("pni,pni->", left, right) == pytest.approx(slope, rel=0.15)
 
 
 def test_reuse_changes_nothing():
