@@ -117,6 +117,7 @@ def _groups(entries: list[Entry]) -> Iterable[tuple[str, list[Entry]]]:
         yield f"t = {t:g}", where(lambda e, t=t: e.tolerance == t)  # type: ignore[misc]
     yield "value published", where(lambda e: e.published)
     yield "truth by tight run", where(lambda e: not e.published)
+    yield "with dielectrics", where(lambda e: ", er " in e.case)
     yield "as it is", where(lambda e: not e.case.endswith(", turned"))
     yield "turned", where(lambda e: e.case.endswith(", turned"))
 
