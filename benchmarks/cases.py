@@ -27,7 +27,11 @@ from bem.units import EPS0
 
 sys.path.append(str(Path(__file__).resolve().parent.parent / "tests"))
 
-from dielectric_formulas import coated_sphere, sphere_and_dielectric_sphere  # noqa: E402
+from dielectric_formulas import (  # noqa: E402
+    coated_sphere,
+    layered_spheres,
+    sphere_and_dielectric_sphere,
+)
 from dielectric_values import BY_ELEMENTS, DielectricReference  # noqa: E402
 from reference_values import LEFT_OUT as NOT_IN_TABLES  # noqa: E402
 from reference_values import PER_LENGTH, REFERENCES, Body, Reference  # noqa: E402
@@ -267,7 +271,17 @@ def ball_cases() -> list[Case]:
         for d in (2.1, 3.0)
         for er in contrasts
     ]
-    return coats + beside
+    return [*coats, *beside, _layers()]
+
+
+def _layers() -> Case:
+    """Gap between concentric spheres 1 and 2 in two layers, meeting at 1.5."""
+    inside = layered_spheres((1.0, 1.5, 2.0), (4.0, 1.0))
+    exact = columns(np.array([[inside, -inside], [-inside, inside + 2.0]]))
+    parts = (Part("ball", shapes.sphere(1.0)), Part("shell", shapes.sphere(2.0), "shell"))
+    filling = Filling("layer", shapes.sphere(1.5), 4.0)
+    truth = Truth(exact, np.full_like(exact, 1e-12), True)
+    return Case("two layers between spheres, er 4", parts, truth, fillings=(filling,))
 
 
 def dielectric_cases() -> list[Case]:
