@@ -28,7 +28,7 @@ _STEPS = 4
 
 
 @njit(cache=True, error_model="numpy")
-def _shape(corners, s, t):
+def on_panel(corners, s, t):
     """Position on the panel at (s, t), and its derivatives: x, y, x_s, y_s, x_t, y_t."""
     x, y, xs, ys, xt, yt = 0.0, 0.0, 0.0, 0.0, 0.0, 0.0
     for k in range(4):
@@ -49,7 +49,7 @@ def _on_square(corners, at_x, at_y):
     """The (s, t) of a position in the plane, by Newton's method, never far off the square."""
     s, t = 0.0, 0.0
     for _ in range(_STEPS):
-        x, y, xs, ys, xt, yt = _shape(corners, s, t)
+        x, y, xs, ys, xt, yt = on_panel(corners, s, t)
         full = xs * yt - ys * xt
         if full <= 0.0:
             break
@@ -93,11 +93,13 @@ def _add(cuts, count, at, height):
 @njit(cache=True, error_model="numpy")
 def _seen(p, other, k, panels):
     """Corner k of another panel, in the frame of panel p."""
-    apart = np.empty(3)
     x, y = panels.corners[other, k, 0], panels.corners[other, k, 1]
-    axes, gap = panels.axes[other], panels.center[other] - panels.center[p]
-    for c in range(3):
-        apart[c] = gap[c] + x * axes[0, c] + y * axes[1, c]
+    axes, to, here = panels.axes[other], panels.center[other], panels.center[p]
+    apart = (
+        to[0] - here[0] + x * axes[0, 0] + y * axes[1, 0],
+        to[1] - here[1] + x * axes[0, 1] + y * axes[1, 1],
+        to[2] - here[2] + x * axes[0, 2] + y * axes[1, 2],
+    )
     own = panels.axes[p]
     return dot(apart, own[0]), dot(apart, own[1]), dot(apart, own[2])
 

@@ -9,6 +9,7 @@ import numpy as np
 
 from bem.compiled import njit
 from bem.kernels.pairs import clustered_rule
+from bem.kernels.rim_cuts import on_panel
 
 UNCUT = np.array([-1.0, 1.0])
 _WHOLE, _PART, _SMALL = clustered_rule(8, False), clustered_rule(6, False), clustered_rule(5, False)
@@ -52,17 +53,6 @@ def _polynomials(basis, i, x, y, weight, k, weights):
 
 
 @njit(cache=True, error_model="numpy")
-def _place(corners, s, t):
-    """In-plane position of (s, t), and the Jacobian there."""
-    f0, f1 = 0.25 * (1 - s) * (1 - t), 0.25 * (1 + s) * (1 - t)
-    f2, f3 = 0.25 * (1 + s) * (1 + t), 0.25 * (1 - s) * (1 + t)
-    at = f0 * corners[0] + f1 * corners[1] + f2 * corners[2] + f3 * corners[3]
-    du = (1 - t) * (corners[1] - corners[0]) + (1 + t) * (corners[2] - corners[3])
-    dv = (1 - s) * (corners[3] - corners[0]) + (1 + s) * (corners[2] - corners[1])
-    return at[0], at[1], (du[0] * dv[1] - du[1] * dv[0]) / 16.0
-
-
-@njit(cache=True, error_model="numpy")
 def rim_samples(p, setup, cuts):
     """Samples of panel or image p.
 
@@ -83,10 +73,10 @@ def rim_samples(p, setup, cuts):
     for k in range(m):
         a, b = k // v[0].size, k % v[0].size
         s, t = u[0][a], v[0][b]
-        x, y, jacobian = _place(corners, s, t)
+        x, y, xs, ys, xt, yt = on_panel(corners, s, t)
         for c in range(3):
             points[0, c, k] = center[c] + x * axes[0, c] + y * axes[1, c]
-        weight = u[1][a] * v[1][b] * jacobian
+        weight = u[1][a] * v[1][b] * (xs * yt - ys * xt)
         if i < setup.counts[0]:
             _legendre(setup.mean, i, s, t, weight, k, weights)
         else:
