@@ -337,8 +337,8 @@ PLANES = (
     Fault(
         "images behind the ground have the sign of the charge",
         "geometry/planes.py",
-        "np.array([(-1.0) ** sum",
-        "np.array([1.0 ** sum",
+        "np.array([(-1.0) ** sum(np.logical_and",
+        "np.array([1.0 ** sum(np.logical_and",
         ("test_planes.py", "test_published.py::test_records_at_a_thousandth"),
     ),
     Fault(
@@ -358,8 +358,8 @@ PLANES = (
     Fault(
         "a sheet in a mirror plane counts once in its energy",
         "kernels/images.py",
-        "(apart <= COINCIDENT * panels.radius[:count]).sum(axis=0)",
-        "np.ones(count)",
+        "np.where(apart <= COINCIDENT * panels.radius[: len(layer)], weight, 0.0).sum(axis=0)",
+        "weight[0]",
         ("test_planes.py",),
     ),
     Fault(
@@ -372,8 +372,8 @@ PLANES = (
     Fault(
         "panels do not see how near the ground is",
         "panels/facing.py",
-        "patch.conductor if sign > 0.0 else -1 - patch.conductor",
-        "patch.conductor",
+        "patch.owner if sign > 0.0 else opposite for sign in signs",
+        "patch.owner for _ in signs",
         ("test_planes.py",),
     ),
 )
@@ -424,7 +424,7 @@ DIELECTRICS = (
     Fault(
         "interface: sum of both permittivities for their mean",
         "operators/mixed.py",
-        "return 0.5 * (back + front)",
+        "return self.share[:, 0] * back + self.share[:, 1] * front",
         "return back + front",
         MIXED,
     ),
