@@ -24,8 +24,8 @@ import bem  # noqa: E402
 from bem.geometry import shapes  # noqa: E402
 from bem.geometry.surface import Surface  # noqa: E402
 from bem.kernels.arrays import panel_arrays  # noqa: E402
+from bem.kernels.images import plain_sources  # noqa: E402
 from bem.kernels.mixed_arrays import mixed_panels, no_images  # noqa: E402
-from bem.kernels.pairs import Sources  # noqa: E402
 from bem.kernels.targets import make_targets  # noqa: E402
 from bem.operators.dense import DenseOperator, far_reach  # noqa: E402
 from bem.operators.mixed import Layout, MixedOperator  # noqa: E402
@@ -52,7 +52,7 @@ def cube(cells: int) -> np.ndarray:
 def conductor_seconds(corners: np.ndarray) -> tuple[float, float]:
     """Of the integrals, and of the solution, of conductor panels."""
     panels = panel_arrays(corners)
-    sources, targets = Sources(panels, np.ones(1)), make_targets(panels)
+    sources, targets = plain_sources(panels), make_targets(panels)
     made = DenseOperator(sources, targets, far_reach(TOLERANCE), None)
     right = panels.area[:, None]
     return (
